@@ -1,0 +1,1 @@
+"""Checks of the generated C that share nothing with its derivation."""
