@@ -37,3 +37,4 @@ class Options:
     real: RealType = RealType.FLOAT
     mathematics: Mathematics = Mathematics.OWN
     prefix: str = "arm"
+    angle_error: int = 2  # largest error of the own sine, cosine and arc tangent, in ulp

@@ -1,0 +1,1 @@
+"""Fit every coefficient anew and write `coefficients.py`: `python -m codegen.elementary.fit`."""
