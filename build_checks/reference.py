@@ -116,7 +116,7 @@ class Reference:
     free, held    positions of the joints that inverse kinematics solves, and of those it takes from its seed
     base_length   distance of frame 0 from the world origin, m
     reach         m, a length that the tool's distance from frame 0 never exceeds (but for unlimited slides): the sum of
-                  |a| and |d| over the rows, the largest travel of limited slides, and the tool's offset; 1 m when all are 0
+                  |a| and |d| over the rows, the travel of limited slides, and the tool's offset; 1 m when all are 0
     """
 
     def __init__(self, arm: Arm) -> None:
