@@ -18,6 +18,8 @@ from codegen.errors import Fault
 from codegen.exact import Angle
 from codegen.model import JointKind, Quantity
 
+_MOST_ITEMS = 7
+
 
 @dataclass(frozen=True, slots=True)
 class Typed:
@@ -51,18 +53,18 @@ class Units:
 
 def shown(value: object) -> str:
     """A value as a message shows it: short, on one line, as the file would have it."""
-    if isinstance(value, bool):
-        return str(value).lower()
+    if isinstance(value, list):
+        items = ["[...]" if isinstance(item, list) else shown(item) for item in value[:_MOST_ITEMS]]
+        more = ["..."] if len(value) > _MOST_ITEMS else []
+        return f"[{', '.join(items + more)}]"
     if isinstance(value, dict):
         return "a table"
-    if isinstance(value, list):
-        return _shortened(
-            "[" + ", ".join(shown(item) for item in value[:8]) + (", ..." if len(value) > 8 else "") + "]"
-        )
+    if isinstance(value, bool):
+        return str(value).lower()
     if isinstance(value, int) and value.bit_length() > 200:
         return "an integer of very many digits"
     if isinstance(value, str):
-        return '"' + _shortened("".join(sign if sign.isprintable() else repr(sign)[1:-1] for sign in value)) + '"'
+        return f'"{_shortened("".join(sign if sign.isprintable() else repr(sign)[1:-1] for sign in value))}"'
     return _shortened(str(value))
 
 
