@@ -77,7 +77,7 @@ class Machine(Protocol):
 
     image: Image
     memory: range
-    stack: int
+    stack: int  # the first address above it
     pointer_bytes: int
 
     def write(self, address: int, data: bytes) -> None: ...
@@ -155,7 +155,7 @@ def _place_arguments(machine: Machine, call: Call) -> tuple[tuple[int, ...], lis
 
 
 def _painted(machine: Machine) -> range:
-    return range(machine.stack + 1 - _PAINTED_BYTES, machine.stack + 1)
+    return range(machine.stack - _PAINTED_BYTES, machine.stack)
 
 
 def _stack_touched(machine: Machine, call: Call) -> int:

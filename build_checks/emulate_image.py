@@ -105,11 +105,18 @@ def link_image(objects: Objects, roots: Iterable[str], name: str, *, libm: bool 
     path = objects.paths[0].parent / f"{name}.elf"
     libraries = target.libm if libm else _arithmetic(target)
     keep = [flag for root in roots for flag in ("-u", root)]
-    script = [] if target.emulator is Emulator.SIMAVR else ["-T", str(_LINKER_SCRIPT)]
-    layout = ["-nostartfiles", *script, "-Wl,--gc-sections,-e,0", *keep]
-    own = [*objects.paths, "-o", path, *libraries]
-    _run([f"{target.toolchain}gcc", *target.flags, *layout, *map(str, own)], path.parent, f"{target.title}: link")
+    inputs = [*map(str, objects.paths), "-o", str(path), *libraries]
+    command = [f"{target.toolchain}gcc", *target.flags, *_layout(target), *keep, *inputs]
+    _run(command, path.parent, f"{target.title}: link")
     return _read_image(objects, path)
+
+
+def _layout(target: Target) -> tuple[str, ...]:
+    """A shared library on this machine; elsewhere code, constants and data alone, nothing that starts them."""
+    if target.emulator is Emulator.HOST:
+        return ("-shared",)
+    bare = ("-nostartfiles", "-Wl,--gc-sections,-e,0")
+    return bare if target.emulator is Emulator.SIMAVR else (*bare, "-T", str(_LINKER_SCRIPT))
 
 
 def _arithmetic(target: Target) -> tuple[str, ...]:
@@ -153,17 +160,24 @@ def _kind_of(target: Target, flags: int) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Instruction:
-    """One line of the disassembly: address, mnemonic, operands, the function it stands in, its length in bytes."""
+    """One line of the disassembly.
+
+    function     the one it stands in
+    length       in bytes
+    destination  the function that it names, for a branch or a call; "" when none
+    """
 
     address: int
     mnemonic: str
     operands: str
     function: str
     length: int
+    destination: str = ""
 
 
 _LABEL = re.compile(r"^([0-9a-f]+) <([^>]+)>:$")
-_LINE = re.compile(r"^\s*([0-9a-f]+):\t((?:[0-9a-f]+ ?)+)\s*\t(\S+)[ \t]*([^;@]*)")
+_LINE = re.compile(r"^\s*([0-9a-f]+):\t((?:[0-9a-f]+ ?)+)\s*\t(\S+)[ \t]*([^;@]*)(.*)$")
+_NAMED = re.compile(r"<([^>+@-]+)")
 
 
 def disassemble(image: Image) -> tuple[Instruction, ...]:
@@ -184,5 +198,10 @@ def _parse(lines: Iterable[str]) -> Iterable[Instruction]:
             function = label.group(2)
         found = _LINE.match(line)
         if found and not found.group(3).startswith("."):
-            address, code, mnemonic, operands = found.groups()
-            yield Instruction(int(address, 16), mnemonic, operands.strip(), function, len(code.replace(" ", "")) // 2)
+            yield _instruction(function, *found.groups())
+
+
+def _instruction(function: str, address: str, code: str, mnemonic: str, operands: str, comment: str) -> Instruction:
+    named = _NAMED.search(operands) or _NAMED.search(comment)
+    length = len(code.replace(" ", "")) // 2
+    return Instruction(int(address, 16), mnemonic, operands.strip(), function, length, named.group(1) if named else "")

@@ -24,7 +24,7 @@ class SimavrMachine:
         self._avr = self._library.avr_open(image.target.core.encode())
         if not self._avr:
             raise CheckFailedError(Fault(image.target.title, f"the simulator has no {image.target.core}"))
-        self.stack = self._library.avr_memory_bytes(self._avr) - 1
+        self.stack = self._library.avr_memory_bytes(self._avr)
         self.memory = range(0x1000, 0x1800)  # for arguments, between the constants below and the stack above
         for segment in image.segments:
             self._load(segment.address, segment.data)
@@ -56,7 +56,7 @@ class SimavrMachine:
             self.write(_FIRST_ARGUMENT - 2 * place, value.to_bytes(2, "little"))
         instructions, cycles = c_uint64(), c_uint64()
         entry = self.image.symbols[function]
-        failed = self._library.avr_call(self._avr, entry, self.stack, _LIMIT, byref(instructions), byref(cycles))
+        failed = self._library.avr_call(self._avr, entry, self.stack - 1, _LIMIT, byref(instructions), byref(cycles))
         if failed:
             what = "did not return" if failed == 1 else "crashed the emulated processor"
             raise CheckFailedError(Fault(f"{self.image.target.title}: {function}", what))

@@ -120,7 +120,7 @@ class _Counter:
     """Instructions and cycles from how often each basic block ran and was left by a jump."""
 
     def __init__(self, engine: unicorn.Uc, image: Image) -> None:
-        slots = _FLASH_BYTES // 2
+        slots = image.code // 2 + 1
         self._runs = (c_uint64 * slots)()
         self._jumps = (c_uint64 * slots)()
         self._bytes = (c_uint32 * slots)()

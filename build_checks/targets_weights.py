@@ -49,11 +49,11 @@ class CycleWeights:
         bare = re.sub(r"\.[nw]$", "", mnemonic)
         for row in self.rows:
             if row.pattern.fullmatch(bare):
-                return row.cycles + row.per_register * _listed_registers(operands), row.taken
+                return row.cycles + row.per_register * listed_registers(operands), row.taken
         return 1, 0
 
 
-def _listed_registers(operands: str) -> int:
+def listed_registers(operands: str) -> int:
     """How many registers a list such as {r4, r5, lr} or {s16-s19} names; objdump writes ranges of s and d only."""
     listed = re.search(r"\{([^}]*)\}", operands)
     return sum(_range_length(part) for part in listed.group(1).split(",")) if listed else 0
