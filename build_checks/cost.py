@@ -20,7 +20,7 @@ from build_checks.cost_calls import CostCalls, cost_calls
 from build_checks.emulate import Call, machine_for, make_calls
 from build_checks.emulate_contract import FUNCTIONS, Interface, TargetInterface, read_interface
 from build_checks.emulate_image import Image, compile_objects, link_image
-from build_checks.static_callgraph import CallGraph, read_call_graph
+from build_checks.static_callgraph import read_call_graph
 from build_checks.targets import TARGETS, Target, target_named, why_not_measured
 from codegen.options import Options
 
@@ -184,17 +184,13 @@ def _function_costs(
                 name,
                 fast.link([name], name).flash,
                 small.link([name], name).flash,
-                _computed_stack(graph, symbol),
+                graph.worst_stack(symbol),
                 max(result.stack for result in results),
                 _spread([result.instructions for result in results]),
                 _spread([result.cycles for result in results]),
             )
         )
     return tuple(found)
-
-
-def _computed_stack(graph: CallGraph, symbol: str) -> int:
-    return graph.worst_stack(symbol)
 
 
 def _spread(values: Sequence[int]) -> Spread:

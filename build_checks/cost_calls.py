@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import itertools
 import struct
 import tempfile
 from collections.abc import Mapping, Sequence
@@ -10,13 +9,11 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from build_checks.emulate import Call, Machine, Result, machine_for, make_calls
-from build_checks.emulate_contract import Interface, TargetInterface, read_interface
+from build_checks.emulate_contract import Interface, TargetInterface
 from build_checks.emulate_image import compile_objects, link_image
 from build_checks.targets import HOST
 
 _SOLVED = (0, 4, 5)  # statuses that come with a solution (contract, section 2)
-
-__all__ = ["CostCalls", "cost_calls", "read_interface"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,4 +70,4 @@ def _sample(machine: Machine, host: TargetInterface, index: int, joints: Sequenc
 
 
 def _only(machine: Machine, call: Call) -> Result:
-    return next(itertools.chain(make_calls(machine, [call], count=False)))
+    return next(make_calls(machine, [call], count=False))

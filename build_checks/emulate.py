@@ -78,7 +78,6 @@ class Machine(Protocol):
     image: Image
     memory: range
     stack: int  # the first address above it
-    pointer_bytes: int
 
     def write(self, address: int, data: bytes) -> None: ...
 
@@ -109,7 +108,7 @@ def run(
     libm: bool = False,
     count: bool = True,
 ) -> list[Result]:
-    """Compiles `files` for `target` and makes the calls in order; `count` also counts and paints, several times slower."""
+    """Compiles `files` for `target` and makes the calls in order; `count` also counts and paints, which is slower."""
     with tempfile.TemporaryDirectory() as folder:
         objects = compile_objects(target, files, Path(folder), optimise=optimise, libm=libm)
         roots = sorted({call.function for call in calls})

@@ -10,7 +10,6 @@ from build_checks.emulate_image import Image
 class HostMachine:
     """This processor; the memory for arguments is one buffer. Nothing is counted."""
 
-    pointer_bytes = 8
     stack = 0
 
     def __init__(self, image: Image) -> None:

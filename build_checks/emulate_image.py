@@ -11,6 +11,7 @@ import subprocess
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from elftools.elf.elffile import ELFFile
 
@@ -18,10 +19,20 @@ from build_checks.targets import Emulator, Target
 from codegen.errors import CheckFailedError, Fault
 
 _LINKER_SCRIPT = Path(__file__).parent / "emulate_image.ld"
-WARNINGS = (
-    "-Wall -Wextra -Wpedantic -Wconversion -Wsign-conversion -Wdouble-promotion -Wfloat-equal -Wshadow -Wundef "
-    "-Wcast-qual -Wstrict-prototypes -Wvla"
-).split()
+WARNINGS = [
+    "-Wall",
+    "-Wextra",
+    "-Wpedantic",
+    "-Wconversion",
+    "-Wsign-conversion",
+    "-Wdouble-promotion",
+    "-Wfloat-equal",
+    "-Wshadow",
+    "-Wundef",
+    "-Wcast-qual",
+    "-Wstrict-prototypes",
+    "-Wvla",
+]
 STANDARD = ("-std=c99", "-ffp-contract=off")
 
 
@@ -141,7 +152,7 @@ def _read_image(objects: Objects, path: Path) -> Image:
         for section in elf.iter_sections():
             if section["sh_flags"] & _LOADED_FLAG and section["sh_type"] == "SHT_PROGBITS":
                 sizes[_kind_of(objects.target, section["sh_flags"])] += section["sh_size"]
-        table = elf.get_section_by_name(".symtab")
+        table: Any = elf.get_section_by_name(".symtab")
         symbols = {s.name: int(s["st_value"]) for s in table.iter_symbols() if s["st_info"]["type"] == "STT_FUNC"}
         segments = tuple(
             Segment(int(segment["p_vaddr"]), segment.data())

@@ -16,8 +16,6 @@ _FIRST_ARGUMENT = 24  # register; each later one two lower
 class SimavrMachine:
     """One processor with an image in its memory."""
 
-    pointer_bytes = 2
-
     def __init__(self, image: Image) -> None:
         self.image = image
         self._library = avr_library()

@@ -1,6 +1,7 @@
 """Arm and RISC-V functions in the unicorn emulator: called by address, counted by basic block.
 
-The emulator runs the instruction set, not the board: floating point is exact IEEE 754 arithmetic, memory answers at once.
+The emulator runs the instruction set, not the board: floating point is exact IEEE 754 arithmetic, and memory answers at
+once.
 """
 
 from __future__ import annotations
@@ -8,14 +9,22 @@ from __future__ import annotations
 import ctypes
 from ctypes import POINTER, byref, c_uint32, c_uint64, c_void_p, cast
 from dataclasses import dataclass
+from importlib import import_module
+from typing import Any
 
-import unicorn
-from unicorn import arm_const, riscv_const, unicorn_const
+import numpy as np
 
 from build_checks.emulate_image import Image, Instruction, disassemble
 from build_checks.emulate_native import BlockCounts, block_counter
 from build_checks.targets import Emulator, Target
 from codegen.errors import CheckFailedError, Fault
+
+# The package is typed in part only, so its modules and its engine are Any here.
+_unicorn: Any = import_module("unicorn")
+_arm: Any = import_module("unicorn.arm_const")
+_riscv: Any = import_module("unicorn.riscv_const")
+_constants: Any = import_module("unicorn.unicorn_const")
+_binding: Any = import_module("unicorn.unicorn_py3.unicorn")
 
 _FLASH, _FLASH_BYTES = 0x0001_0000, 0x0010_0000
 _RAM, _RAM_BYTES = 0x2000_0000, 0x0010_0000
@@ -33,35 +42,35 @@ class _Registers:
 
 
 _ARM = _Registers(
-    (arm_const.UC_ARM_REG_R0, arm_const.UC_ARM_REG_R1, arm_const.UC_ARM_REG_R2, arm_const.UC_ARM_REG_R3),
-    arm_const.UC_ARM_REG_SP,
-    arm_const.UC_ARM_REG_LR,
+    tuple(getattr(_arm, f"UC_ARM_REG_R{i}") for i in range(4)),
+    _arm.UC_ARM_REG_SP,
+    _arm.UC_ARM_REG_LR,
     None,
 )
 _RISCV = _Registers(
-    (riscv_const.UC_RISCV_REG_A0, riscv_const.UC_RISCV_REG_A1, riscv_const.UC_RISCV_REG_A2, riscv_const.UC_RISCV_REG_A3),
-    riscv_const.UC_RISCV_REG_SP,
-    riscv_const.UC_RISCV_REG_RA,
-    riscv_const.UC_RISCV_REG_TP,
+    tuple(getattr(_riscv, f"UC_RISCV_REG_A{i}") for i in range(4)),
+    _riscv.UC_RISCV_REG_SP,
+    _riscv.UC_RISCV_REG_RA,
+    _riscv.UC_RISCV_REG_TP,
 )
 
 
-def _engine(target: Target) -> unicorn.Uc:
+def _engine(target: Target) -> Any:
     if target.emulator is Emulator.UNICORN_RISCV:
-        engine = unicorn.Uc(unicorn_const.UC_ARCH_RISCV, unicorn_const.UC_MODE_RISCV32)
-        engine.ctl_set_cpu_model(getattr(riscv_const, target.core))
+        engine = _unicorn.Uc(_constants.UC_ARCH_RISCV, _constants.UC_MODE_RISCV32)
+        engine.ctl_set_cpu_model(getattr(_riscv, target.core))
         return engine
-    microcontroller = 0 if target.core == "UC_CPU_ARM_MAX" else unicorn_const.UC_MODE_MCLASS
-    engine = unicorn.Uc(unicorn_const.UC_ARCH_ARM, unicorn_const.UC_MODE_THUMB | microcontroller)
-    engine.ctl_set_cpu_model(getattr(arm_const, target.core))
+    microcontroller = 0 if target.core == "UC_CPU_ARM_MAX" else _constants.UC_MODE_MCLASS
+    engine = _unicorn.Uc(_constants.UC_ARCH_ARM, _constants.UC_MODE_THUMB | microcontroller)
+    engine.ctl_set_cpu_model(getattr(_arm, target.core))
     if not microcontroller:
         _switch_on_floating_point(engine)
     return engine
 
 
-def _switch_on_floating_point(engine: unicorn.Uc) -> None:
-    engine.reg_write(arm_const.UC_ARM_REG_C1_C0_2, 0xF << 20)
-    engine.reg_write(arm_const.UC_ARM_REG_FPEXC, 1 << 30)
+def _switch_on_floating_point(engine: Any) -> None:
+    engine.reg_write(_arm.UC_ARM_REG_C1_C0_2, 0xF << 20)
+    engine.reg_write(_arm.UC_ARM_REG_FPEXC, 1 << 30)
 
 
 class UnicornMachine:
@@ -69,7 +78,6 @@ class UnicornMachine:
 
     memory = range(_RAM + 0x4_0000, _RAM + 0x8_0000)  # for arguments
     stack = _RAM + 0xF_0000
-    pointer_bytes = 4
 
     def __init__(self, image: Image) -> None:
         self.image = image
@@ -110,46 +118,51 @@ class UnicornMachine:
         where = f"{self.image.target.title}: {function}"
         try:
             self._engine.emu_start(entry, _HOME, timeout=_TIMEOUT)
-        except unicorn.UcError as error:
+        except _unicorn.UcError as error:
             raise CheckFailedError(Fault(where, f"the emulated processor stopped: {error}")) from error
-        if self._engine.query(unicorn_const.UC_QUERY_TIMEOUT):
+        if self._engine.query(_constants.UC_QUERY_TIMEOUT):
             raise CheckFailedError(Fault(where, "did not return within a minute of emulation"))
 
 
 class _Counter:
     """Instructions and cycles from how often each basic block ran and was left by a jump."""
 
-    def __init__(self, engine: unicorn.Uc, image: Image) -> None:
+    def __init__(self, engine: Any, image: Image) -> None:
         slots = image.code // 2 + 1
-        self._runs = (c_uint64 * slots)()
-        self._jumps = (c_uint64 * slots)()
-        self._bytes = (c_uint32 * slots)()
-        arrays = (cast(array, POINTER(kind)) for array, kind in self._arrays())
-        self._counts = BlockCounts(_FLASH, slots, *arrays, slots, 0)
+        self._runs = np.zeros(slots, np.uint64)
+        self._jumps = np.zeros(slots, np.uint64)
+        self._bytes = np.zeros(slots, np.uint32)
+        self._counts = BlockCounts(
+            _FLASH,
+            slots,
+            self._runs.ctypes.data_as(POINTER(c_uint64)),
+            self._jumps.ctypes.data_as(POINTER(c_uint64)),
+            self._bytes.ctypes.data_as(POINTER(c_uint32)),
+            slots,
+            0,
+        )
         self._instructions = {row.address: row for row in disassemble(image)}
         self._weights = image.target.weights
         self._costs: dict[int, tuple[int, int, int]] = {}
         _hook_blocks(engine, self._counts)
 
-    def _arrays(self) -> tuple[tuple[ctypes.Array[c_uint64] | ctypes.Array[c_uint32], type], ...]:
-        return (self._runs, c_uint64), (self._jumps, c_uint64), (self._bytes, c_uint32)
-
     def take(self) -> tuple[int, int]:
         """The counts since the last time; starts again from nothing."""
         instructions = cycles = 0
-        for slot in _used(self._runs):
+        for slot in map(int, np.flatnonzero(self._runs)):
             length, cost, taken = self._cost(slot)
-            instructions += self._runs[slot] * length
-            cycles += self._runs[slot] * cost + self._jumps[slot] * taken
-        ctypes.memset(self._runs, 0, ctypes.sizeof(self._runs))
-        ctypes.memset(self._jumps, 0, ctypes.sizeof(self._jumps))
+            runs, jumps = int(self._runs[slot]), int(self._jumps[slot])
+            instructions += runs * length
+            cycles += runs * cost + jumps * taken
+        self._runs.fill(0)
+        self._jumps.fill(0)
         self._counts.previous = self._counts.slots
         return instructions, cycles
 
     def _cost(self, slot: int) -> tuple[int, int, int]:
         """Instructions of the block, its cycles when not left by a jump, and how many more when left by one."""
         if slot not in self._costs:
-            self._costs[slot] = self._block_cost(_FLASH + 2 * slot, self._bytes[slot])
+            self._costs[slot] = self._block_cost(_FLASH + 2 * slot, int(self._bytes[slot]))
         return self._costs[slot]
 
     def _block_cost(self, start: int, size: int) -> tuple[int, int, int]:
@@ -167,21 +180,13 @@ class _Counter:
         return rows
 
 
-def _used(runs: ctypes.Array[c_uint64]) -> list[int]:
-    import numpy
-
-    return [int(slot) for slot in numpy.flatnonzero(numpy.frombuffer(runs, dtype=numpy.uint64))]
-
-
-def _hook_blocks(engine: unicorn.Uc, counts: BlockCounts) -> None:
+def _hook_blocks(engine: Any, counts: BlockCounts) -> None:
     """The binding takes hooks in Python only; the C function is registered with the library it wraps."""
-    from unicorn.unicorn_py3.unicorn import uclib
-
     handle = ctypes.c_size_t()
     begin, end = c_uint64(1), c_uint64(0)  # an empty range: every address
     function = cast(block_counter().count_block, c_void_p)
-    status = uclib.uc_hook_add(
-        engine._uch, byref(handle), unicorn_const.UC_HOOK_BLOCK, function, byref(counts), begin, end
+    status = _binding.uclib.uc_hook_add(
+        engine._uch, byref(handle), _constants.UC_HOOK_BLOCK, function, byref(counts), begin, end
     )
-    if status != unicorn_const.UC_ERR_OK:
-        raise unicorn.UcError(status)
+    if status != _constants.UC_ERR_OK:
+        raise _unicorn.UcError(status)

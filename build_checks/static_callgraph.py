@@ -13,6 +13,7 @@ from dataclasses import dataclass
 
 from build_checks.emulate_image import Image, Instruction, disassemble
 from build_checks.targets import Emulator, Target
+from build_checks.targets_weights import listed_registers
 
 
 @dataclass(frozen=True, slots=True)
@@ -22,7 +23,7 @@ class _Patterns:
     call      mnemonics that leave a return address
     jump      mnemonics that may leave the function for good
     indirect  a whole instruction whose destination is in a register, other than a return
-    returning bytes of stack that a call takes for its return address, beyond what the callee's own stack counts
+    returning bytes of stack that a call takes for its return address: part of the callee's own stack
     """
 
     call: re.Pattern[str]
@@ -55,7 +56,7 @@ class CallGraph:
     calls      functions called by each
     jumps      functions that each may jump to without coming back
     indirect   functions that call through a register, with the instruction
-    returning  stack of one return address, where calling itself takes it
+    returning  stack of one return address, counted in `frames`, where calling itself takes it
     """
 
     frames: Mapping[str, int]
@@ -88,15 +89,15 @@ class CallGraph:
 
     def worst_stack(self, root: str) -> int:
         """The most stack that a call of `root` takes, its return address included where calling takes stack."""
-        return self.returning + self._below(root, frozenset())
+        return self._below(root, frozenset())
 
     def _below(self, function: str, above: frozenset[str]) -> int:
         """Jumps between library routines may form loops; a function met again below itself adds nothing."""
         if function in above:
             return 0
         inside = above | {function}
-        called = [self.returning + self._below(callee, inside) for callee in self.calls.get(function, ())]
-        jumped = [self._below(callee, inside) for callee in self.jumps.get(function, ())]
+        called = [self._below(callee, inside) for callee in self.calls.get(function, ())]
+        jumped = [self._below(callee, inside) - self.returning for callee in self.jumps.get(function, ())]
         return self.frames.get(function, 0) + max([0, *called, *jumped])
 
 
@@ -135,7 +136,9 @@ def _indirect(body: Iterable[Instruction], patterns: _Patterns) -> list[str]:
 def _frame(image: Image, name: str, body: Iterable[Instruction]) -> int:
     if name in image.frames:
         return image.frames[name]
-    return sum(_pushed(image.target, row) for row in body)
+    if name.startswith("__riscv_save_"):
+        return 0  # counted where it is called
+    return _PATTERNS[image.target.emulator].returning + sum(_pushed(image.target, row) for row in body)
 
 
 def _pushed(target: Target, row: Instruction) -> int:
@@ -143,9 +146,17 @@ def _pushed(target: Target, row: Instruction) -> int:
     if target.emulator is Emulator.SIMAVR:
         return _pushed_avr(row)
     if target.emulator is Emulator.UNICORN_RISCV:
-        lowered = re.fullmatch(r"sp,(?:sp,)?-(\d+)", row.operands)
-        return int(lowered.group(1)) if lowered and row.mnemonic in ("addi", "c.addi16sp", "c.addi") else 0
+        return _pushed_riscv(row)
     return _pushed_thumb(row)
+
+
+def _pushed_riscv(row: Instruction) -> int:
+    """The library's shared entry code, __riscv_save_n, lowers the pointer for its caller, 16 for 4 registers."""
+    saved = re.fullmatch(r"__riscv_save_(\d+)", row.destination)
+    if saved and row.mnemonic == "jal":
+        return 16 * (int(saved.group(1)) // 4 + 1)
+    lowered = re.fullmatch(r"sp,sp,-(\d+)", row.operands)
+    return int(lowered.group(1)) if lowered and row.mnemonic in ("addi", "add") else 0
 
 
 def _pushed_avr(row: Instruction) -> int:
@@ -155,8 +166,6 @@ def _pushed_avr(row: Instruction) -> int:
 
 
 def _pushed_thumb(row: Instruction) -> int:
-    from build_checks.targets_weights import listed_registers
-
     lowered = re.fullmatch(r"sp, (?:sp, )?#(\d+)", row.operands)
     if row.mnemonic.startswith("sub") and lowered:
         return int(lowered.group(1))
