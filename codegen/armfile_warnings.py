@@ -10,6 +10,7 @@ import math
 from fractions import Fraction
 
 from codegen.armfile_numbers import exact_radians, rounded_quarter_turns
+from codegen.armfile_text import plain
 from codegen.armfile_values import Typed
 from codegen.errors import Fault
 from codegen.exact import Angle
@@ -104,10 +105,6 @@ def _warning(path: str, numbers: list[Typed], what: str, hint: str) -> Fault | N
     """One warning that lists the numbers it is about; None when there are none."""
     if not numbers:
         return None
-    listed = [f"{number.place} {number.key} = {_plain(number.number)}" for number in numbers[:_MOST_SHOWN]]
+    listed = [f"{number.place} {number.key} = {plain(number.number)}" for number in numbers[:_MOST_SHOWN]]
     more = [f"and {len(numbers) - _MOST_SHOWN} more"] if len(numbers) > _MOST_SHOWN else []
     return Fault(path, f"{', '.join(listed + more)}: {what}", hint)
-
-
-def _plain(number: Fraction) -> str:
-    return str(number.numerator) if number.denominator == 1 else repr(float(number))
