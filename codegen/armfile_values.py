@@ -221,7 +221,7 @@ class Section:
             number = "is absurdly large"
         if isinstance(number, str):
             accepted = f"a number in {unit.plural}, at most {unit.largest}, is accepted"
-            self.fault(f"{name} = {shown(value)}", f"{number}; {accepted}", _without_quotes(name, value))
+            self.fault(f"{name} = {shown(value)}", f"{number}; {accepted}", _advice(name, value))
             return None
         self.report.typed.append(Typed(self.place, name, number, unit.word in ANGLE_UNITS))
         return number
@@ -232,8 +232,10 @@ def _meant(word: str, choices: tuple[str, ...]) -> str:
     return did_you_mean(word, choices) if len(word) > 2 or word.casefold() in choices else ""
 
 
-def _without_quotes(name: str, value: object) -> str:
-    """A hint for a number that was typed as text."""
+def _advice(name: str, value: object) -> str:
+    """A hint for an infinite limit, and for a number that was typed as text."""
+    if name.startswith("limits") and isinstance(value, Decimal) and value.is_infinite():
+        return "leave limits out when the joint has none"
     if not isinstance(value, str) or isinstance(exact_number(_decimal(value)), str):
         return ""
     return f"write {name} = {value} without quotes"

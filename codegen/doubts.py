@@ -11,12 +11,13 @@ from __future__ import annotations
 from dataclasses import dataclass
 from fractions import Fraction
 from statistics import median_high, median_low
+from typing import Generic, TypeVar
 
 from codegen.armfile_numbers import rounded_quarter_turns
 from codegen.armfile_text import angle_number, with_unit
 from codegen.errors import Fault
 from codegen.exact import MP, Angle, Real
-from codegen.model import Arm, Convention, Frame, JointKind, JointRow, Quantity
+from codegen.model import Arm, Convention, JointKind, JointRow, Quantity
 
 NEAR = Angle.degrees(Fraction(5, 100)).value()  # to a right angle
 NEARLY_PARALLEL = Angle.degrees(1).value()
@@ -24,6 +25,9 @@ FAR_LARGER = 1000  # times the middle one of the lengths
 FAR_SMALLER = Fraction(1, 10_000)  # of it
 BLOWN_UP = 10  # times it: an offset that nearly parallel axes made
 MEASURED = 4  # so many nearly exact numbers come from a measurement, not from a slip
+
+_WHY_EXACT = "it is exact and keeps the equations simple"
+_Number = TypeVar("_Number", Angle, Fraction)
 
 
 def doubts(arm: Arm) -> tuple[Fault, ...]:
@@ -42,12 +46,12 @@ def doubts(arm: Arm) -> tuple[Fault, ...]:
 
 
 @dataclass(frozen=True, slots=True)
-class _Entry:
+class _Entry(Generic[_Number]):
     """One number of the file: where it stands, its key, its value."""
 
     where: str
     key: str
-    value: Quantity
+    value: _Number
 
     @property
     def place(self) -> tuple[str, str]:
@@ -65,28 +69,29 @@ class _Table:
 
     def __init__(self, arm: Arm) -> None:
         self.arm = arm
-        rows = [entry for index, row in enumerate(arm.joints) for entry in _row_entries(_joint(arm, index), row)]
-        tool = [_Entry("[tool]", f"xyz[{i}]", value) for i, value in enumerate(arm.tool.xyz)]
-        self.angles = [entry for entry in rows if isinstance(entry.value, Angle)]
-        self.angles += [
-            _Entry(name, f"rpy[{i}]", value) for name, frame in _frames(arm) for i, value in enumerate(frame.rpy)
-        ]
-        self.lengths = [(entry, entry.value) for entry in rows + tool if isinstance(entry.value, Fraction)]
-        used = [abs(length) for _, length in self.lengths if length] or [Fraction(0)]
+        self.angles = _angles(arm)
+        self.lengths = _lengths(arm)
+        used = [abs(entry.value) for entry in self.lengths if entry.value] or [Fraction(0)]
         self.small_length = median_high(used) * FAR_SMALLER
         self.middle_length = median_low([length for length in used if length >= self.small_length])
-
         shift = 1 if arm.convention is Convention.MODIFIED else 0
         twists = [(first + shift, first) for first in range(len(arm.joints) - 1)]
         self.nearly_parallel = [pair for pair in twists if _is_nearly_parallel(arm.joints[pair[0]].alpha)]
 
 
-def _row_entries(where: str, row: JointRow) -> list[_Entry]:
-    return [_Entry(where, key, getattr(row, key)) for key in ("a", "alpha", "d", "theta")]
+def _angles(arm: Arm) -> list[_Entry[Angle]]:
+    rows = [(_joint(arm, index), row) for index, row in enumerate(arm.joints)]
+    table = [
+        _Entry(where, key, angle) for where, row in rows for key, angle in (("alpha", row.alpha), ("theta", row.theta))
+    ]
+    frames = (("[base]", arm.base.rpy), ("[tool]", arm.tool.rpy))
+    return table + [_Entry(where, f"rpy[{i}]", angle) for where, rpy in frames for i, angle in enumerate(rpy)]
 
 
-def _frames(arm: Arm) -> tuple[tuple[str, Frame], ...]:
-    return ("[base]", arm.base), ("[tool]", arm.tool)
+def _lengths(arm: Arm) -> list[_Entry[Fraction]]:
+    rows = [(_joint(arm, index), row) for index, row in enumerate(arm.joints)]
+    table = [_Entry(where, key, length) for where, row in rows for key, length in (("a", row.a), ("d", row.d))]
+    return table + [_Entry("[tool]", f"xyz[{i}]", length) for i, length in enumerate(arm.tool.xyz)]
 
 
 def _joint(arm: Arm, index: int) -> str:
@@ -99,11 +104,11 @@ def _joint(arm: Arm, index: int) -> str:
 def _nearly_exact(table: _Table) -> list[Fault]:
     """Angles near a right angle and lengths near zero: one by one, or as one fault when the whole table is measured."""
     twists = {(_joint(table.arm, row), "alpha") for row, _ in table.nearly_parallel}
-    near = [entry for entry in table.angles if _is_near_right_angle(_angle(entry)) and entry.place not in twists]
-    small = [entry for entry, length in table.lengths if 0 < abs(length) < table.small_length]
+    near = [entry for entry in table.angles if _is_near_right_angle(entry.value) and entry.place not in twists]
+    small = [entry for entry in table.lengths if 0 < abs(entry.value) < table.small_length]
     if len(near) + len(small) < MEASURED:
         return [_near_angle(table.arm, entry) for entry in near] + [_small_length(table.arm, entry) for entry in small]
-    listed = ", ".join(f"{entry.where} {entry.key}" for entry in near + small)
+    listed = ", ".join(" ".join(place) for place in [entry.place for entry in near] + [entry.place for entry in small])
     return [
         Fault(
             "[[joint]]",
@@ -111,11 +116,6 @@ def _nearly_exact(table: _Table) -> list[Fault]:
             "a closed form needs exact ones: give the nominal table where the arm may be off by the difference",
         )
     ]
-
-
-def _angle(entry: _Entry) -> Angle:
-    assert isinstance(entry.value, Angle)
-    return entry.value
 
 
 def _is_near_right_angle(angle: Angle) -> bool:
@@ -129,21 +129,16 @@ def _nearest_right_angle(angle: Angle) -> Angle:
     return Angle(half_turns=Fraction(int(MP.nint(angle.value() * 2 / MP.pi)), 2))
 
 
-def _near_angle(arm: Arm, entry: _Entry) -> Fault:
-    exact = _nearest_right_angle(_angle(entry))
-    off = float(abs((_angle(entry) - exact).value()) * 180 / MP.pi)
+def _near_angle(arm: Arm, entry: _Entry[Angle]) -> Fault:
+    exact = _nearest_right_angle(entry.value)
+    off = float(abs((entry.value - exact).value()) * 180 / MP.pi)
     what = f"{entry.key} = {with_unit(arm, entry.value)} is {off:.2g} deg from a multiple of 90 deg"
-    hint = (
-        f"write {entry.key} = {angle_number(arm, exact)} if that is meant: it is exact and keeps the equations simple"
-    )
-    return Fault(entry.where, what, hint)
+    return Fault(entry.where, what, f"write {entry.key} = {angle_number(arm, exact)} if that is meant: {_WHY_EXACT}")
 
 
-def _small_length(arm: Arm, entry: _Entry) -> Fault:
+def _small_length(arm: Arm, entry: _Entry[Fraction]) -> Fault:
     what = f"{entry.key} = {with_unit(arm, entry.value)} is nearly zero beside the other lengths"
-    return Fault(
-        entry.where, what, f"write {entry.key} = 0 if that is meant: it is exact and keeps the equations simple"
-    )
+    return Fault(entry.where, what, f"write {entry.key} = 0 if that is meant: {_WHY_EXACT}")
 
 
 # --- nearly parallel axes ---
@@ -181,11 +176,11 @@ def _far_larger(table: _Table) -> list[Fault]:
     return [
         Fault(
             entry.where,
-            f"{entry.key} = {with_unit(arm, length)} is {FAR_LARGER} times as long as the others, or more",
+            f"{entry.key} = {with_unit(arm, entry.value)} is {FAR_LARGER} times as long as the others, or more",
             f"is it in {arm.length_unit}, as they are?",
         )
-        for entry, length in table.lengths
-        if length and abs(length) >= FAR_LARGER * table.middle_length and entry.place not in explained
+        for entry in table.lengths
+        if entry.value and abs(entry.value) >= FAR_LARGER * table.middle_length and entry.place not in explained
     ]
 
 
