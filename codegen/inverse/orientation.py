@@ -1,0 +1,119 @@
+"""Directions by two turning joints, orientations by three, slides along known directions."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from codegen.geometry import Matrix, Vector
+from codegen.inverse.plan import Least
+from codegen.inverse.segment import Segment, Use
+from codegen.inverse.solver import Balance, Solver
+from codegen.program import Node
+
+
+@dataclass(frozen=True, slots=True)
+class DirectionProblem:
+    """segment (two turning joints) takes the unit vector n to the unit vector v."""
+
+    segment: Segment
+    n: Vector
+    v: Vector
+
+    def reversed(self, solver: Solver) -> DirectionProblem:
+        return DirectionProblem(self.segment.reversed(solver.space), self.v, self.n)
+
+
+def solve_direction2(solver: Solver, problem: DirectionProblem, what: str) -> bool:
+    """The second joint from the height along the first axis (two roots), then the first."""
+    ways = [(_height_equation(solver, way), way) for way in (problem, problem.reversed(solver))]
+    usable = [
+        (balance, way)
+        for balance, way in ways
+        if not solver.oracle.vanishes(balance.cosine_part, balance.sine_part)
+    ]
+    if not usable:
+        return False
+    balance, way = min(usable, key=lambda pair: not pair[0].fixed)
+    space = solver.space
+    first, second = way.segment.uses
+    solver.balance(second, balance, f"{what}: its tilt against the axis of {solver.label(first.joint.index)}")
+    turned = space.times(solver.motion(second).rotation, way.n)
+    turned = space.times(way.segment.cores[0].middle.rotation, turned)
+    name = solver.label(first.joint.index)
+    space.named(turned, f"{name}_from", f"{what}, before {name} turns it")
+    solver.turn_onto(first, turned, way.v, Least.ANGLE_SQUARED, f"{what}: {name} turns it to its place")
+    return True
+
+
+def _height_equation(solver: Solver, problem: DirectionProblem) -> Balance:
+    """z . K R n = v_z, with the product of its two factors in a form that stays good near the poles."""
+    b, n, v = solver.builder, problem.n, problem.v
+    a = problem.segment.cores[0].middle.rotation[2]
+    cosine_part = b.add(b.mul(a[0], n[0]), b.mul(a[1], n[1]))
+    sine_part = b.sub(b.mul(a[1], n[0]), b.mul(a[0], n[1]))
+    target = b.sub(v[2], b.mul(a[2], n[2]))
+    return Balance(cosine_part, sine_part, target, Least.ANGLE, _pole_square(solver, a, n, v))
+
+
+def _pole_square(solver: Solver, a: Vector, n: Vector, v: Vector) -> Node | None:
+    """(A^2 + B^2) - C^2 = (cos(x - y) - v_z)(v_z - cos(x + y)), x and y the tilts of a and n.
+
+    Where cos(x - y) is 1 the two outer axes can line up: 1 - v_z is then |v_xy|^2 / (1 + v_z), which keeps its digits.
+    """
+    b, oracle = solver.builder, solver.oracle
+    if not (a[2].is_constant and n[2].is_constant):
+        return None
+    meets_above = oracle.vanishes(b.sub(a[2], n[2]))
+    meets_below = oracle.vanishes(b.add(a[2], n[2]))
+    across = b.add(b.square(v[0]), b.square(v[1]))
+    if meets_above and meets_below:
+        return across
+    if not (meets_above or meets_below):
+        return None
+    height = v[2] if meets_above else b.neg(v[2])
+    near = b.choice(height, b.div(across, b.add(b.integer(1), b.size(height))), b.sub(b.integer(1), height))
+    doubled = b.sub(b.mul(b.integer(2), b.square(a[2])), b.integer(1))  # cos(2 x)
+    return b.mul(near, b.sub(height, doubled))
+
+
+def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what: str) -> bool:
+    """Three turning joints that must give a rotation: the last axis's direction by two, then the turn left over."""
+    space = solver.space
+    n = space.column(segment.cores[1].middle.rotation, 2)
+    problem = DirectionProblem(segment.part(0, 2), n, space.column(rotation, 2))
+    if not solve_direction2(solver, problem, f"{what}, axis of {solver.label(segment.uses[2].joint.index)}"):
+        return False
+    left = rotation
+    for use, core in zip(segment.uses[:2], segment.cores, strict=True):
+        left = space.product(space.transposed(solver.motion(use).rotation), left)
+        left = space.product(space.transposed(core.middle.rotation), left)
+    solver.direction(
+        segment.uses[2], left[0][0], left[1][0], Least.ANGLE,
+        f"{what}: {solver.label(segment.uses[2].joint.index)} makes up the turn that is left over",
+    )  # fmt: skip
+    return True
+
+
+def solve_slides(
+    solver: Solver, uses: tuple[Use, ...], axes: list[Vector], gap: Vector, what: str, normal: Vector | None
+) -> bool:
+    """One, two or three slides along known directions that add up to `gap` (Cramer's rule).
+
+    normal  for two slides: the direction that neither needs to reach
+    """
+    space = solver.space
+    directions = list(axes)
+    if len(directions) == 2:
+        if normal is None:
+            return False
+        directions.append(normal)
+    if len(directions) == 1:
+        solver.slide(uses[0], space.dot(axes[0], gap), space.one, what)
+        return True
+    det = space.dot(directions[0], space.cross(directions[1], directions[2]))
+    if solver.oracle.vanishes(det):
+        return False
+    for k, use in enumerate(uses):
+        others = (directions[(k + 1) % 3], directions[(k + 2) % 3])
+        solver.slide(use, space.dot(gap, space.cross(*others)), det, f"{what}: {solver.label(use.joint.index)}")
+    return True

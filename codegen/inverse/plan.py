@@ -1,0 +1,179 @@
+"""A plan: the order in which joints are solved, by which solvable form, and what each choice means.
+
+A step makes one joint (or the angle of a group) known. Steps with two or more roots take digits of the branch number. All
+values are nodes of one program; the plan holds no formulas of its own.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from enum import Enum
+
+from codegen.geometry import Pair
+from codegen.program import Node
+
+SeedAngle = tuple[tuple[int, int], ...]  # (joint index, sign): the seed's angles that add up; empty: zero
+
+
+class Least(Enum):
+    """What a step's values are measured in: how small they must be before rounding alone can explain them."""
+
+    NOTHING = "never free"
+    ANGLE = "entries of unit vectors"
+    ANGLE_SQUARED = "products of two entries of unit vectors"
+    LENGTH = "lengths"
+    LENGTH_SQUARED = "products of two lengths"
+    AREA = "a length times the arm's own size"
+
+
+@dataclass(frozen=True, slots=True)
+class DirectionStep:
+    """The pair (c, s) along (x, y): one root, from two equations linear in the pair.
+
+    joint  the joint that it settles; None for the angle of a group, or where a later step settles the joint
+    Where x and y both vanish the pose leaves the angle free: it keeps its seed.
+    """
+
+    joint: int | None
+    angle: str
+    pair: Pair
+    x: Node
+    y: Node
+    least: Least
+    seed: SeedAngle
+    note: str
+    roots: int = 1
+
+
+@dataclass(frozen=True, slots=True)
+class BalanceStep:
+    """c A + s B = C: two roots, by the sign of A s - B c (Paul 1981; Craig, "transcendental equations").
+
+    size    sqrt(A^2 + B^2); None where A and B are constants, scaled to 1: the joint is then never free
+    square  size^2 - C^2 in a form that keeps its digits; root is its signed square root, made known by the step
+    x, y    the direction of (c, s): (A C - B root, B C + A root)
+    side    A s - B c
+    """
+
+    joint: int | None
+    angle: str
+    pair: Pair
+    size: Node | None
+    target: Node
+    square: Node
+    root: Node
+    x: Node
+    y: Node
+    least: Least
+    seed: SeedAngle
+    side: Node
+    meaning: str
+    note: str
+    roots: int = 2
+
+
+@dataclass(frozen=True, slots=True)
+class SlideStep:
+    """numerator / denominator: one root. Where the denominator vanishes the slide is free and keeps its seed."""
+
+    joint: int
+    angle: str
+    value: Node
+    numerator: Node
+    denominator: Node
+    note: str
+    roots: int = 1
+
+
+@dataclass(frozen=True, slots=True)
+class SlideRootsStep:
+    """middle +- sqrt(square): two roots, by the sign of value - middle."""
+
+    joint: int
+    angle: str
+    value: Node
+    middle: Node
+    square: Node
+    root: Node
+    side: Node
+    meaning: str
+    note: str
+    roots: int = 2
+
+
+@dataclass(frozen=True, slots=True)
+class QuarticStep:
+    """Up to four roots of a trigonometric polynomial f0 + f1 c + f2 s + f3 c^2 + f4 c s, numbered as the header says."""
+
+    joint: int
+    angle: str
+    pair: Pair
+    coefficients: tuple[Node, Node, Node, Node, Node]
+    known: Pair  # the pair where all joints are known, for finding a branch's number
+    seed: SeedAngle
+    note: str
+    meaning: str = "crossing direction of the root, then its order"
+    roots: int = 4
+
+
+@dataclass(frozen=True, slots=True)
+class SlideQuarticStep:
+    """Up to four roots of f0 + f1 x + f2 x^2 + f3 x^3 + f4 x^4 within +-bound."""
+
+    joint: int
+    angle: str
+    value: Node
+    coefficients: tuple[Node, Node, Node, Node, Node]
+    known: Node
+    note: str
+    meaning: str = "crossing direction of the root, then its order"
+    roots: int = 4
+
+
+@dataclass(frozen=True, slots=True)
+class Variable:
+    """What a refinement changes: a pair or a slide; its value before, during and after."""
+
+    joint: int
+    name: str
+    before: Pair | Node
+    during: Pair | Node
+    after: Pair | Node
+
+
+@dataclass(frozen=True, slots=True)
+class RefineStep:
+    """Newton steps on two equations in two joints: the roots of an elimination polished on what they came from."""
+
+    variables: tuple[Variable, Variable]
+    residuals: tuple[Node, Node]
+    slopes: tuple[tuple[Node, Node], tuple[Node, Node]]  # d residual / d variable
+    note: str
+    passes: int = 3
+    roots: int = 1
+
+
+Step = DirectionStep | BalanceStep | SlideStep | SlideRootsStep | QuarticStep | SlideQuarticStep | RefineStep
+
+
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """How one task of one arm is solved.
+
+    steps      in order
+    pairs      per turning joint that is not held: the pair of its variable plus its offset
+    slides     per sliding joint that is not held: its variable plus its offset
+    structure  what was found in the chain, in words a reviewer can check
+    """
+
+    steps: tuple[Step, ...]
+    pairs: dict[int, Pair] = field(default_factory=dict)
+    slides: dict[int, Node] = field(default_factory=dict)
+    structure: tuple[str, ...] = ()
+
+    @property
+    def branches(self) -> int:
+        count = 1
+        for step in self.steps:
+            count *= step.roots
+        return count

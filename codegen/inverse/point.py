@@ -1,0 +1,238 @@
+"""Two or three unknown joints that must bring one point to another: J1 K1 J2 [K2 J3] w = p."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from codegen.geometry import Pair, Vector
+from codegen.inverse.commuting import orders
+from codegen.inverse.elimination import (
+    Equation,
+    Outer,
+    outer_equation,
+    point_equations,
+    solve_outer,
+    solved_for_z,
+)
+from codegen.inverse.plan import Least
+from codegen.inverse.polish import polish
+from codegen.inverse.polynomial import Algebra, PolyVector
+from codegen.inverse.segment import Core, Segment, Use
+from codegen.inverse.solver import Balance, Solver
+from codegen.program import Node
+
+
+@dataclass(frozen=True, slots=True)
+class PointProblem:
+    """segment . w = p: find the joints of the segment."""
+
+    segment: Segment
+    w: Vector
+    p: Vector
+
+    def reversed(self, solver: Solver) -> PointProblem:
+        return PointProblem(self.segment.reversed(solver.space), self.p, self.w)
+
+
+@dataclass(frozen=True, slots=True)
+class Elimination:
+    """One way to solve a three-joint point problem: joint 1 eliminated, joint 3 first, then 2, then 1."""
+
+    problem: PointProblem
+    u: PolyVector
+    equations: list[Equation]
+    outer: Outer
+
+
+def carried(solver: Solver, segment: Segment, w: Vector) -> tuple[PolyVector, Algebra]:
+    """u of J1 K1 J2 u = p, as a polynomial in joint 3; the slides of K1 along axis 2 are in it."""
+    space = solver.space
+    first, second = segment.cores
+    use = segment.uses[2]
+    algebra = Algebra(solver.builder, use.turns)
+    moved = algebra.plus(algebra.moved_by_joint(w, use.sign), space.along_z(second.behind))
+    u = algebra.plus(algebra.times(second.middle.rotation, moved), second.middle.shift)
+    along = solver.builder.add(second.before, first.behind)
+    return algebra.plus(u, space.along_z(along)), algebra
+
+
+def eliminations(solver: Solver, problem: PointProblem) -> list[Elimination]:
+    """Every workable order, cheapest first."""
+    ways = []
+    for way in readings(solver, problem):
+        u, algebra = carried(solver, way.segment, way.w)
+        first, core = way.segment.uses[0], way.segment.cores[0]
+        p = solver.space.minus(way.p, solver.space.along_z(core.before))
+        equations = point_equations(solver, first, core, u, p, algebra)
+        outer = outer_equation(solver, equations, u, algebra, way.segment.uses[1])
+        if outer is not None:
+            ways.append(Elimination(way, u, equations, outer))
+    return sorted(ways, key=lambda way: way.outer.score)
+
+
+def readings(solver: Solver, problem: PointProblem) -> list[PointProblem]:
+    """The problem in every order that commuting joints allow, each from both ends."""
+    space = solver.space
+    found = []
+    for framed in orders(space, problem.segment):
+        w = space.moved(framed.trail, problem.w)
+        p = space.moved(space.inverse(framed.lead), problem.p)
+        forward = PointProblem(framed.segment, w, p)
+        found += [forward, forward.reversed(solver)]
+    return found
+
+
+def solve_point3(solver: Solver, problem: PointProblem, what: str) -> bool:
+    """Three joints; False when no elimination leaves a solvable equation."""
+    ways = eliminations(solver, problem)
+    if not ways:
+        return False
+    way = ways[0]
+    segment = way.problem.segment
+    outer_use = segment.uses[2]
+    note = f"{what}: {_what_is_left(solver, segment)}"
+    solve_outer(solver, outer_use, way.outer, note)
+    if way.outer.kind == "quartic":
+        polish(solver, segment.uses[1], outer_use, way.equations, way.u, what)
+        _last_joint(solver, _without_last(solver, way.problem), what)
+        return True
+    return solve_point2(solver, _without_last(solver, way.problem), what)
+
+
+def _what_is_left(solver: Solver, segment: Segment) -> str:
+    first, inner, outer = (solver.label(use.joint.index) for use in segment.uses)
+    return f"what {first} cannot change, without {inner}, leaves {outer}"
+
+
+def _without_last(solver: Solver, problem: PointProblem) -> PointProblem:
+    """The two-joint problem once the last joint is known."""
+    space, segment = solver.space, problem.segment
+    w = space.moved(solver.motion(segment.uses[-1]), problem.w)
+    w = space.moved(segment.cores[-1].whole(space), w)
+    return PointProblem(segment.part(0, 2), w, problem.p)
+
+
+def solve_point2(solver: Solver, problem: PointProblem, what: str) -> bool:
+    """Two joints: one of them alone from what the other cannot change, then the other."""
+    ways = [_second_joint(solver, problem), _second_joint(solver, problem.reversed(solver))]
+    found = [way for way in ways if way is not None]
+    if not found:
+        return False
+    best = min(found, key=lambda way: way.score)
+    best.solve(solver, what)
+    _last_joint(solver, best.problem, what)
+    return True
+
+
+@dataclass(frozen=True, slots=True)
+class SecondJoint:
+    """How the inner joint of a two-joint problem is found."""
+
+    problem: PointProblem
+    u: Vector
+    equations: tuple[Equation, Equation]
+    kind: str
+    which: int
+    score: int
+
+    def solve(self, solver: Solver, what: str) -> None:
+        use = self.problem.segment.uses[1]
+        note = f"{what}: {solver.label(use.joint.index)}"
+        equation = self.equations[self.which]
+        if self.kind == "balance":
+            solver.balance(use, _balance(solver, equation, self.u), note)
+        elif self.kind == "direction":
+            _from_both(solver, use, self.equations, self.u, note)
+        elif self.kind == "slide":
+            rest = solver.builder.sub(_rhs(solver, equation), solver.space.dot(equation.a, self.u))
+            solver.slide(use, rest, equation.a[2], note)
+        else:
+            _slide_roots(solver, self.problem, self.u, note)
+
+
+def _rhs(solver: Solver, equation: Equation) -> Node:
+    return equation.rhs.coefficient((0, 0), solver.space.zero)
+
+
+def _inner_data(solver: Solver, problem: PointProblem) -> tuple[Vector, Vector, Core, Use]:
+    """(u, p, core, first): the slides along both axes moved out of the core."""
+    space = solver.space
+    core, first = problem.segment.cores[0], problem.segment.uses[0]
+    u = space.plus(problem.w, space.along_z(core.behind))
+    p = space.minus(problem.p, space.along_z(core.before))
+    return u, p, core, first
+
+
+def _second_joint(solver: Solver, problem: PointProblem) -> SecondJoint | None:
+    u, p, core, first = _inner_data(solver, problem)
+    inner = problem.segment.uses[1]
+    algebra = Algebra(solver.builder, inner.turns)
+    constant = (algebra.constant(u[0]), algebra.constant(u[1]), algebra.constant(u[2]))
+    one, two = point_equations(solver, first, core, constant, p, algebra)
+    found = _turning_kind(solver, (one, two), u) if inner.turns else _sliding_kind(solver, (one, two))
+    return None if found is None else SecondJoint(problem, u, (one, two), *found)
+
+
+def _turning_kind(solver: Solver, equations: tuple[Equation, Equation], u: Vector) -> tuple[str, int, int] | None:
+    oracle, b = solver.oracle, solver.builder
+    balances = [_balance(solver, equation, u) for equation in equations]
+    there = [not oracle.vanishes(balance.cosine_part, balance.sine_part) for balance in balances]
+    if not any(there):
+        return None
+    if all(there):
+        one, two = equations
+        if not oracle.vanishes(b.sub(b.mul(one.a[0], two.a[1]), b.mul(one.a[1], two.a[0]))):
+            return ("direction", 0, 5)
+    which = min((k for k in (0, 1) if there[k]), key=lambda k: not balances[k].fixed)
+    return ("balance", which, 2 if balances[which].fixed else 6)
+
+
+def _sliding_kind(solver: Solver, equations: tuple[Equation, Equation]) -> tuple[str, int, int] | None:
+    linear = [
+        k for k, e in enumerate(equations) if e.least is Least.LENGTH and not solver.oracle.vanishes(e.a[2])
+    ]
+    if linear:
+        which = min(linear, key=lambda k: not equations[k].a[2].is_constant)
+        return ("slide", which, 1 if equations[which].a[2].is_constant else 7)
+    return ("slide roots", 1, 4) if equations[1].least is Least.AREA else None
+
+
+def _balance(solver: Solver, equation: Equation, u: Vector) -> Balance:
+    """a . R u = rhs as A c + B s = C."""
+    b, a = solver.builder, equation.a
+    cosine_part = b.add(b.mul(a[0], u[0]), b.mul(a[1], u[1]))
+    sine_part = b.sub(b.mul(a[1], u[0]), b.mul(a[0], u[1]))
+    return Balance(cosine_part, sine_part, b.sub(_rhs(solver, equation), b.mul(a[2], u[2])), equation.least)
+
+
+def _from_both(solver: Solver, use: Use, equations: tuple[Equation, Equation], u: Vector, note: str) -> Pair:
+    """The inner turning joint from two independent linear equations."""
+    b = solver.builder
+    left, right = (b.sub(_rhs(solver, e), b.mul(e.a[2], u[2])) for e in equations)
+    z_x, z_y = solved_for_z(solver, equations, left, right)
+    return solver.turn_onto(use, u, (z_x, z_y, u[2]), Least.NOTHING, note)
+
+
+def _slide_roots(solver: Solver, problem: PointProblem, u: Vector, note: str) -> None:
+    """A slide across the axis of a turning joint: the point keeps its distance from the axis."""
+    space, b = solver.space, solver.builder
+    u, p, core, _ = _inner_data(solver, problem)
+    along = space.column(core.middle.rotation, 2)
+    across = space.cross(space.unit[2], along)
+    start = space.moved(core.middle, u)
+    missed = space.dot(across, start)
+    square = b.sub(b.add(b.square(p[0]), b.square(p[1])), b.square(missed))
+    solver.slide_roots(problem.segment.uses[1], b.neg(space.dot(along, start)), square, note)
+
+
+def _last_joint(solver: Solver, problem: PointProblem, what: str) -> None:
+    """The first joint of the segment, once everything behind it is known."""
+    space = solver.space
+    first, inner = problem.segment.uses
+    name = solver.label(first.joint.index)
+    y = space.moved(problem.segment.cores[0].whole(space), space.moved(solver.motion(inner), problem.w))
+    space.named(y, f"{name}_from", f"{what}, before {name} moves it")
+    if first.turns:
+        solver.turn_onto(first, y, problem.p, Least.LENGTH_SQUARED, f"{what}: {name} turns it to its place")
+    else:
+        solver.slide(first, solver.builder.sub(problem.p[2], y[2]), space.one, f"{what}: {name} slides it to its place")

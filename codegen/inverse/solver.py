@@ -1,0 +1,258 @@
+"""The solvable forms: each takes equations whose values are known and makes one more joint known.
+
+Sources. Pairs from one equation A c + B s = C, and from two linear ones: Paul, Robot Manipulators (1981), chapter 3; Craig,
+Introduction to Robotics, appendix C. Quartic in the half angle: Pieper, The Kinematics of Manipulators under Computer
+Control (1968).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from codegen.geometry import Pair, Rigid, Space, Vector
+from codegen.inverse.oracle import Oracle
+from codegen.inverse.plan import (
+    BalanceStep,
+    DirectionStep,
+    Least,
+    QuarticStep,
+    RefineStep,
+    SeedAngle,
+    SlideQuarticStep,
+    SlideRootsStep,
+    SlideStep,
+    Step,
+    Variable,
+)
+from codegen.inverse.polynomial import Poly
+from codegen.inverse.segment import Use
+from codegen.program import Builder, Node
+
+
+@dataclass(frozen=True, slots=True)
+class Balance:
+    """The equation A c + B s = C of one turning joint, before it is solved.
+
+    square  (sqrt(A^2+B^2) - C)(sqrt(A^2+B^2) + C) where a better form of it is known
+    """
+
+    cosine_part: Node
+    sine_part: Node
+    target: Node
+    least: Least
+    square: Node | None = None
+
+    @property
+    def fixed(self) -> bool:
+        return self.cosine_part.is_constant and self.sine_part.is_constant
+
+
+@dataclass
+class Solver:
+    """Collects the steps of one plan and the values that they make known."""
+
+    builder: Builder
+    space: Space
+    oracle: Oracle
+    joints: int
+    steps: list[Step] = field(default_factory=list)
+    pairs: dict[int, Pair] = field(default_factory=dict)
+    slides: dict[int, Node] = field(default_factory=dict)
+    structure: list[str] = field(default_factory=list)
+    labels: dict[int, str] = field(default_factory=dict)
+    known_pairs: dict[int, Pair] = field(default_factory=dict)
+    known_slides: dict[int, Node] = field(default_factory=dict)
+    known_headings: dict[Pair, Pair] = field(default_factory=dict)
+    stage: int = 0
+
+    # -- names -------------------------------------------------------------------------------------------------------
+    def label(self, index: int) -> str:
+        return self.labels.get(index, f"joint{index + 1}")
+
+    def heading(self, topic: str) -> None:
+        """Names of values made from here on start with this word."""
+        self.builder.topic = topic
+
+    # -- what a step makes known -------------------------------------------------------------------------------------
+    def _new_stage(self, roots: int) -> None:
+        if roots > 1:
+            self.stage += 1
+
+    def new_pair(self, name: str) -> Pair:
+        pair = Pair(
+            self.builder.fresh_stage(f"{name}.c", self.stage),
+            self.builder.fresh_stage(f"{name}.s", self.stage),
+        )
+        self.oracle.declare_pair(pair)
+        return pair
+
+    def new_slide(self, name: str) -> Node:
+        node = self.builder.fresh_stage(f"{name}_slide", self.stage)
+        self.oracle.declare_real(node)
+        return node
+
+    def own_pair(self, use: Use) -> Pair:
+        """The pair of a use of a joint already solved."""
+        pair = self.pairs[use.joint.index]
+        return pair if use.sign > 0 else self.space.opposite(pair)
+
+    def own_slide(self, use: Use) -> Node:
+        slide = self.slides[use.joint.index]
+        return slide if use.sign > 0 else self.builder.neg(slide)
+
+    def is_real(self, use: Use) -> bool:
+        """Whether the arm has this joint; a free turn of the tool is a joint of the derivation only."""
+        return use.joint.index < self.joints
+
+    def seed_of(self, use: Use) -> SeedAngle:
+        """Where a free joint's angle comes from; a joint that only the derivation knows has no seed."""
+        return ((use.joint.index, 1),) if self.is_real(use) else ()
+
+    def motion(self, use: Use) -> Rigid:
+        """The rigid motion of a joint already solved."""
+        if use.turns:
+            return Rigid(self.space.about_z(self.own_pair(use)), self.space.origin)
+        return self.space.slide_z(self.own_slide(use))
+
+    # -- forms -------------------------------------------------------------------------------------------------------
+    def direction(self, use: Use, x: Node, y: Node, least: Least, note: str, settles: bool = True) -> Pair:
+        """The joint from (c, s) along (x, y)."""
+        if use.sign < 0:
+            y = self.builder.neg(y)
+        name = self.label(use.joint.index)
+        pair = self.new_pair(name if settles else f"{name}_rough")
+        joint = use.joint.index if settles and self.is_real(use) else None
+        self.steps.append(DirectionStep(joint, name, pair, x, y, least, self.seed_of(use), note))
+        self.pairs[use.joint.index] = pair
+        return self.own_pair(use)
+
+    def heading_angle(self, name: str, x: Node, y: Node, seed: SeedAngle, note: str) -> Pair:
+        """The angle of a whole group of joints, by the same form."""
+        pair = self.new_pair(name)
+        self.steps.append(DirectionStep(None, name, pair, x, y, Least.ANGLE, seed, note))
+        return pair
+
+    def balance(self, use: Use, equation: Balance, note: str) -> Pair:
+        """The joint from A c + B s = C: two roots."""
+        b = self.builder
+        a_part, b_part, target = equation.cosine_part, equation.sine_part, equation.target
+        if use.sign < 0:
+            b_part = b.neg(b_part)
+        size: Node | None = None
+        if equation.fixed:
+            scale = self._signed_size(a_part, b_part)
+            a_part, b_part, target = b.div(a_part, scale), b.div(b_part, scale), b.div(target, scale)
+            below, above = b.sub(b.integer(1), target), b.add(b.integer(1), target)
+            square = b.mul(below, above) if equation.square is None else b.div(equation.square, b.square(scale))
+        else:
+            size = b.sqrt(b.add(b.square(a_part), b.square(b_part)))
+            square = b.mul(b.sub(size, target), b.add(size, target))
+        self._new_stage(2)
+        name = self.label(use.joint.index)
+        root = b.fresh_stage(f"{name}_root", self.stage)
+        self.oracle.declare_real(root)
+        pair = self.new_pair(name)
+        self.steps.append(
+            BalanceStep(
+                joint=use.joint.index if self.is_real(use) else None,
+                angle=name,
+                pair=pair,
+                size=size,
+                target=target,
+                square=square,
+                root=root,
+                x=b.sub(b.mul(a_part, target), b.mul(b_part, root)),
+                y=b.add(b.mul(b_part, target), b.mul(a_part, root)),
+                least=equation.least,
+                seed=self.seed_of(use),
+                side=b.sub(b.mul(a_part, pair.sine), b.mul(b_part, pair.cosine)),
+                meaning=self._side_meaning(use, a_part, b_part),
+                note=note,
+            )
+        )
+        self.pairs[use.joint.index] = pair
+        return self.own_pair(use)
+
+    def _signed_size(self, a_part: Node, b_part: Node) -> Node:
+        """sqrt(A^2 + B^2), or the one part that is there with its own sign: the shape then does not hang on a sign."""
+        if b_part.is_exactly(0):
+            return a_part
+        if a_part.is_exactly(0):
+            return b_part
+        return self.builder.sqrt(self.builder.add(self.builder.square(a_part), self.builder.square(b_part)))
+
+    def _side_meaning(self, use: Use, a_part: Node, b_part: Node) -> str:
+        name = self.label(use.joint.index)
+        if a_part.is_exactly(1) and b_part.is_exactly(0):
+            return f"sin({name}) >= 0|sin({name}) < 0"
+        if b_part.is_exactly(1) and a_part.is_exactly(0):
+            return f"cos({name}) <= 0|cos({name}) > 0"
+        return f"{name}: first of the two roots|{name}: second of the two roots"
+
+    def slide(self, use: Use, numerator: Node, denominator: Node, note: str) -> Node:
+        """The slide of a joint from an equation linear in it."""
+        b = self.builder
+        if use.sign < 0:
+            numerator = b.neg(numerator)
+        name = self.label(use.joint.index)
+        value = self.new_slide(name)
+        self.steps.append(SlideStep(use.joint.index, name, value, numerator, denominator, note))
+        self.slides[use.joint.index] = value
+        return self.own_slide(use)
+
+    def slide_roots(self, use: Use, middle: Node, square: Node, note: str) -> Node:
+        """The slide from d^2 - 2 middle d + ... = 0, as middle +- sqrt(square)."""
+        b = self.builder
+        if use.sign < 0:
+            middle = b.neg(middle)
+        self._new_stage(2)
+        name = self.label(use.joint.index)
+        root = b.fresh_stage(f"{name}_root", self.stage)
+        value = self.new_slide(name)
+        meaning = f"{name} slid further out|{name} slid further in"
+        self.steps.append(
+            SlideRootsStep(use.joint.index, name, value, middle, square, root, b.sub(value, middle), meaning, note)
+        )
+        self.slides[use.joint.index] = value
+        return self.own_slide(use)
+
+    def quartic(self, use: Use, poly: Poly, note: str) -> None:
+        """The joint from a polynomial of degree two in (c, s), or of degree up to four in its slide."""
+        b, zero, name = self.builder, self.space.zero, self.label(use.joint.index)
+        index = use.joint.index
+        if use.turns:
+            monomials = ((0, 0), (1, 0), (0, 1), (2, 0), (1, 1))
+            f = [poly.coefficient(m, zero) for m in monomials]
+            if use.sign < 0:
+                f[2], f[4] = b.neg(f[2]), b.neg(f[4])
+            self._new_stage(4)
+            pair = self.new_pair(f"{name}_rough")
+            self.pairs[index] = pair
+            self.steps.append(
+                QuarticStep(index, name, pair, (f[0], f[1], f[2], f[3], f[4]), self.known_pairs[index], self.seed_of(use), note)
+            )
+            return
+        g = [poly.coefficient((k, 0), zero) for k in range(5)]
+        if use.sign < 0:
+            g[1], g[3] = b.neg(g[1]), b.neg(g[3])
+        self._new_stage(4)
+        value = self.new_slide(f"{name}_rough")
+        self.slides[index] = value
+        self.steps.append(
+            SlideQuarticStep(index, name, value, (g[0], g[1], g[2], g[3], g[4]), self.known_slides[index], note)
+        )
+
+    def refine(self, variables: tuple[Variable, Variable], residuals: tuple[Node, Node],
+               slopes: tuple[tuple[Node, Node], tuple[Node, Node]], note: str) -> None:  # fmt: skip
+        self.steps.append(RefineStep(variables, residuals, slopes, note))
+
+    def structure_found(self, text: str) -> None:
+        self.structure.append(text)
+
+    # -- small geometry ----------------------------------------------------------------------------------------------
+    def turn_onto(self, use: Use, source: Vector, goal: Vector, least: Least, note: str, settles: bool = True) -> Pair:
+        """The turn about z that takes `source` to `goal`, whose heights and radii already agree."""
+        b = self.builder
+        x = b.add(b.mul(source[0], goal[0]), b.mul(source[1], goal[1]))
+        y = b.sub(b.mul(source[0], goal[1]), b.mul(source[1], goal[0]))
+        return self.direction(use, x, y, least, note, settles)
