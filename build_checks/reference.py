@@ -114,7 +114,7 @@ class Reference:
     lower, upper  [n], limits in rad or m; infinite where the file gives none
     speeds        [n], rad/s or m/s; 1 where the file gives none (contract, section 2)
     free, held    positions of the joints that inverse kinematics solves, and of those it takes from its seed
-    base_length   distance of frame 0 from the world origin, m
+    base_position [3], origin of frame 0 in the world frame, m
     reach         m, a length that the tool's distance from frame 0 never exceeds (but for unlimited slides): the sum of
                   |a| and |d| over the rows, the travel of limited slides, and the tool's offset; 1 m when all are 0
     """
@@ -131,7 +131,7 @@ class Reference:
         self.held: Integers = np.array(arm.held_indices, dtype=np.int64)
         self._base = frame_matrix(arm.base)
         self._tool = frame_matrix(arm.tool)
-        self.base_length = float(np.linalg.norm(self._base[1]))
+        self.base_position = self._base[1]
         self.reach = _reach(arm)
 
     def chain(self, q: Array) -> Chain:

@@ -52,6 +52,18 @@ def rotation_vector(rotation: Array) -> Array:
     return skew * np.where(sine > 0.0, angle / np.where(sine > 0.0, sine, 1.0), 1.0)[:, None]
 
 
+def rotation_about(vectors: Array) -> Array:
+    """Rotations [N, 3, 3] by axis times angle [N, 3] (Rodrigues' formula)."""
+    angle = length(vectors)
+    axis = vectors / np.where(angle > 0.0, angle, 1.0)[:, None]
+    zero = np.zeros_like(angle)
+    x, y, z = axis.T
+    across = np.array([[zero, -z, y], [z, zero, -x], [-y, x, zero]]).transpose(2, 0, 1)
+    sine, versine = np.sin(angle)[:, None, None], (1.0 - np.cos(angle))[:, None, None]
+    rotation: Array = np.eye(3) + sine * across + versine * (across @ across)
+    return rotation
+
+
 @dataclass(frozen=True, slots=True)
 class Misses:
     """Target minus actual: metres [N, 3], and radians [N, m], m being 3, 1 or 0 by the task."""
@@ -69,6 +81,10 @@ class TaskReading:
         turning = [int(i) for i in reference.free if reference.revolute[i]]
         self._last_turning = turning[-1] if turning else None
 
+    @property
+    def is_planar(self) -> bool:
+        return self.task in _PLANE_TASKS
+
     def normals(self, chain: Chain) -> Array:
         """[N, 3] normals of the arm's plane: along the axis of the last free turning joint, or across two slides."""
         if self._last_turning is not None:
@@ -78,7 +94,7 @@ class TaskReading:
 
     def misses(self, target: Poses, chain: Chain) -> Misses:
         linear = target.position - chain.tool.position
-        if self.task in _PLANE_TASKS:
+        if self.is_planar:
             linear = _in_plane(linear, self.normals(chain))
         return Misses(linear, self._angular(target, chain))
 
@@ -114,7 +130,7 @@ class TaskReading:
         """[N, 3 + m, k]: how the parts the task reads move with the k free joints, the linear rows first."""
         full = self.reference.jacobian_of(chain)[:, :, self.reference.free]
         linear, spin = full[:, :3], full[:, 3:].swapaxes(1, 2)  # spin: [N, k, 3]
-        if self.task in _PLANE_TASKS:
+        if self.is_planar:
             normals = self.normals(chain)
             linear = linear - normals[:, :, None] * np.einsum("ni,nik->nk", normals, linear)[:, None, :]
         return np.concatenate((linear, self._spin_rows(target, chain, spin)), axis=1)
@@ -139,6 +155,18 @@ class TaskReading:
         carried = np.where((self.reference.free < (self._last_turning or 0))[None, :, None], spin, 0.0)
         actual_rate = _angle_rate(normals, chain.tool.rotation[:, None, :, 2], spin - carried)
         return actual_rate + _angle_rate(normals, target.rotation[:, None, :, 2], carried)
+
+    def moved(self, chain: Chain, linear: Array, angular: Array) -> Poses:
+        """The tool poses moved by metres [N, 3] and by radians [N, m], the rows of `jacobian`."""
+        tool = chain.tool
+        turn = angular
+        if self.task in (Task.POINT_PITCH, Task.PLANE_POSE):
+            turn = angular * self.normals(chain)
+        if self.task is Task.POINT_YAW:
+            turn = angular * np.array([0.0, 0.0, 1.0])
+        if self.task in (Task.POINT, Task.PLANE_POINT):
+            turn = np.zeros_like(linear)
+        return Poses(rotation_about(turn) @ tool.rotation, tool.position + linear)
 
     def scaled(self, jacobian: Array) -> Array:
         """The same without units: metres in reaches."""

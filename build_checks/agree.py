@@ -1,0 +1,183 @@
+"""`linkwright agree`: the generated C, compiled on this machine, against a float64 reference of the link table.
+
+The work is a list of units, each with its own random numbers drawn from the run's seed and the unit's place in the
+list; so the report is the same on any number of processors, and a list can be split over machines. A unit judges one
+kind of poses by every check that applies to them; counts and worst errors of all units join to one report.
+"""
+
+from __future__ import annotations
+
+import multiprocessing
+import os
+from collections.abc import Callable, Iterable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+
+import numpy as np
+
+from build_checks.agree_atan2 import check_atan2
+from build_checks.agree_bench import BUDGETS, Bench
+from build_checks.agree_edges import check_degenerate, check_right_angles, check_unreachable
+from build_checks.agree_inputs import check_inputs
+from build_checks.agree_limits import check_at_limits, check_beyond_limits
+from build_checks.agree_random import check_far_turns, check_random
+from build_checks.compile import Kinematics, Library, compiled
+from build_checks.reference import Reference
+from build_checks.report import AgreeReport, Check, CheckResult, Failure, Run, join_all
+from codegen.model import Arm
+from codegen.options import Options
+
+DEFAULT_SAMPLES = 100_000
+_PART = 4096  # samples of one unit
+_WORTH_PROCESSES = 20_000  # samples; below, starting processes costs more than it saves
+Progress = Callable[[int, int], None]
+Work = Callable[[Bench, np.random.Generator, int], None]
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """samples: random joint vectors; seed: repeats the run; processes: None for one per processor;
+    shard: (i, n) runs the i-th of n parts of the work, i from 1."""
+
+    samples: int = DEFAULT_SAMPLES
+    seed: int = 1
+    processes: int | None = None
+    shard: tuple[int, int] = (1, 1)
+
+
+@dataclass(frozen=True, slots=True)
+class Unit:
+    """One piece of work: what to check, how many cases, and what tells its random numbers from all others."""
+
+    work: str
+    index: int
+    size: int
+
+
+_WORK: dict[str, Work] = {
+    "inputs": check_inputs,
+    "atan2": check_atan2,
+    "right angles": check_right_angles,
+    "degenerate": check_degenerate,
+    "unreachable": check_unreachable,
+    "at limits": check_at_limits,
+    "beyond limits": check_beyond_limits,
+    "far turns": check_far_turns,
+    "random": check_random,
+}
+_FULL_SIZES = {
+    "inputs": 64,
+    "atan2": 200_000,
+    "right angles": 4096,
+    "degenerate": 2048,
+    "unreachable": 2048,
+    "at limits": 4096,
+    "beyond limits": 4096,
+    "far turns": 4096,
+}
+
+
+def units(samples: int) -> list[Unit]:
+    """All the work of a run. Few samples also mean fewer cases of the other kinds, but never none."""
+    share = min(1.0, samples / 20_000)
+    special = [Unit(work, 0, max(32, round(share * size))) for work, size in _FULL_SIZES.items()]
+    starts = range(0, samples, _PART)
+    return special + [Unit("random", start // _PART, min(_PART, samples - start)) for start in starts]
+
+
+def agree(
+    arm: Arm,
+    files: dict[str, str],
+    options: Options,
+    settings: Settings | None = None,
+    progress: Progress | None = None,
+) -> AgreeReport:
+    """Compiles the generated `files` of `arm` and checks them. Raises when there is no compiler or the C does not
+    compile."""
+    settings = settings or Settings()
+    with compiled(files, options) as library:
+        c = Kinematics(library)
+        interface = _interface(arm, c)
+        if interface.failed:
+            results: tuple[CheckResult, ...] = (interface,)
+        else:
+            results = join_all([interface, *_run(arm, library, settings, progress or _silent)])
+        return AgreeReport(_describe(arm, options, settings, c), results)
+
+
+def _silent(done: int, total: int) -> None:
+    """Tells nobody."""
+
+
+def _interface(arm: Arm, c: Kinematics) -> CheckResult:
+    faults = list(c.faults)
+    if c.joints != len(arm.joints):
+        faults.append(f"{c.joints} joints, not {len(arm.joints)}")
+    if c.branches < 1:
+        faults.append(f"{c.branches} branches")
+    failure = Failure("; ".join(faults), {}) if faults else None
+    return CheckResult(Check.INTERFACE, cases=1, failed=int(bool(faults)), failure=failure)
+
+
+def _describe(arm: Arm, options: Options, settings: Settings, c: Kinematics) -> Run:
+    budget = BUDGETS[options.real]
+    return Run(
+        arm=arm.name,
+        task=arm.task.key,
+        real=options.real.c_name,
+        mathematics=options.mathematics.value,
+        prefix=options.prefix,
+        joints=c.joints,
+        branches=c.branches,
+        seed=settings.seed,
+        samples=settings.samples,
+        reach=Reference(arm).reach,
+        position_budget=budget.share,
+        angle_budget=budget.angle,
+        length_unit=arm.length_unit,
+        angle_unit=arm.angle_unit,
+    )
+
+
+def _run(arm: Arm, library: Library, settings: Settings, progress: Progress) -> Iterator[CheckResult]:
+    part, parts = settings.shard
+    work = units(settings.samples)[part - 1 :: parts]
+    progress(0, len(work))
+    with _mapper(arm, library, settings) as mapped:
+        for done, results in enumerate(mapped([(settings.seed, unit) for unit in work]), start=1):
+            progress(done, len(work))
+            yield from results
+
+
+Mapped = Callable[[list[tuple[int, Unit]]], Iterable[list[CheckResult]]]
+
+
+@contextmanager
+def _mapper(arm: Arm, library: Library, settings: Settings) -> Iterator[Mapped]:
+    """Runs units in order, on as many processes as are worth starting."""
+    processes = settings.processes or len(os.sched_getaffinity(0))
+    if processes == 1 or settings.samples < _WORTH_PROCESSES:
+        _open_bench(arm, library)
+        yield lambda work: map(_run_unit, work)
+        return
+    context = multiprocessing.get_context("spawn")
+    with context.Pool(processes, initializer=_open_bench, initargs=(arm, library)) as pool:
+        yield lambda work: pool.imap(_run_unit, work)
+
+
+_bench: list[Bench] = []  # one per process: the reference and the library are opened once
+
+
+def _open_bench(arm: Arm, library: Library) -> None:
+    _bench[:] = [Bench(arm, library)]
+
+
+def _run_unit(job: tuple[int, Unit]) -> list[CheckResult]:
+    """One unit, judged with a fresh tally."""
+    seed, unit = job
+    bench = _bench[0].fresh()
+    place = list(_WORK).index(unit.work)
+    rng = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(place, unit.index)))
+    with np.errstate(all="ignore"):  # what comes out is judged, whatever the arithmetic met on the way
+        _WORK[unit.work](bench, rng, unit.size)
+    return bench.tally.results

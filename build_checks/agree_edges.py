@@ -1,0 +1,152 @@
+"""Poses where kinematics is hardest: singular, at the edge of the reach, just beside both, outside by little and by
+much."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from build_checks.agree_bench import SOLVED, Bench, any_in_row, is_in
+from build_checks.agree_poses import Degenerate, classify, degenerate, right_angles
+from build_checks.agree_sets import check_branch_of, check_known
+from build_checks.agree_solutions import inspect
+from build_checks.compile import Status
+from build_checks.reference import Array, Poses
+from build_checks.reference_task import length
+from build_checks.report import Check, Failure
+
+_STRETCH = 2.0  # the accuracy promise is doubled at singular and boundary poses
+_SEEDS = 3  # different seeds for every singular pose
+
+
+def check_right_angles(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """Joints at right angles: the rounded pose is solved, exactly where it is singular too."""
+    q = right_angles(bench.reference, rng, size)
+    _solved_edge(bench, rng, q, "joints at right angles")
+    _free_joints(bench, rng, classify(bench.reading, q), "joints at right angles, one left free")
+
+
+def check_degenerate(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """Places where the task Jacobian has no full rank, and their neighbourhood."""
+    places = degenerate(bench.reading, rng, size)
+    _solved_edge(bench, rng, places.q, "a singular pose or one at the edge of the reach")
+    _free_joints(bench, rng, places, "a pose that leaves a joint free")
+    _beside(bench, rng, places.q)
+    _across_folds(bench, rng, places)
+
+
+def _seeds(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
+    return bench.random_joints(rng, len(q))
+
+
+def _solved_edge(bench: Bench, rng: np.random.Generator, q: Array, kind: str) -> None:
+    """Rounding of the pose alone never makes it unreachable: q itself reaches it to rounding."""
+    if len(q) == 0:
+        return
+    batch = bench.batch(q, _seeds(bench, rng, q), kind, _STRETCH)
+    found, _ = inspect(bench, batch)
+    solved = any_in_row(is_in(found.status, SOLVED))
+    own = bench.c.branch_of(bench.c.rounded(q))
+    _, status = bench.c.inverse(batch.packed, own, bench.c.rounded(q))
+    lost = ~solved if bench.c.numeric else ~solved | ~is_in(status, SOLVED)
+
+    def describe(index: int) -> Failure:
+        what = f"not solved on its own branch {own[index]}" if solved[index] else "no branch solves it"
+        return Failure(what, bench.details(batch, index, statuses=found.status[index]))
+
+    bench.tally.judge(Check.EDGE, lost, describe)
+
+
+def _free_joints(bench: Bench, rng: np.random.Generator, places: Degenerate, kind: str) -> None:
+    """From any seed, the branch of a place with a free joint says so, and keeps that joint at its seed."""
+    q = np.repeat(places.q[places.free], _SEEDS, axis=0)
+    if len(q) == 0 or bench.c.numeric:
+        return
+    batch = bench.batch(q, _seeds(bench, rng, q), kind, _STRETCH)
+    inspect(bench, batch)
+    own = bench.c.branch_of(bench.c.rounded(q))
+    back, status = bench.c.inverse(batch.packed, own, batch.seeds)
+
+    def describe(index: int) -> Failure:
+        said = Status(status[index]).name
+        details = bench.details(batch, index, branch=own[index], status=said, joints_found=back[index])
+        return Failure(f"branch {own[index]} says {said} where a joint is free", details)
+
+    bench.tally.judge(Check.FREE_JOINT, ~is_in(status, (Status.SINGULAR, Status.OVER_LIMIT)), describe)
+
+
+def _beside(bench: Bench, rng: np.random.Generator, q: Array) -> None:
+    """Beside a degenerate place, from within rounding to a hundredth: right, and SINGULAR only within rounding."""
+    if len(q) == 0:
+        return
+    units = np.where(bench.reference.revolute, 1.0, bench.reference.reach)
+    low, high = bench.reference.span()
+    moves = rng.normal(size=q.shape) * units * _small(bench, rng, len(q))
+    beside = np.clip(q + moves, low, high)
+    batch = bench.batch(beside, _seeds(bench, rng, q), "beside a singular pose or the edge of the reach", _STRETCH)
+    found, _ = inspect(bench, batch)
+    if not bench.c.numeric:
+        check_known(bench, batch, found)
+        check_branch_of(bench, bench.exact(beside), batch, np.arange(len(q)))
+
+
+def _small(bench: Bench, rng: np.random.Generator, size: int) -> Array:
+    """[N, 1] sizes from a tenth of the number type's last place to a hundredth, as many of each magnitude."""
+    exponents = rng.uniform(np.log10(bench.budget.unit) - 1, -2.0, (size, 1))
+    small: Array = 10.0**exponents
+    return small
+
+
+def _across_folds(bench: Bench, rng: np.random.Generator, places: Degenerate) -> None:
+    """Poses moved across the edge, to either side: on the far side whatever is returned must still reach them."""
+    folds = ~places.free
+    q, across = places.q[folds], places.across[folds]
+    if len(q) == 0:
+        return
+    steps = across * _small(bench, rng, len(q)) * rng.choice([-1.0, 1.0], (len(q), 1))
+    targets = bench.reading.moved(bench.reference.chain(q), steps[:, :3] * bench.reference.reach, steps[:, 3:])
+    batch = bench.batch(q, _seeds(bench, rng, q), "moved across the edge of the reach", _STRETCH)
+    inspect(bench, replace(batch, packed=bench.c.pack(targets)))
+
+
+def check_unreachable(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """Poses further away than the arm is long, from 1.0001 times its reach to a thousand times."""
+    directions = _bounded_directions(bench, rng, size)
+    q = bench.random_joints(rng, size)
+    beyond = bench.reference.reach * (1.0 + 10.0 ** rng.uniform(-4.0, 3.0, (size, 1)))
+    poses = bench.reference.forward(q)
+    centre = bench.reference.base_position
+    targets = Poses(poses.rotation, centre + directions * beyond)
+    batch = replace(bench.batch(q, _seeds(bench, rng, q), "further away than the reach"), packed=bench.c.pack(targets))
+    batch = replace(batch, origins=np.full_like(q, np.nan))
+    found, _ = inspect(bench, batch)
+    bounded = length(directions) > 0.5
+    reached = any_in_row(found.status != Status.OUT_OF_REACH) & bounded
+
+    def describe(index: int) -> Failure:
+        return Failure("not OUT_OF_REACH on every branch", bench.details(batch, index, statuses=found.status[index]))
+
+    rows = np.flatnonzero(bounded)
+    bench.tally.judge(Check.UNREACHABLE, reached[rows], lambda i: describe(int(rows[i])))
+
+
+def _bounded_directions(bench: Bench, rng: np.random.Generator, size: int) -> Array:
+    """[N, 3] unit directions that no slide leads in, within the plane of a planar task; zero when there are none."""
+    chain = bench.reference.chain(bench.random_joints(rng, 64))
+    sliding = bench.reference.free[~bench.reference.revolute[bench.reference.free]]
+    blocked = chain.axes[:, sliding].reshape(-1, 3)
+    if bench.reading.is_planar:
+        blocked = np.concatenate((blocked, bench.reading.normals(chain)))
+    open_directions = _null_space(blocked)
+    mixed = rng.normal(size=(size, len(open_directions))) @ open_directions
+    return mixed / np.maximum(length(mixed), 1e-12)[:, None]
+
+
+def _null_space(rows: Array) -> Array:
+    """[m, 3] unit vectors square to every row."""
+    if len(rows) == 0:
+        return np.eye(3)
+    _, values, vectors = np.linalg.svd(rows, full_matrices=True)
+    rank = int((values > 1e-9).sum())
+    return vectors[rank:]
