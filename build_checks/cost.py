@@ -1,8 +1,8 @@
 """What the C costs on target processors: flash, stack, instructions and cycles of each public function.
 
-Flash is what the linker keeps for a function and all that it needs, the compiler's arithmetic library included. Stack
+Flash is the code and constants of a function and all that it needs, the compiler's arithmetic library included. Stack
 is computed from the call graph and also found by painting. Instructions and cycles come from running the function in
-an emulator at many poses; the cycles are exact on AVR and an estimate elsewhere, from the weights that the report names.
+an emulator at many poses; the cycles are exact on AVR and elsewhere an estimate, by the weights that the report names.
 """
 
 from __future__ import annotations

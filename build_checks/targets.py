@@ -172,16 +172,17 @@ def _missing_programs(target: Target) -> list[str]:
 
 
 def _missing_emulator(target: Target) -> list[str]:
-    from build_checks.emulate_native import simavr_is_here
+    from build_checks.emulate_native import simavr_is_here  # compiles C: only when asked
 
-    if target.emulator is Emulator.SIMAVR:
-        return [] if simavr_is_here() else ["no simavr library"]
-    if target.emulator is Emulator.HOST or find_spec("unicorn"):
-        return []
-    return ["no Python package unicorn"]
+    packages = ["elftools"] if target.emulator in (Emulator.SIMAVR, Emulator.HOST) else ["elftools", "unicorn"]
+    missing = [f"no Python package {package}" for package in packages if find_spec(package) is None]
+    if target.emulator is Emulator.SIMAVR and not simavr_is_here():
+        missing.append("no simavr library")
+    return missing
 
 
 def _how_to_install(target: Target) -> str:
-    apt = f"apt-get install gcc {' '.join(package for package in target.packages if package != 'gcc')}"
-    pip = " && python -m pip install unicorn pyelftools"
-    return apt + (pip if target.emulator is not Emulator.SIMAVR else " && python -m pip install pyelftools")
+    """Debian's package names; the Python packages by theirs."""
+    python = "pyelftools" if target.emulator in (Emulator.SIMAVR, Emulator.HOST) else "pyelftools unicorn"
+    packages = dict.fromkeys(("gcc", *target.packages))
+    return f"install with: apt-get install {' '.join(packages)} && python -m pip install {python}"
