@@ -86,7 +86,7 @@ def scipy_pose(chain: list[tuple[str, str, str, str]], q: Array) -> Array:
 
 
 @given(chains().filter(lambda chain: 2 <= sum(kind != "fixed" for kind, *_ in chain) <= 7))
-@settings(max_examples=80, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=50, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 def test_any_serial_chain_keeps_its_tool_pose(tmp_path: Path, chain: list[tuple[str, str, str, str]]) -> None:
     """Through the written file; the budget is what the snaps in the strategies above add up to on a 3 m chain."""
     text = robot(*(joint(i, *row) for i, row in enumerate(chain, start=1)))

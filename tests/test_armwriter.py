@@ -60,7 +60,7 @@ def _row(draw: st.DrawFn, name: str, lengths: st.SearchStrategy, angles: st.Sear
 
 
 @given(arms())
-@settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=40, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 def test_any_arm_comes_back(tmp_path: Path, arm: Arm) -> None:
     assert read_text(arm_file_text(arm, ["a note"]), tmp_path) == arm
 
