@@ -10,7 +10,7 @@ import numpy as np
 from build_checks.agree_bench import SOLVED, Bench, any_in_row, is_in
 from build_checks.agree_poses import Degenerate, classify, degenerate, right_angles
 from build_checks.agree_sets import check_branch_of, check_known
-from build_checks.agree_solutions import inspect
+from build_checks.agree_solutions import inspect, named
 from build_checks.compile import Status
 from build_checks.reference import Array, Poses
 from build_checks.reference_task import length
@@ -69,7 +69,7 @@ def _free_joints(bench: Bench, rng: np.random.Generator, places: Degenerate, kin
     back, status = bench.c.inverse(batch.packed, own, batch.seeds)
 
     def describe(index: int) -> Failure:
-        said = Status(status[index]).name
+        said = named(int(status[index]))
         details = bench.details(batch, index, branch=own[index], status=said, joints_found=back[index])
         return Failure(f"branch {own[index]} says {said} where a joint is free", details)
 

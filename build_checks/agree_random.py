@@ -45,7 +45,7 @@ def check_forward(bench: Bench, q: Array) -> None:
     angle = _rotation_error(actual.rotation, wanted.rotation)
     position_budget, angle_budget = bench.allowed(q, wanted.position)
     failed = ~((position <= position_budget) & (angle <= angle_budget)) | (status != Status.OK)
-    ordinary = np.abs(q[:, bench.reference.revolute]).max(axis=1, initial=0.0) <= 2 * np.pi
+    ordinary = ~(np.abs(q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi)
 
     def describe(index: int) -> Failure:
         what = f"status {status[index]}, off by {position[index]:.3g} m and {angle[index]:.3g} rad"

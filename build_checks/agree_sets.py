@@ -10,8 +10,8 @@ from __future__ import annotations
 import numpy as np
 
 from build_checks.agree_bench import SOLVED, WITHIN_LIMITS, Batch, Bench, Flat, is_in
-from build_checks.agree_solutions import turns
-from build_checks.compile import Branches, Status
+from build_checks.agree_solutions import named, turns
+from build_checks.compile import Branches
 from build_checks.reference import Array, Flags, Integers
 from build_checks.report import Check, CheckResult, Failure
 
@@ -135,7 +135,7 @@ def check_branch_of(bench: Bench, q: Array, batch: Batch, rows: Integers) -> Non
     exists = branches < bench.c.branches
 
     def describe(index: int) -> Failure:
-        said = Status(status[index]).name if status[index] < len(Status) else str(status[index])
+        said = named(int(status[index]))
         what = f"branch_of gives {branches[index]}, and inverse there {said}, {distance[index]:.3g} away"
         more = {"joints_in": q[index], "joints_back": back[index]}
         return Failure(what, bench.details(batch, int(rows[index]), **more))

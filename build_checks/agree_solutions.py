@@ -51,7 +51,7 @@ def _outputs(bench: Bench, batch: Batch, found: Branches) -> None:
         details = bench.details(
             batch, row, branch=branch, statuses=found.status[row], joints_found=found.q[row, branch]
         )
-        return Failure(f"branch {branch} gives {_named(found.status[row, branch])}", details)
+        return Failure(f"branch {branch} gives {named(int(found.status[row, branch]))}", details)
 
     bench.tally.judge(Check.FINITE, (~legal | (solved & ~finite)).ravel(), describe)
     moved = _moved(bench, found.q)
@@ -65,7 +65,8 @@ def _moved(bench: Bench, q: AnyArray) -> Flags:
     return moved
 
 
-def _named(status: int) -> str:
+def named(status: int) -> str:
+    """A status as the contract names it."""
     known = [member.name for member in Status if member.value == status]
     return known[0] if known else f"the unknown status {status}"
 
@@ -87,7 +88,7 @@ def _round_trip(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None
         found_here = {"branch": branch, "statuses": found.status[row], "joints_found": flat.q[index]}
         return Failure(what, bench.details(batch, row, **found_here))
 
-    ordinary = np.abs(flat.q[:, bench.reference.revolute]).max(axis=1, initial=0.0) <= 2 * np.pi
+    ordinary = ~(np.abs(flat.q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi)
     origins = np.where(np.isnan(batch.origins[flat.rows]), flat.q, batch.origins[flat.rows])
     bench.tally.judge(
         Check.ROUND_TRIP,
@@ -108,7 +109,7 @@ def _held(bench: Bench, batch: Batch, flat: Flat) -> None:
 
 def _solution(bench: Bench, batch: Batch, flat: Flat, index: int, what: str) -> Failure:
     row, branch = int(flat.rows[index]), int(flat.branches[index])
-    status = Status(flat.status[index]).name
+    status = named(int(flat.status[index]))
     details = bench.details(batch, row, branch=branch, status=status, joints_found=flat.q[index])
     return Failure(f"branch {branch} ({status}): {what}", details)
 
@@ -197,7 +198,7 @@ def _one_by_one(bench: Bench, batch: Batch, found: Branches) -> None:
 
     def describe(index: int) -> Failure:
         row, branch = divmod(index, size)
-        both = f"{_named(int(status[index]))} by itself, {_named(int(found.status[row, branch]))} among all"
+        both = f"{named(int(status[index]))} by itself, {named(int(found.status[row, branch]))} among all"
         what = f"inverse_all counts {found.solved[row]}" if miscounted[row] else f"branch {branch} is {both}"
         details = {"statuses": found.status[row], "joints_alone": q[index], "joints_among_all": found.q[row, branch]}
         return Failure(what, bench.details(batch, row, branch=branch, **details))
@@ -232,7 +233,7 @@ def _nearest(bench: Bench, batch: Batch, found: Branches) -> None:
 
     def describe(index: int) -> Failure:
         row = int(index)
-        answer = {"branch": branches[row], "status": _named(int(status[row])), "joints_found": q[row]}
+        answer = {"branch": branches[row], "status": named(int(status[row])), "joints_found": q[row]}
         what = f"inverse_nearest gives {answer['status']}, branch {branches[row]}"
         more = {"statuses": found.status[row], "all_joints": found.q[row]}
         return Failure(what, bench.details(batch, row, **answer, **more))

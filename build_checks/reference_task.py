@@ -176,12 +176,17 @@ class TaskReading:
         return sized
 
     def smallest_singular(self, q: Array) -> Array:
-        """[N] smallest singular value of the scaled task Jacobian; 0: some motion leaves the task as it is."""
-        if len(q) == 0:
-            return np.zeros(0)
-        chain = self.reference.chain(q)
-        values = np.linalg.svd(self.scaled(self.jacobian(chain.tool, chain)), compute_uv=False)
-        return values[:, -1].astype(np.float64)
+        """[N] smallest singular value of the scaled task Jacobian; 0: some motion leaves the task as it is.
+
+        NaN where q is no number.
+        """
+        finite = np.flatnonzero(np.isfinite(q).all(axis=1))
+        smallest = np.full(len(q), np.nan)
+        if len(finite):
+            chain = self.reference.chain(q[finite])
+            values = np.linalg.svd(self.scaled(self.jacobian(chain.tool, chain)), compute_uv=False)
+            smallest[finite] = values[:, -1]
+        return smallest
 
 
 def _in_plane(vectors: Array, normals: Array) -> Array:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import dataclasses
 import json
+import math
 from collections.abc import Iterable
 from dataclasses import dataclass
 from enum import Enum
@@ -165,10 +166,19 @@ class AgreeReport:
             "run": dataclasses.asdict(self.run),
             "checks": [_check_content(result) for result in self.results],
         }
-        return json.dumps(content, indent=2, ensure_ascii=False) + "\n"
+        return json.dumps(_writable(content), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
 
 def _check_content(result: CheckResult) -> dict[str, Any]:
     content = dataclasses.asdict(result)
     content["check"] = result.check.name.lower()
     return {"check": content.pop("check"), "what": result.check.value, **content}
+
+
+def _writable(value: Any) -> Any:
+    """JSON has no NaN and no infinity: they become texts."""
+    if isinstance(value, dict):
+        return {key: _writable(item) for key, item in value.items()}
+    if isinstance(value, list | tuple):
+        return [_writable(item) for item in value]
+    return str(value) if isinstance(value, float) and not math.isfinite(value) else value

@@ -1,0 +1,101 @@
+"""An agreement report as a table to read: lengths in the arm file's unit, joint values ready to paste into C."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from build_checks.report import AgreeReport, CheckResult, Failure, Run, Worst
+
+_UNITS = {"m": 1.0, "mm": 1000.0}
+_TITLE_WIDTH = 66
+
+
+def to_text(report: AgreeReport) -> str:
+    """The whole report, ending in one line that says whether the C agrees."""
+    parts = [
+        _heading(report.run),
+        _table(report.results),
+        _worst_lines(report),
+        _failure_lines(report),
+        _verdict(report),
+    ]
+    return "\n\n".join(part for part in parts if part) + "\n"
+
+
+def _heading(run: Run) -> str:
+    plural = "joint" if run.joints == 1 else "joints"
+    arm = f"{run.arm}: {run.joints} {plural}, task {run.task}, {run.branches} branches"
+    made = f"{run.real}, {run.mathematics} mathematics"
+    sampled = f"{run.samples:,} random joint vectors, seed {run.seed}; reach {_length(run, run.reach)}"
+    return f"{arm}; {made}\n{sampled}"
+
+
+def _length(run: Run, metres: float) -> str:
+    return f"{metres * _UNITS[run.length_unit]:.4g} {run.length_unit}"
+
+
+def _table(results: tuple[CheckResult, ...]) -> str:
+    lines = [f"{'check':<{_TITLE_WIDTH}} {'cases':>12} {'failed':>10} {'undecided':>10}"]
+    for result in results:
+        if result.cases or result.undecided:
+            counts = f"{result.cases:>12,} {result.failed:>10,} {result.undecided:>10,}"
+            lines.append(f"{result.check.value:<{_TITLE_WIDTH}} {counts}")
+    if any(result.undecided for result in results):
+        lines.append("undecided: so near a singularity or an edge that rounding of the pose explains either answer")
+    return "\n".join(lines)
+
+
+def _worst_lines(report: AgreeReport) -> str:
+    """Worst errors with the joint values of their poses. Budgets are doubled at singular and boundary poses."""
+    run, lines = report.run, []
+    if position := report.worst_position:
+        share = position.error / run.reach
+        budget = f"allowed {run.position_budget:g}, twice that at singular and boundary poses"
+        lines += [f"worst position error {_length(run, position.error)}, {share:.2g} of the reach ({budget})"]
+        lines += [_paste(run, position)]
+    if angle := report.worst_angle:
+        lines += [
+            f"worst angle error {angle.error:.2g} rad (allowed {run.angle_budget:g}, likewise)",
+            _paste(run, angle),
+        ]
+    return "\n".join(lines)
+
+
+def _paste(run: Run, worst: Worst) -> str:
+    suffix = "f" if run.real == "float" else ""
+    digits = 9 if run.real == "float" else 17
+    values = ", ".join(_literal(value, digits) + suffix for value in worst.joints)
+    return f"    const {run.prefix}_real q[{run.joints}] = {{{values}}};  /* rad, m */"
+
+
+def _literal(value: float, digits: int) -> str:
+    text = f"{value:.{digits}g}"
+    return text if any(mark in text for mark in ".en") else text + ".0"
+
+
+def _failure_lines(report: AgreeReport) -> str:
+    if report.first_failure is None:
+        return ""
+    check, failure = report.first_failure
+    return f"first failure, of: {check.value}\n  {failure.what}\n{_details(failure)}"
+
+
+def _details(failure: Failure) -> str:
+    return "\n".join(f"  {name}: {_shown(value)}" for name, value in failure.details.items())
+
+
+def _shown(value: Any) -> str:
+    """Numbers with all their digits, one row of a matrix below the other."""
+    if isinstance(value, list) and value and isinstance(value[0], list):
+        return "".join(f"\n    {row}" for row in value)
+    return str(value)
+
+
+def _verdict(report: AgreeReport) -> str:
+    run = report.run
+    again = f"repeat with --samples {run.samples} --seed {run.seed}"
+    if report.agreed:
+        return f"The C agrees with the link table; {again}."
+    failed = [result for result in report.results if result.failed]
+    cases = sum(result.failed for result in failed)
+    return f"The C does NOT agree with the link table: {cases:,} failures in {len(failed)} checks; {again}."
