@@ -73,10 +73,9 @@ def _check(target: Target) -> str:
 def _writable(objects: Objects) -> Iterator[Finding]:
     for path, elf in _elf_files(objects):
         for section in elf.iter_sections():
-            if section["sh_flags"] & _WRITABLE and section["sh_size"] and not _is_constant_data(objects, section.name):
-                yield Finding(
-                    _check(objects.target), path.name, 0, section.name, f"{section['sh_size']} writable bytes"
-                )
+            size = section["sh_size"]
+            if section["sh_flags"] & _WRITABLE and size and not _is_constant_data(objects.target, section.name):
+                yield Finding(_check(objects.target), path.name, 0, section.name, f"{size} writable bytes")
 
 
 def _is_constant_data(target: Target, section: str) -> bool:
