@@ -175,7 +175,7 @@ class Instruction:
 
     function     the one it stands in
     length       in bytes
-    destination  the function that it names, for a branch or a call; "" when none
+    destination  the function that it names, for a branch or a call; "" when none or inside its own function
     """
 
     address: int
@@ -188,7 +188,7 @@ class Instruction:
 
 _LABEL = re.compile(r"^([0-9a-f]+) <([^>]+)>:$")
 _LINE = re.compile(r"^\s*([0-9a-f]+):\t((?:[0-9a-f]+ ?)+)\s*\t(\S+)[ \t]*([^;@]*)(.*)$")
-_NAMED = re.compile(r"<([^>+@-]+)")
+_NAMED = re.compile(r"<([^>+@-]+)(\+0x[0-9a-f]+)?")
 
 
 def disassemble(image: Image) -> tuple[Instruction, ...]:
@@ -213,6 +213,14 @@ def _parse(lines: Iterable[str]) -> Iterable[Instruction]:
 
 
 def _instruction(function: str, address: str, code: str, mnemonic: str, operands: str, comment: str) -> Instruction:
-    named = _NAMED.search(operands) or _NAMED.search(comment)
     length = len(code.replace(" ", "")) // 2
-    return Instruction(int(address, 16), mnemonic, operands.strip(), function, length, named.group(1) if named else "")
+    destination = _destination(function, operands) or _destination(function, comment)
+    return Instruction(int(address, 16), mnemonic, operands.strip(), function, length, destination)
+
+
+def _destination(function: str, text: str) -> str:
+    """The function named, but for a place inside the function itself."""
+    named = _NAMED.search(text)
+    if named is None or (named.group(1) == function and named.group(2)):
+        return ""
+    return named.group(1)

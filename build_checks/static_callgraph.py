@@ -36,7 +36,7 @@ _THUMB = _Patterns(re.compile(r"blx?(\w\w)?(\.[nw])?"), re.compile(r"b\w{0,2}(\.
 _RISCV = _Patterns(
     re.compile(r"(c\.)?jal|call"),
     re.compile(r"(c\.)?(j|tail|b\w+)"),
-    re.compile(r"(c\.)?jalr? (?!t0|0\(t0|ra$|0\(ra|zero,0\(ra).*"),
+    re.compile(r"(c\.)?jalr (?!t0|0\(t0).*"),
 )
 _AVR = _Patterns(re.compile(r"r?call"), re.compile(r"r?jmp|br\w\w"), re.compile(r"e?i(call|jmp).*"), returning=3)
 _X86 = _Patterns(re.compile(r"callq?"), re.compile(r"j\w+"), re.compile(r"(callq?|jmpq?) +\*.*"), returning=8)
@@ -66,9 +66,13 @@ class CallGraph:
     returning: int
 
     def recursion(self) -> tuple[str, ...] | None:
-        """A chain of calls that comes back to its start, or None."""
+        """A chain of calls that comes back to its start, or None.
+
+        Names of the compiler's library begin with two underscores. It calls nothing of ours, and its hand-written parts
+        call places inside each other that have no name of their own, so it is left out.
+        """
         finished: set[str] = set()
-        for function in sorted(self.frames):
+        for function in sorted(name for name in self.frames if not name.startswith("__")):
             chain = self._chain_back((function,), finished)
             if chain:
                 return chain
@@ -78,7 +82,7 @@ class CallGraph:
         function = chain[-1]
         if function in chain[:-1]:
             return chain[chain.index(function) :]
-        if function in finished:
+        if function in finished or function.startswith("__"):
             return None
         for callee in sorted(self.calls.get(function, ())):
             found = self._chain_back((*chain, callee), finished)
@@ -108,8 +112,8 @@ def read_call_graph(image: Image) -> CallGraph:
     frames = {name: _frame(image, name, body) for name, body in bodies.items()}
     return CallGraph(
         frames,
-        {name: _destinations(name, body, patterns.call) for name, body in bodies.items()},
-        {name: _destinations(name, body, patterns.jump) for name, body in bodies.items()},
+        {name: _destinations(body, patterns.call) for name, body in bodies.items()},
+        {name: _destinations(body, patterns.jump) - {name} for name, body in bodies.items()},
         tuple((name, text) for name, body in bodies.items() for text in _indirect(body, patterns)),
         patterns.returning,
     )
@@ -122,10 +126,8 @@ def _bodies(rows: Iterable[Instruction]) -> dict[str, list[Instruction]]:
     return bodies
 
 
-def _destinations(name: str, body: Iterable[Instruction], pattern: re.Pattern[str]) -> frozenset[str]:
-    found = (row.destination for row in body if pattern.fullmatch(row.mnemonic))
-    own = {name} if pattern not in {patterns.call for patterns in _PATTERNS.values()} else set()
-    return frozenset(destination for destination in found if destination) - own
+def _destinations(body: Iterable[Instruction], pattern: re.Pattern[str]) -> frozenset[str]:
+    return frozenset(row.destination for row in body if row.destination and pattern.fullmatch(row.mnemonic))
 
 
 def _indirect(body: Iterable[Instruction], patterns: _Patterns) -> list[str]:

@@ -1,4 +1,7 @@
-"""clang-tidy on the C: its bugprone, cert and clang-analyzer checks."""
+"""clang-tidy on the C: its bugprone, cert and clang-analyzer checks, and braces around every statement.
+
+The braces are MISRA C:2012 rule 15.6, which cppcheck's addon misses where a single statement follows an if.
+"""
 
 from __future__ import annotations
 
@@ -7,7 +10,7 @@ from collections.abc import Mapping
 
 from build_checks.static_findings import Finding, laid_out, run_tool, sources
 
-_CHECKS = ("-*", "bugprone-*", "cert-*", "clang-analyzer-*")
+_CHECKS = ("-*", "bugprone-*", "cert-*", "clang-analyzer-*", "readability-braces-around-statements")
 
 # Each check that is left out, with its reason.
 LEFT_OUT = {
