@@ -178,7 +178,7 @@ def test_a_number_in_the_wrong_unit_is_warned_of(
 
 
 UNWARNED = [  # head lines, first joint's lines
-    ("", "limits = [-6.2832, 6.2832]"),
+    ("", "limits = [-12.566, 12.566]"),
     ("", "alpha = 1.5707963267948966"),
     ("", "alpha = 0.31"),
     ('angle_unit = "deg"', "alpha = 90\nlimits = [-720, 720]\nmax_speed = 400"),

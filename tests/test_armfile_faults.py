@@ -185,6 +185,12 @@ def test_a_fault_elsewhere(tmp_path: Path, old: str, new: str, message: str) -> 
     assert message in only(tmp_path, GOOD.replace(old, new, 1))
 
 
+def test_no_unit_is_guessed_from_two_letters(tmp_path: Path) -> None:
+    """A hint that "cm" may mean "m" would be a hundredfold error."""
+    (fault,) = faults(tmp_path, GOOD.replace("[[joint]]", 'length_unit = "cm"\n[[joint]]', 1))
+    assert fault.hint == ""
+
+
 def chain(task: str, joints: int, held: str = "") -> str:
     return HEAD.replace("plane_point", task) + held + LAST * joints
 

@@ -200,6 +200,13 @@ def test_a_modified_table_has_the_twist_in_the_later_row(tmp_path: Path) -> None
     assert "joints 1 and 2 nearly parallel" in doubt.what
 
 
+def test_a_first_axis_that_lies_down_shares_no_axis_with_the_base(tmp_path: Path) -> None:
+    frames = "[base]\nxyz = [0, 0, 150]\nrpy = [0, 0, 45]"
+    assert (
+        found(tmp_path, DEG_MM, "alpha = 90\nd = 150\ntheta = 30", "a = 90", convention="modified", frames=frames) == ()
+    )
+
+
 def test_what_the_reader_warns_of_is_not_said_twice(tmp_path: Path) -> None:
     assert found(tmp_path, "", "a = 1\nalpha = 1.5708", "a = 1") == ()
     assert found(tmp_path, "", "a = 1\nalpha = 3.1416", "a = 1") == ()
