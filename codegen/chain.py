@@ -77,8 +77,8 @@ class _Parts:
         if angle.quarter_turns is not None:
             return self.builder.integer(int(cosine)), self.builder.integer(int(sine))
         return (
-            self.builder.constant(f"COS_{name}", cosine),
-            self.builder.constant(f"SIN_{name}", sine),
+            self.builder.constant(f"COS_{name}", cosine, _of_angle("cosine", name)),
+            self.builder.constant(f"SIN_{name}", sine, _of_angle("sine", name)),
         )
 
     def about(self, axis: str, name: str, angle: Angle) -> Matrix:
@@ -94,27 +94,36 @@ class _Parts:
         roll, pitch, yaw = frame.rpy
         turn = self.space.product(self.about("y", f"{name}_PITCH", pitch), self.about("x", f"{name}_ROLL", roll))
         x, y, z = (
-            self.length(f"{name}_{axis}", value, f"{axis.lower()} of the {name.lower()} frame")
+            self.length(f"{name}_{axis}", value, f"m, {axis.lower()} of the {name.lower()} frame")
             for axis, value in zip("XYZ", frame.xyz, strict=True)
         )
         return Rigid(self.space.product(self.about("z", f"{name}_YAW", yaw), turn), (x, y, z))
 
     def link(self, row: JointRow, number: int) -> Rigid:
         """Trans_x(a) Rot_x(alpha), in either order: they commute."""
-        shift = (self.length(f"A{number}", row.a, f"a of row {number}"), self.space.zero, self.space.zero)
+        shift = (self.length(f"A{number}", row.a, f"m, a of row {number}"), self.space.zero, self.space.zero)
         return Rigid(self.about("x", f"ALPHA{number}", row.alpha), shift)
 
     def joint(self, row: JointRow, index: int) -> ChainJoint:
         number, zero = index + 1, self.space.zero
         if row.kind is JointKind.PRISMATIC:
-            offset = self.length(f"D{number}", row.d, f"d of row {number}")
+            offset = self.length(f"D{number}", row.d, f"m, d of row {number}")
             return ChainJoint(index, row.kind, row.name, offset, zero)
         rest = row.theta if row.theta.quarter_turns is None else Angle()
-        offset = self.builder.constant(f"THETA{number}", rest.value(), f"theta of row {number}") if rest else zero
-        return ChainJoint(index, row.kind, row.name, offset, self.length(f"D{number}", row.d, f"d of row {number}"))
+        offset = self.builder.constant(f"THETA{number}", rest.value(), f"rad, theta of row {number}") if rest else zero
+        return ChainJoint(index, row.kind, row.name, offset, self.length(f"D{number}", row.d, f"m, d of row {number}"))
 
     def joint_turn(self, row: JointRow, number: int) -> Rigid:
         """The constant turn about a joint's axis that stays in the core: right angles; all of theta where it slides."""
         stays = row.kind is JointKind.PRISMATIC or row.theta.quarter_turns is not None
         angle = row.theta if stays else Angle()
         return Rigid(self.about("z", f"THETA{number}", angle), self.space.origin)
+
+
+def _of_angle(function: str, name: str) -> str:
+    """"cosine of alpha of row 4", from a name such as ALPHA4 or TOOL_ROLL."""
+    letters = name.rstrip("0123456789")
+    if letters != name:
+        return f"{function} of {letters.lower()} of row {name[len(letters):]}"
+    frame, angle = name.lower().split("_")
+    return f"{function} of the {frame} frame's {angle}"

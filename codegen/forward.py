@@ -12,7 +12,7 @@ from dataclasses import dataclass
 
 from codegen.chain import Chain, ChainJoint
 from codegen.geometry import Matrix, Pair, Rigid, Space, Vector
-from codegen.program import Builder, Node, Op, reachable
+from codegen.program import Node, Op, reachable
 
 Heading = tuple[tuple[int, int], ...]  # (joint index, +1 or -1), in order: the angles that add up
 PairOf = Callable[[Heading], Pair]
@@ -70,6 +70,7 @@ class Carrier:
     chain: Chain
     pair_of: PairOf
     slide_of: SlideOf
+    labels: tuple[str, ...] = ()
 
     def turned(self, heading: Heading, v: Vector) -> Vector:
         return self.space.spun(self.pair_of(heading), v) if heading else v
@@ -126,8 +127,12 @@ def pose_columns(carrier: Carrier, columns: tuple[int, ...]) -> tuple[dict[int, 
     point = end.shift
     for run in reversed(parallels_of(chain)):
         core = chain.cores[run.first]
-        point = space.moved(core, carrier.point(run, point))
-        vectors = {k: space.times(core.rotation, carrier.direction(run, v)) for k, v in vectors.items()}
+        where = carrier.labels[run.first] if carrier.labels else "tool"
+        point = space.named(space.moved(core, carrier.point(run, point)), f"point_before_{where}")
+        vectors = {
+            k: space.named(space.times(core.rotation, carrier.direction(run, v)), f"{'xyz'[k]}_axis_before_{where}")
+            for k, v in vectors.items()
+        }
     return vectors, point
 
 
@@ -211,6 +216,3 @@ def cumulative_pair(space: Space, single: Callable[[int], Pair], heading: Headin
     assert total is not None
     return total
 
-
-def carrier_of(builder: Builder, chain: Chain, pair_of: PairOf, slide_of: SlideOf) -> Carrier:
-    return Carrier(Space(builder), chain, pair_of, slide_of)

@@ -75,6 +75,29 @@ def frames_along(arm: Arm, q: Floats) -> Floats:
     return np.stack(poses, axis=1)
 
 
+def tool_points(arm: Arm, q: Floats) -> Floats:
+    """World positions of the tool point: shape (len(q), 3). The product from the tool inwards, on points only."""
+    x, y, z = (np.full(len(q), float(length)) for length in arm.tool.xyz)
+    for index, row in reversed(list(enumerate(arm.joints))):
+        steps = [_point_about_z_along_z, _point_about_x_along_x]
+        for step in reversed(steps if arm.convention is Convention.STANDARD else steps[::-1]):
+            x, y, z = step(row, q[:, index], x, y, z)
+    base = frame_matrix(arm.base)
+    return np.stack([x, y, z], axis=1) @ base[:3, :3].T + base[:3, 3]
+
+
+def _point_about_x_along_x(row: JointRow, _q: Floats, x: Floats, y: Floats, z: Floats) -> tuple[Floats, Floats, Floats]:
+    cosine, sine = (float(value) for value in row.alpha.cosine_sine())
+    return x + float(row.a), cosine * y - sine * z, sine * y + cosine * z
+
+
+def _point_about_z_along_z(row: JointRow, q: Floats, x: Floats, y: Floats, z: Floats) -> tuple[Floats, Floats, Floats]:
+    revolute = row.kind is JointKind.REVOLUTE
+    theta = float(row.theta.value()) + (q if revolute else 0.0 * q)
+    cosine, sine = np.cos(theta), np.sin(theta)
+    return cosine * x - sine * y, sine * x + cosine * y, z + float(row.d) + (0.0 if revolute else q)
+
+
 def tool_poses(arm: Arm, q: Floats) -> Floats:
     """World poses of the tool: shape (len(q), 4, 4)."""
     return frames_along(arm, q)[:, -1]

@@ -46,6 +46,11 @@ class Node:
     stage: int = 0
 
     @property
+    def label(self) -> str:
+        """A constant in the words of a formula."""
+        return self.name or self.text
+
+    @property
     def is_constant(self) -> bool:
         return self.op is Op.CONSTANT
 
@@ -89,6 +94,9 @@ class Builder:
 
     def named(self, node: Node, name: str, note: str = "") -> Node:
         """Give a value the name a reader sees. Leaves and negations of leaves keep their own."""
+        if node.is_negation:
+            self.named(node.args[0], f"minus_{name}", note)
+            return node
         if node.op in (Op.CONSTANT, Op.INPUT) or node in self.names:
             return node
         unique, count = name, 1
@@ -139,7 +147,7 @@ class Builder:
             return self.integer(-int(node.value))
         if node.text.startswith("-(") and node.text.endswith(")"):
             return self._derived(node.text[2:-1], -node.value)
-        return self._derived(f"-({node.text})", -node.value)
+        return self._derived(f"-({node.label})", -node.value)
 
     def _folded(self, constants: list[tuple[int, Node]]) -> tuple[int, Node] | None:
         """All constants of a sum as one; None when they add nothing."""
@@ -150,7 +158,7 @@ class Builder:
         if len(measured) == 1 and not whole:
             return measured[0]
         total = sum((s * n.value for s, n in measured), MP.mpf(whole))
-        texts = [("-" if s < 0 else "+") + " " + _bracketed(n.text) for s, n in measured]
+        texts = [("-" if s < 0 else "+") + " " + _bracketed(n.label) for s, n in measured]
         if whole:
             texts.append(f"{'-' if whole < 0 else '+'} {abs(whole)}")
         return 1, self._derived(" ".join(texts).removeprefix("+ "), total)
@@ -168,7 +176,7 @@ class Builder:
         if left.is_constant and right.is_constant:
             if left.structural and right.structural:
                 return self.integer(int(left.value) * int(right.value))
-            return self._derived(f"{_bracketed(left.text)}*{_bracketed(right.text)}", left.value * right.value)
+            return self._derived(f"{_bracketed(left.label)}*{_bracketed(right.label)}", left.value * right.value)
         scaled = self._rescaled(left, right)
         if scaled is not None:
             return scaled
@@ -193,7 +201,7 @@ class Builder:
                 return left
             if right.is_exactly(-1):
                 return self.neg(left)
-            return self.mul(left, self._derived(f"1/{_bracketed(right.text)}", 1 / MP.mpf(right.value)))
+            return self.mul(left, self._derived(f"1/{_bracketed(right.label)}", 1 / MP.mpf(right.value)))
         if left.is_exactly(0):
             return left
         return self._intern(
@@ -204,7 +212,7 @@ class Builder:
         if node.is_constant:
             if node.structural and node.value in (0, 1):
                 return node
-            return self._derived(f"sqrt({node.text})", MP.sqrt(node.value))
+            return self._derived(f"sqrt({node.label})", MP.sqrt(node.value))
         return self._intern(("root", node.serial), op=Op.ROOT, args=(node,), stage=node.stage)
 
     def size(self, node: Node) -> Node:
@@ -266,7 +274,7 @@ def _cancelled(terms: list[tuple[int, Node]]) -> list[tuple[int, Node]]:
     """Drop pairs of terms that cancel exactly."""
     kept: list[tuple[int, Node]] = []
     for sign, node in terms:
-        if (-sign, node) in kept and not node.is_constant:
+        if (-sign, node) in kept and not node.structural:
             kept.remove((-sign, node))
         else:
             kept.append((sign, node))

@@ -138,13 +138,13 @@ def _graded(solver: Solver, poly: Poly, least: Least, algebra: Algebra) -> Outer
     constant = all(n.is_constant for (i, j), n in poly.terms if i + j > 0)
     if algebra.turns:
         if poly.degree == 1:
-            return Outer(poly, measure, 2 if constant else 3, "balance")
-        return Outer(poly, measure, 20, "quartic") if poly.degree == 2 else None
+            return Outer(poly, least, 2 if constant else 3, "balance")
+        return Outer(poly, least, 20, "quartic") if poly.degree == 2 else None
     if poly.degree == 1:
-        return Outer(poly, measure, 1, "slide")
+        return Outer(poly, least, 1, "slide")
     if poly.degree == 2:
-        return Outer(poly, measure, 4, "slide roots")
-    return Outer(poly, measure, 22, "quartic") if poly.degree <= 4 else None
+        return Outer(poly, least, 4, "slide roots")
+    return Outer(poly, least, 22, "quartic") if poly.degree <= 4 else None
 
 
 def solve_outer(solver: Solver, use: Use, outer: Outer, note: str) -> None:

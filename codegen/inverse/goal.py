@@ -15,6 +15,7 @@ from codegen.inverse.oracle import Oracle
 from codegen.inverse.segment import Core, Segment, Use, core_of
 from codegen.inverse.solver import Solver
 from codegen.model import Arm, JointKind, JointRow
+from codegen.names import joint_identifiers
 from codegen.program import Builder, Node
 
 
@@ -95,6 +96,7 @@ def goal_of(arm: Arm) -> Goal:
     for entry in position:
         solver.oracle.declare_real(entry)
     goal = Goal(arm, chain, solver, rotation, position, {}, {})
+    solver.labels.update(enumerate(joint_identifiers(arm)))
     for joint, row in zip(chain.joints, arm.joints, strict=True):
         _declare_joint(goal, joint, row)
     return goal
@@ -102,7 +104,6 @@ def goal_of(arm: Arm) -> Goal:
 
 def _declare_joint(goal: Goal, joint: ChainJoint, row: JointRow) -> None:
     solver, builder, index = goal.solver, goal.solver.builder, joint.index
-    solver.labels[index] = row.name.replace(" ", "_").replace("-", "_").replace(".", "_")
     held = index not in goal.arm.free_indices
     if row.kind is JointKind.REVOLUTE:
         pair = Pair(builder.input(f"known{index}.c"), builder.input(f"known{index}.s"))

@@ -25,6 +25,7 @@ class DirectionProblem:
 
 def solve_direction2(solver: Solver, problem: DirectionProblem, what: str) -> bool:
     """The second joint from the height along the first axis (two roots), then the first."""
+    solver.heading(what)
     ways = [(_height_equation(solver, way), way) for way in (problem, problem.reversed(solver))]
     usable = [
         (balance, way)

@@ -76,7 +76,7 @@ class BalanceStep:
 class SlideStep:
     """numerator / denominator: one root. Where the denominator vanishes the slide is free and keeps its seed."""
 
-    joint: int
+    joint: int | None
     angle: str
     value: Node
     numerator: Node

@@ -13,12 +13,12 @@ from codegen.inverse.solver import Solver
 
 def solve_planar3(solver: Solver, group: Segment, goal: Rigid, what: str) -> bool:
     """Three planar joints: group = goal."""
-    space = solver.space
+    solver.heading(what)
     first, _, last = group.uses
     if last.turns:
         return _last_turns(solver, group, goal, what)
     if first.turns:
-        return _last_turns(solver, group.reversed(space), space.inverse(goal), what)
+        return _last_turns(solver, group.reversed(solver.space), solver.space.inverse(goal), what)
     return _only_middle_turns(solver, group, goal, what)
 
 

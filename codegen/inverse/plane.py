@@ -42,6 +42,7 @@ class PlaneElimination:
 
 def solve_plane3(solver: Solver, problem: PlaneProblem, what: str) -> bool:
     """Three joints that bring a plane to its place."""
+    solver.heading(what)
     if all(use.turns for use in problem.segment.uses):
         return _three_turns(solver, problem, what)
     if sum(use.turns for use in problem.segment.uses) == 2:

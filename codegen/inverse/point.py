@@ -84,6 +84,7 @@ def readings(solver: Solver, problem: PointProblem) -> list[PointProblem]:
 
 def solve_point3(solver: Solver, problem: PointProblem, what: str) -> bool:
     """Three joints; False when no elimination leaves a solvable equation."""
+    solver.heading(what)
     ways = eliminations(solver, problem)
     if not ways:
         return False
@@ -114,6 +115,7 @@ def _without_last(solver: Solver, problem: PointProblem) -> PointProblem:
 
 def solve_point2(solver: Solver, problem: PointProblem, what: str) -> bool:
     """Two joints: one of them alone from what the other cannot change, then the other."""
+    solver.heading(what)
     ways = [_second_joint(solver, problem), _second_joint(solver, problem.reversed(solver))]
     found = [way for way in ways if way is not None]
     if not found:

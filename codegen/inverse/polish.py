@@ -86,7 +86,7 @@ def _inner_from_outer(
     if not inner.turns:
         first = equations[0]
         rest = b.sub(value_at(solver, first.rhs, where), solver.space.dot(first.a, known))
-        solver.slide(inner, rest, first.a[2], note)
+        solver.slide(inner, rest, first.a[2], note, settles=False)
         return solver.slides[inner.joint.index]
     left, right = (value_at(solver, reduced_rhs(solver, e, u, algebra), where) for e in equations)
     z_x, z_y = solved_for_z(solver, (equations[0], equations[1]), left, right)

@@ -71,7 +71,7 @@ class Solver:
 
     def heading(self, topic: str) -> None:
         """Names of values made from here on start with this word."""
-        self.builder.topic = topic
+        self.builder.topic = topic.split(",")[0].replace(" ", "_")
 
     # -- what a step makes known -------------------------------------------------------------------------------------
     def _new_stage(self, roots: int) -> None:
@@ -141,14 +141,19 @@ class Solver:
         size: Node | None = None
         if equation.fixed:
             scale = self._signed_size(a_part, b_part)
-            a_part, b_part, target = b.div(a_part, scale), b.div(b_part, scale), b.div(target, scale)
+            a_part, b_part = self._scaled_part(a_part, scale), self._scaled_part(b_part, scale)
+            target = b.div(target, scale)
             below, above = b.sub(b.integer(1), target), b.add(b.integer(1), target)
             square = b.mul(below, above) if equation.square is None else b.div(equation.square, b.square(scale))
         else:
             size = b.sqrt(b.add(b.square(a_part), b.square(b_part)))
             square = b.mul(b.sub(size, target), b.add(size, target))
-        self._new_stage(2)
         name = self.label(use.joint.index)
+        b.named(target, f"{name}_target", "what the pair of the joint must add up to" if size is None else "")
+        b.named(square, f"{name}_square")
+        if size is not None:
+            b.named(size, f"{name}_size")
+        self._new_stage(2)
         root = b.fresh_stage(f"{name}_root", self.stage)
         self.oracle.declare_real(root)
         pair = self.new_pair(name)
@@ -181,6 +186,9 @@ class Solver:
             return b_part
         return self.builder.sqrt(self.builder.add(self.builder.square(a_part), self.builder.square(b_part)))
 
+    def _scaled_part(self, part: Node, scale: Node) -> Node:
+        return self.builder.integer(1) if part is scale else self.builder.div(part, scale)
+
     def _side_meaning(self, use: Use, a_part: Node, b_part: Node) -> str:
         name = self.label(use.joint.index)
         if a_part.is_exactly(1) and b_part.is_exactly(0):
@@ -189,14 +197,15 @@ class Solver:
             return f"cos({name}) <= 0|cos({name}) > 0"
         return f"{name}: first of the two roots|{name}: second of the two roots"
 
-    def slide(self, use: Use, numerator: Node, denominator: Node, note: str) -> Node:
+    def slide(self, use: Use, numerator: Node, denominator: Node, note: str, settles: bool = True) -> Node:
         """The slide of a joint from an equation linear in it."""
         b = self.builder
         if use.sign < 0:
             numerator = b.neg(numerator)
         name = self.label(use.joint.index)
-        value = self.new_slide(name)
-        self.steps.append(SlideStep(use.joint.index, name, value, numerator, denominator, note))
+        value = self.new_slide(name if settles else f"{name}_rough")
+        joint = use.joint.index if settles else None
+        self.steps.append(SlideStep(joint, name, value, numerator, denominator, note))
         self.slides[use.joint.index] = value
         return self.own_slide(use)
 

@@ -30,8 +30,46 @@ class Derivation:
     goal: Goal
     plan: Plan
 
+    def misses(self) -> list[tuple[str, Node]]:
+        """("length" or "angle", pose reached minus pose wanted) for every entry that the task reads."""
+        goal, space = self.goal, self.goal.space
+        rotation, position = goal.pose_from(self.plan.pairs, self.plan.slides)
+        gap = space.minus(position, goal.position)
+        if goal.arm.task in (Task.PLANE_POSE, Task.PLANE_POINT):
+            gap = _across(goal, gap)
+        found = [("length", entry) for entry in gap]
+        columns = {Task.POSE: (0, 1, 2), Task.POINT_AXIS: (2,)}.get(goal.arm.task, ())
+        for k in columns:
+            turned = space.minus(space.column(rotation, k), space.column(goal.rotation, k))
+            found += [("angle", entry) for entry in turned]
+        return [(kind, node) for kind, node in found if not node.is_constant]
+
+    def known_values(self) -> dict[Node, Node]:
+        """Every leaf of the plan by what it is where all joints are known: for finding the branch of joint values."""
+        goal, solver = self.goal, self.goal.solver
+        rotation, position = goal.known_pose()
+        values = dict(zip(goal.position, position, strict=True))
+        for wanted, known in zip(goal.rotation, rotation, strict=True):
+            values.update(zip(wanted, known, strict=True))
+        pairs = [(solver.pairs[k], solver.known_pairs[k]) for k in sorted(solver.pairs)]
+        for pair, known_pair in pairs + list(solver.known_headings.items()):
+            values[pair.cosine], values[pair.sine] = known_pair.cosine, known_pair.sine
+        for k in sorted(solver.slides):
+            values[solver.slides[k]] = solver.known_slides[k]
+        return values
+
 
 Attempt = Callable[[Goal], bool]
+
+
+def _across(goal: Goal, gap: Vector) -> Vector:
+    """The part of a difference of points that lies in the plane of motion, in the world frame."""
+    space = goal.space
+    before, segment, _ = goal.segment()
+    axes, _ = at_rest(goal.solver, segment)
+    normal = planar_normal(goal.solver, segment) or space.cross(axes[0], axes[1])
+    up = space.times(before.rotation, normal)
+    return space.minus(gap, space.scaled(up, space.dot(up, gap)))
 
 
 def derivations(arm: Arm) -> Iterator[Derivation]:
@@ -187,23 +225,33 @@ def _group_angle(goal: Goal, segment: Segment, normal: Vector, name: str, x: Nod
     return pair
 
 
-def _plane_pose(goal: Goal) -> bool:
-    """The turn about the normal that is nearest to the wanted rotation, and the point in the plane."""
-    space, solver, b = goal.space, goal.solver, goal.solver.builder
+def plane_block(goal: Goal) -> tuple[tuple[Node, Node], tuple[Node, Node]] | None:
+    """The part in the plane of motion of the wanted rotation against the one at rest; None where the arm is not planar."""
+    space, solver = goal.space, goal.solver
     before, segment, behind = goal.segment()
     normal = planar_normal(solver, segment)
     if normal is None:
-        return False
+        return None
     axes, motion = at_rest(solver, segment)
     frame = frame_about(solver, normal, axes[0])
     rest = space.compose(before, motion, behind).rotation
     turn = space.product(goal.rotation, space.transposed(rest))
     in_world = space.product(before.rotation, frame.rotation)
     local = space.product(space.product(space.transposed(in_world), turn), in_world)
-    angle = _group_angle(
-        goal, segment, normal, "heading", b.add(local[0][0], local[1][1]), b.sub(local[1][0], local[0][1]),
-        "turn in the plane of motion",
-    )  # fmt: skip
+    return (local[0][0], local[0][1]), (local[1][0], local[1][1])
+
+
+def _plane_pose(goal: Goal) -> bool:
+    """The turn about the normal that is nearest to the wanted rotation, and the point in the plane."""
+    space, solver, b = goal.space, goal.solver, goal.solver.builder
+    before, segment, behind = goal.segment()
+    normal, block = planar_normal(solver, segment), plane_block(goal)
+    if normal is None or block is None:
+        return False
+    axes, motion = at_rest(solver, segment)
+    frame = frame_about(solver, normal, axes[0])
+    x, y = b.add(block[0][0], block[1][1]), b.sub(block[1][0], block[0][1])
+    angle = _group_angle(goal, segment, normal, "heading", x, y, "turn in the plane of motion")
     rotation = space.compose(turned_about(solver, frame, angle), motion).rotation
     return _planar_goal(goal, segment, normal, rotation, before, motion, behind)
 

@@ -1,0 +1,202 @@
+"""The two files of an arm: everything printed, then placed into the templates."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from functools import cache
+
+import jinja2
+
+from codegen import VERSION
+from codegen.elementary import maths_context
+from codegen.emit.branch_text import BranchText
+from codegen.emit.check_text import PoseCheck, pose_check
+from codegen.emit.expression import Constants
+from codegen.emit.inverse_text import InverseText, StageText
+from codegen.emit.motion_text import MotionText
+from codegen.emit.numbers import literal
+from codegen.emit.tolerances import limit_texts, slowness, tolerance_rows
+from codegen.inverse.tasks import Derivation
+from codegen.model import Arm
+from codegen.options import Options
+from codegen.places import TEMPLATES
+
+_HELPERS = (
+    "abs", "sqrt", "sin_cos", "is_finite", "turn", "unit", "keep", "turns", "settle_turn", "settle_slide", "signed_root",
+    "turn_roots", "slide_roots", "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
+)  # fmt: skip
+
+
+@dataclass(frozen=True, slots=True)
+class Source:
+    """Where an arm came from: its file's name and the digest of its bytes."""
+
+    name: str
+    digest: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class JointText:
+    text: str
+    lower: str
+    upper: str
+    slowness: str
+
+
+@cache
+def environment() -> jinja2.Environment:
+    """Templates as shipped beside the tool: strict about names, blocks trimmed."""
+
+    def load(name: str) -> str:
+        return (TEMPLATES / name).read_text(encoding="utf-8")
+
+    return jinja2.Environment(
+        loader=jinja2.FunctionLoader(load),
+        undefined=jinja2.StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=False,
+        keep_trailing_newline=True,
+        autoescape=False,
+    )
+
+
+def closed_form_files(arm: Arm, derivation: Derivation, options: Options, source: Source) -> dict[str, str]:
+    """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm whose inverse is in closed form."""
+    context = _context(arm, derivation, options, source)
+    p = options.prefix
+    return {f"{p}_kin.h": _render("kin.h.j2", context), f"{p}_kin.c": _pruned("kin.c.j2", context)}
+
+
+def _render(template: str, context: dict[str, object]) -> str:
+    text = environment().get_template(template).render(context)
+    return re.sub(r"\n{3,}", "\n\n", text).rstrip("\n") + "\n"
+
+
+def _pruned(template: str, context: dict[str, object]) -> str:
+    """The file without the helpers that nothing in it calls; a helper may be needed by another only."""
+    used, p = frozenset(_HELPERS), context["p"]
+    rows: list[tuple[str, str, str]] = context["tolerances"]  # type: ignore[assignment]
+    while True:
+        text = _render(template, {**context, "used": used, "uses": used | {"atan2"}, "tolerances": rows})
+        called = frozenset(name for name in used if len(re.findall(rf"\b{p}_{name}\(", text)) > 1)
+        read = [row for row in rows if len(re.findall(rf"\b{row[0]}\b", text)) > 1]
+        if called == used and read == rows:
+            return text
+        used, rows = called, read
+
+
+def _context(arm: Arm, derivation: Derivation, options: Options, source: Source) -> dict[str, object]:
+    constants = Constants(options)
+    forward = MotionText(arm, options, constants).forward()
+    inverse = InverseText(derivation, options, constants)
+    stages = inverse.stage_texts()
+    reach = inverse.reach_lines()
+    branch_of = BranchText(derivation, options, constants).lines()
+    jacobian = MotionText(arm, options, constants).jacobian()
+    check = pose_check(derivation, options, constants)
+    joints = [_joint_text(arm, k, options) for k in range(len(arm.joints))]
+    return {
+        **_words(options),
+        "arm": {
+            "name": arm.name,
+            "task": arm.task.key,
+            "matches": arm.task.matches,
+            "held": arm.held,
+            "joints": joints,
+            "branch_text": _branch_text(stages, derivation.plan.branches),
+        },
+        "command": _command(source, options),
+        "version": VERSION,
+        "numeric": False,
+        "branches": derivation.plan.branches,
+        "maths": maths_context(options),
+        "constants": constants.declarations(),
+        "tolerances": tolerance_rows(arm, options),
+        "forward": forward,
+        "jacobian": jacobian,
+        "stages": [_stage_context(stage) for stage in stages],
+        "fields": inverse.fields(),
+        "reach": reach,
+        "branch_of": branch_of,
+        "check": check.kind,
+        "reads": check.reads,
+        "plane_lines": check.lines,
+    }
+
+
+def _words(options: Options) -> dict[str, object]:
+    """Literals and names that every template may place."""
+
+    def number(value: float) -> str:
+        return literal(value, options.real)
+
+    return {
+        "p": options.prefix,
+        "P": options.prefix.upper(),
+        "real": options.real,
+        "zero": number(0),
+        "half": number(0.5),
+        "one": number(1),
+        "two": number(2),
+        "six": number(6),
+        "edge": number(1.0625),
+        "minus_edge": number(-1.0625),
+        "number": number,
+        "root_steps": 30 if options.real.bits < 30 else 60,
+        "most_turns": number(2**22),
+        "matrix_slack": number(0.001),
+        "passes": 3 if options.real.bits < 30 else 4,
+    }
+
+
+def _stage_context(stage: StageText) -> dict[str, object]:
+    bits = {1: 0, 2: 1, 4: 2}[stage.roots]
+    return {
+        "name": stage.name,
+        "number": stage.number,
+        "roots": stage.roots,
+        "shift": stage.shift,
+        "bit": 1 << stage.shift,
+        "mask": f"0x{((1 << bits) - 1) << stage.shift:X}",
+        "notes": stage.notes,
+        "lines": stage.lines,
+    }
+
+
+def _joint_text(arm: Arm, index: int, options: Options) -> JointText:
+    row = arm.joints[index]
+    motion = "turns, rad" if row.kind.value == "revolute" else "slides, m"
+    lower, upper = limit_texts(arm, index, options)
+    held = ", held by the inverse" if row.name in arm.held else ""
+    return JointText(f"{row.name}: {motion}{held}", lower, upper, literal(slowness(arm, index), options.real))
+
+
+def _branch_text(stages: list[StageText], branches: int) -> list[str]:
+    """What each digit of a branch number means."""
+    if branches == 1:
+        return ["Inverse: closed form. One branch: a pose that can be reached has one solution."]
+    lines = ["Inverse: closed form. A branch number names the same posture all over the workspace:"]
+    for stage in stages[1:]:
+        if stage.roots == 2:
+            zero, one = stage.meanings
+            lines.append(f"  bit {stage.shift}   0: {zero}   1: {one}")
+        else:
+            lines.append(
+                f"  bits {stage.shift + 1} and {stage.shift}   {stage.name}, one of up to four roots: bit {stage.shift} by "
+                "whether its equation rises or falls"
+            )
+            lines.append(f"             through the root (0 rises), bit {stage.shift + 1} by the order of such roots")
+    return lines
+
+
+def _command(source: Source, options: Options) -> str:
+    name = re.sub(r"[^\w.+-]", "_", source.name, flags=re.ASCII)
+    mathematics = options.mathematics.value
+    text = f"linkwright generate {name} --real {options.real.c_name} --math {mathematics} --prefix {options.prefix}"
+    return text if options.angle_error == 2 else f"{text} --angle-error {options.angle_error}"
+
+
+def check_of(derivation: Derivation, options: Options) -> PoseCheck:
+    """Which entries of a pose the generated inverse reads, and how it checks them."""
+    return pose_check(derivation, options, Constants(options))

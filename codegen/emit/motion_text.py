@@ -1,0 +1,87 @@
+"""The bodies of forward kinematics and of the Jacobian, as lines of C."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from codegen.chain import Chain, chain_of
+from codegen.emit.expression import Constants, Scope
+from codegen.forward import Carrier, Heading, jacobian_nodes, pose_nodes
+from codegen.geometry import Pair, Space
+from codegen.model import Arm
+from codegen.names import joint_identifiers
+from codegen.options import Options
+from codegen.program import Builder, Node
+
+
+@dataclass
+class JointValues:
+    """Turns headings and slides into leaves of a program that starts from q."""
+
+    builder: Builder
+    chain: Chain
+    labels: tuple[str, ...]
+    pairs: dict[Heading, Pair] = field(default_factory=dict)
+
+    def pair(self, heading: Heading) -> Pair:
+        if heading not in self.pairs:
+            name = "_".join(self.labels[index] for index, _ in heading)
+            self.pairs[heading] = Pair(self.builder.input(f"{name}.c"), self.builder.input(f"{name}.s"))
+        return self.pairs[heading]
+
+    def variable(self, index: int) -> Node:
+        """A joint's variable plus its offset."""
+        return self.builder.add(self.builder.input(f"q[{index}]"), self.chain.joints[index].offset)
+
+    def angle(self, heading: Heading) -> Node:
+        return self.builder.signed_sum(*((sign, self.variable(index)) for index, sign in heading))
+
+
+@dataclass
+class MotionText:
+    """Builds one function that starts from joint values."""
+
+    arm: Arm
+    options: Options
+    constants: Constants
+    reserved: frozenset[str] = frozenset({"q", "pose", "jac"})
+
+    def __post_init__(self) -> None:
+        self.builder = Builder()
+        self.space = Space(self.builder)
+        self.values = JointValues(self.builder, chain_of(self.arm, self.builder), joint_identifiers(self.arm))
+        self.carrier = Carrier(self.space, self.values.chain, self.values.pair, self.values.variable, self.values.labels)
+
+    def forward(self) -> list[str]:
+        pose = pose_nodes(self.carrier)
+        targets = [(f"pose->p[{i}]", pose.position[i]) for i in range(3)]
+        targets += [(f"pose->r[{i}][{j}]", pose.rotation[i][j]) for i in range(3) for j in range(3)]
+        return self._function(targets)
+
+    def jacobian(self) -> list[str]:
+        _, columns = jacobian_nodes(self.carrier)
+        targets = [
+            (f"jac[{row + 3 * half}][{k}]", vector[row])
+            for k, column in enumerate(columns)
+            for half, vector in enumerate(column)
+            for row in range(3)
+        ]
+        return self._function(targets)
+
+    def _function(self, targets: list[tuple[str, Node]]) -> list[str]:
+        scope = Scope(self.builder, self.constants, self.options, taken=set(self.reserved))
+        scope.plan_uses([node for _, node in targets])
+        used = {node for node in scope.uses}
+        for heading, pair in self.values.pairs.items():
+            if pair.cosine in used or pair.sine in used:
+                self._declare_pair(scope, heading)
+        for target, node in targets:
+            scope.put(f"{target} = {scope.value(node)};")
+        return scope.lines
+
+    def _declare_pair(self, scope: Scope, heading: Heading) -> None:
+        p, name = self.options.prefix, "_".join(self.values.labels[index] for index, _ in heading)
+        angle = self.values.angle(heading)
+        scope.taken.add(name)
+        note = "  /* parallel axes: their angles add up */" if len(heading) > 1 else ""
+        scope.put(f"const {p}_pair {name} = {p}_turn({scope.text(angle)});{note}")

@@ -1,0 +1,328 @@
+"""Each kind of step as C statements."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from codegen.emit.expression import Scope
+from codegen.emit.numbers import literal
+from codegen.geometry import Pair
+from codegen.inverse.goal import Goal
+from codegen.inverse.plan import (
+    BalanceStep,
+    DirectionStep,
+    Least,
+    QuarticStep,
+    RefineStep,
+    SeedAngle,
+    SlideQuarticStep,
+    SlideRootsStep,
+    SlideStep,
+    Step,
+    Variable,
+)
+from codegen.options import Options
+from codegen.program import Node
+
+LEASTS = {
+    Least.ANGLE: "LEAST_ANGLE",
+    Least.ANGLE_SQUARED: "LEAST_ANGLE * LEAST_ANGLE",
+    Least.LENGTH: "LEAST_LENGTH",
+    Least.LENGTH_SQUARED: "LEAST_LENGTH * LEAST_LENGTH",
+    Least.AREA: "LEAST_LENGTH * REACH",
+}
+
+
+def step_roots(step: Step) -> list[Node]:
+    """The values that a step's statements read."""
+    match step:
+        case DirectionStep():
+            return [step.x, step.y]
+        case BalanceStep():
+            return [*([step.size] if step.size else []), step.target, step.square, step.x, step.y]
+        case SlideStep():
+            return [step.numerator, step.denominator]
+        case SlideRootsStep():
+            return [step.middle, step.square]
+        case RefineStep():
+            return [*step.residuals, *step.slopes[0], *step.slopes[1]]
+        case _:
+            return []
+
+
+@dataclass
+class Statements:
+    """Prints steps into a scope."""
+
+    scope: Scope
+    goal: Goal
+    options: Options
+
+    def __post_init__(self) -> None:
+        self.p = self.options.prefix
+        self.zero = literal(0, self.options.real)
+
+    def put(self, line: str) -> None:
+        self.scope.put(line)
+
+    def step(self, step: Step) -> None:
+        for line in _comment_lines(step.note):
+            self.put(line)
+        match step:
+            case DirectionStep():
+                self._direction(step)
+            case BalanceStep():
+                self._balance(step)
+            case SlideStep():
+                self._slide(step)
+            case SlideRootsStep():
+                self._slide_roots(step)
+            case QuarticStep() | SlideQuarticStep():
+                self._quartic_choice(step)
+            case RefineStep():
+                self._refine(step)
+
+    # -- held joints -------------------------------------------------------------------------------------------------
+    def held_joints(self) -> None:
+        for index in self.goal.arm.held_indices:
+            label = self.goal.solver.labels[index]
+            joint = self.goal.chain.joints[index]
+            variable = self._with_offset(f"work->seed[{index}]", joint.offset)
+            kind = "turn" if joint.turns else "slide"
+            if joint.turns:
+                self.put(f"const {self.p}_pair {label} = {self.p}_turn({variable});  /* held: from the seed */")
+                self.put(f"work->{label} = {label};")
+            else:
+                self.put(f"const {self.p}_real {label}_slide = {variable};  /* held: from the seed */")
+                self.put(f"work->{label}_slide = {label}_slide;")
+            del kind
+            self.put(f"{self.p}_keep(work, {index}u);")
+
+    def _with_offset(self, text: str, offset: Node, sign: str = "+") -> str:
+        if offset.is_exactly(0):
+            return text
+        return f"{text} {sign} {self.scope.constants.text(offset)}"
+
+    # -- forms -------------------------------------------------------------------------------------------------------
+    def _name(self, pair: Pair) -> str:
+        return pair.cosine.name.removesuffix(".c")
+
+    def _seed_pair(self, seed: SeedAngle) -> str:
+        """The pair that a free angle takes from the seed."""
+        if not seed:
+            return f"{self.p}_turn({self.zero})"
+        terms = []
+        for index, sign in seed:
+            text = self._with_offset(f"work->seed[{index}]", self.goal.chain.joints[index].offset)
+            text = f"({text})" if " " in text and sign < 0 else text
+            terms.append(("-" if sign < 0 else "+", text))
+        first = ("-" if terms[0][0] == "-" else "") + terms[0][1]
+        return f"{self.p}_turn({' '.join([first, *(f'{s} {t}' for s, t in terms[1:])])})"
+
+    def _direction(self, step: DirectionStep) -> None:
+        x, y, name = self.scope.value(step.x), self.scope.value(step.y), self._name(step.pair)
+        self.put(f"{self.p}_pair {name};")
+        least = LEASTS.get(step.least)
+        if least is None:
+            self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
+            self._settle_turn(step.joint, name)
+        else:
+            self.put(f"if ({self.p}_unit({x}, {y}, {least}, &{name})) {{")
+            self._settle_turn(step.joint, name, deeper=True)
+            self._keep_else(step.joint, step.seed, name)
+        self._store(name)
+
+    def _settle_turn(self, joint: int | None, name: str, deeper: bool = False) -> None:
+        if joint is not None:
+            angle = self._with_offset(f"{self.p}_atan2({name}.s, {name}.c)", self.goal.chain.joints[joint].offset, "-")
+            self.put(("    " if deeper else "") + f"{self.p}_settle_turn(work, {joint}u, {angle});")
+
+    def _keep_else(self, joint: int | None, seed: SeedAngle, name: str) -> None:
+        self.put("} else {  /* the pose leaves it free: it keeps its seed */")
+        self.put(f"    {name} = {self._seed_pair(seed)};")
+        self.put("    work->marks |= MARK_FREE;")
+        if joint is not None:
+            self.put(f"    {self.p}_keep(work, {joint}u);")
+        self.put("}")
+
+    def _store(self, name: str) -> None:
+        """Rough values are polished in the same stage; nothing later reads them."""
+        if name.removesuffix("_slide").endswith("_rough"):
+            return
+        self.put(f"work->{name} = {name};")
+
+    def _balance(self, step: BalanceStep) -> None:
+        name = self._name(step.pair)
+        self.put(f"{self.p}_pair {name};")
+        self.put(f"{self.p}_real {name}_root;")
+        target = self.scope.value(step.target)
+        square = self.scope.value(step.square)
+        for side in (step.x, step.y):
+            self._ready_without(side, step.root)
+        if step.size is None:
+            self._root(name, square, "SLACK")
+            x, y = self.scope.text(step.x), self.scope.text(step.y)
+            self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
+            self._settle_turn(step.joint, name)
+        else:
+            self._balance_or_free(step, name, target, square)
+        self._store(name)
+
+    def _ready_without(self, node: Node, leaf: Node) -> None:
+        """Name what the node needs apart from a leaf that is not known yet."""
+        if node in self.scope.names:
+            return
+        for arg in node.args:
+            if arg is not leaf and leaf not in _leaves_of(arg):
+                self.scope.value(arg)
+            else:
+                self._ready_without(arg, leaf)
+
+    def _balance_or_free(self, step: BalanceStep, name: str, target: str, square: str) -> None:
+        assert step.size is not None
+        size, least = self.scope.value(step.size), LEASTS[step.least]
+        self.put(f"if ({size} > {least}) {{")
+        self.scope.indent += "    "
+        self._root(name, square, f"{size} * (SLACK * {size} + {least})")
+        x, y = self.scope.text(step.x), self.scope.text(step.y)
+        self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
+        self._settle_turn(step.joint, name)
+        self.scope.indent = self.scope.indent[4:]
+        self.put(f"}} else if ({self.p}_abs({target}) > {least}) {{")
+        self.put("    work->marks |= MARK_OUT_OF_REACH;")
+        self.put("    return;")
+        self._keep_else(step.joint, step.seed, name)
+
+    def _root(self, name: str, square: str, slack: str) -> None:
+        self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, second, &{name}_root)) {{")
+        self.put("    return;  /* out of reach */")
+        self.put("}")
+
+    def _slide(self, step: SlideStep) -> None:
+        name = step.value.name
+        numerator = self.scope.value(step.numerator)
+        joint = step.joint
+        if step.denominator.is_constant:
+            quotient = self.scope.builder.div(step.numerator, step.denominator)
+            self.put(f"const {self.p}_real {name} = {self.scope.text(quotient)};")
+            self._settle_slide(joint, name)
+        else:
+            denominator = self.scope.value(step.denominator)
+            self.put(f"{self.p}_real {name};")
+            self.put(f"if ({self.p}_abs({denominator}) > LEAST_ANGLE) {{")
+            self.put(f"    {name} = ({numerator}) / ({denominator});")
+            if joint is not None:
+                self.put("    " + self._slide_text(joint, name))
+            self.put(f"}} else if ({self.p}_abs({numerator}) > LEAST_LENGTH) {{")
+            self.put("    work->marks |= MARK_OUT_OF_REACH;")
+            self.put("    return;")
+            self.put("} else {  /* the pose leaves it free: it keeps its seed */")
+            self.put("    work->marks |= MARK_FREE;")
+            if joint is not None:
+                offset = self.goal.chain.joints[joint].offset
+                self.put(f"    {name} = {self._with_offset(f'work->seed[{joint}]', offset)};")
+                self.put(f"    {self.p}_keep(work, {joint}u);")
+            else:
+                self.put(f"    {name} = {self.zero};")
+            self.put("}")
+        self._store(name)
+
+    def _slide_text(self, joint: int, name: str) -> str:
+        value = self._with_offset(name, self.goal.chain.joints[joint].offset, "-")
+        return f"{self.p}_settle_slide(work, {joint}u, {value});"
+
+    def _settle_slide(self, joint: int | None, name: str) -> None:
+        if joint is not None:
+            self.put(self._slide_text(joint, name))
+
+    def _slide_roots(self, step: SlideRootsStep) -> None:
+        name, root = step.value.name, step.root.name
+        square, middle = self.scope.value(step.square), self.scope.value(step.middle)
+        self.put(f"{self.p}_real {root};")
+        self.put(f"if (!{self.p}_signed_root(work, {square}, SLACK * REACH * REACH, second, &{root})) {{")
+        self.put("    return;  /* out of reach */")
+        self.put("}")
+        value = root if step.middle.is_exactly(0) else f"{middle} + {root}"
+        self.put(f"const {self.p}_real {name} = {value};")
+        self._settle_slide(step.joint, name)
+        self._store(name)
+
+    # -- four roots --------------------------------------------------------------------------------------------------
+    def prepare(self, step: Step) -> None:
+        """At the end of the stage before: all roots at once."""
+        if isinstance(step, QuarticStep | SlideQuarticStep):
+            kind = "turn" if isinstance(step, QuarticStep) else "slide"
+            for line in _comment_lines(f"{step.note}: all its roots"):
+                self.put(line)
+            texts = [self.scope.value(node) for node in step.coefficients]
+            self.put(f"const {self.p}_quartic {step.angle}_equation = {{{{{', '.join(texts)}}}}};")
+            self.put(f"{self.p}_{kind}_roots(&{step.angle}_equation, &work->{step.angle}_roots);")
+
+    def _quartic_choice(self, step: QuarticStep | SlideQuarticStep) -> None:
+        name = self._name(step.pair) if isinstance(step, QuarticStep) else step.value.name
+        self.put(f"if (!work->{step.angle}_roots.there[choice]) {{")
+        self.put("    work->marks |= MARK_OUT_OF_REACH;")
+        self.put("    return;")
+        self.put("}")
+        self.put("work->marks |= MARK_EDGE;  /* its roots are approximate: the pose reached is checked */")
+        if isinstance(step, QuarticStep):
+            self.put(f"const {self.p}_pair {name} = work->{step.angle}_roots.turn[choice];")
+        else:
+            self.put(f"const {self.p}_real {name} = work->{step.angle}_roots.slide[choice];")
+
+    def _refine(self, step: RefineStep) -> None:
+        for variable in step.variables:
+            self._start_variable(variable)
+        self.put(f"for (int pass = 0; pass < {step.passes}; ++pass) {{")
+        self.scope.indent += "    "
+        known = dict(self.scope.names)
+        first, second = (self.scope.value(node) for node in step.residuals)
+        slopes = [self.scope.value(node) for row in step.slopes for node in row]
+        self.put(f"{self.p}_real change[2];")
+        self.put(f"{self.p}_newton2({', '.join([*slopes, first, second])}, change);")
+        for k, variable in enumerate(step.variables):
+            self._change_variable(variable, k)
+        self.scope.names = known
+        self.scope.indent = self.scope.indent[4:]
+        self.put("}")
+        for variable in step.variables:
+            self._finish_variable(variable)
+
+    def _start_variable(self, variable: Variable) -> None:
+        if isinstance(variable.before, Pair):
+            assert isinstance(variable.during, Pair)
+            self.put(f"{self.p}_pair {self._name(variable.during)} = {self._name(variable.before)};")
+        else:
+            assert isinstance(variable.during, Node)
+            self.put(f"{self.p}_real {variable.during.name} = {variable.before.name};")
+
+    def _change_variable(self, variable: Variable, k: int) -> None:
+        if isinstance(variable.during, Pair):
+            self.put(f"{self.p}_turn_by(&{self._name(variable.during)}, change[{k}]);")
+        else:
+            self.put(f"{variable.during.name} += change[{k}];")
+
+    def _finish_variable(self, variable: Variable) -> None:
+        if isinstance(variable.after, Pair):
+            assert isinstance(variable.during, Pair)
+            name = self._name(variable.after)
+            self.put(f"const {self.p}_pair {name} = {self._name(variable.during)};")
+            self._settle_turn(variable.joint if variable.joint < len(self.goal.chain.joints) else None, name)
+        else:
+            assert isinstance(variable.during, Node)
+            name = variable.after.name
+            self.put(f"const {self.p}_real {name} = {variable.during.name};")
+            self._settle_slide(variable.joint, name)
+        self._store(name)
+
+
+def _leaves_of(node: Node) -> set[Node]:
+    if not node.args:
+        return {node}
+    return set().union(*(_leaves_of(arg) for arg in node.args))
+
+
+def _comment_lines(text: str) -> list[str]:
+    return [f"/* {text} */"]
+
+

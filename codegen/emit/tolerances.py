@@ -1,0 +1,73 @@
+"""What rounding alone can explain, per number type and size of the arm.
+
+Each bound is a small multiple of u, half a unit in the last place of 1. They were chosen from measured rounding: a pose
+from forward kinematics differs from the exact one by 2 u to 4 u of the reach; the multiples leave room for the inverse's
+own steps and stay below the accuracy that is promised.
+"""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+from codegen.emit.numbers import literal
+from codegen.exact import MP, Angle
+from codegen.model import Arm, JointKind
+from codegen.options import Options
+
+FREE, SLACK, STEP, MISS, TURN, EXCESS = 16, 4096, 8, 24, 48, 8
+
+
+def reach_of(arm: Arm) -> Fraction:
+    """Longest distance from the world's origin that the tool point could have, links end to end; m."""
+    total = sum((abs(x) for frame in (arm.base, arm.tool) for x in frame.xyz), Fraction(0))
+    for row in arm.joints:
+        total += abs(row.a) + abs(row.d)
+        if row.kind is JointKind.PRISMATIC and row.limits is not None:
+            total += max(abs(limit) for limit in row.limits if isinstance(limit, Fraction))
+    return total or Fraction(1)
+
+
+def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
+    """(name, literal, comment)."""
+    u, reach = options.real.rounding, reach_of(arm)
+    high, low = _full_turn(options)
+
+    def row(name: str, value: object, comment: str) -> tuple[str, str, str]:
+        return name, literal(value, options.real), comment
+
+    return [
+        row("REACH", reach, "m, all links end to end"),
+        row("LEAST_LENGTH", FREE * u * reach, "m, a distance from an axis below which it is zero"),
+        row("LEAST_ANGLE", FREE * u, "the same for entries of unit vectors"),
+        row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
+        row("LEAST_MISS", MISS * u * reach, "m, a clamped solution may miss the point by this"),
+        row("LEAST_TURN", TURN * u, "and an entry of the rotation by this"),
+        row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
+        row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
+        row("TURNS_PER_RADIAN", 1 / (2 * MP.pi), "1 / (2 pi)"),
+        row("FULL_TURN", high, "2 pi in two parts: this one is exact when multiplied"),
+        row("FULL_TURN_REST", low, "and what is left of it"),
+    ]
+
+
+def _full_turn(options: Options) -> tuple[object, object]:
+    """2 pi as a number with few digits, whose multiples are exact, and a remainder."""
+    high = MP.mpf(2 * MP.pi, prec=options.real.bits // 2)
+    return high, 2 * MP.pi - high
+
+
+def slowness(arm: Arm, index: int) -> object:
+    """1 / max_speed, s/rad or s/m; 1 where the file gives none (contract: a missing max_speed counts as 1)."""
+    speed = arm.joints[index].max_speed
+    if speed is None:
+        return Fraction(1)
+    return 1 / speed.value() if isinstance(speed, Angle) else 1 / speed
+
+
+def limit_texts(arm: Arm, index: int, options: Options) -> tuple[str, str]:
+    """The limits as literals; far beyond any joint where there are none."""
+    limits = arm.joints[index].limits
+    if limits is None:
+        return literal(-(10**30), options.real), literal(10**30, options.real)
+    low, high = (x.value() if isinstance(x, Angle) else x for x in limits)
+    return literal(low, options.real), literal(high, options.real)
