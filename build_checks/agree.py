@@ -18,8 +18,10 @@ import numpy as np
 from build_checks.agree_atan2 import check_atan2
 from build_checks.agree_bench import BUDGETS, Bench
 from build_checks.agree_edges import check_degenerate, check_right_angles, check_unreachable
+from build_checks.agree_huge import check_huge
 from build_checks.agree_inputs import check_inputs
 from build_checks.agree_limits import check_at_limits, check_beyond_limits
+from build_checks.agree_nearest import check_ties
 from build_checks.agree_random import check_far_turns, check_random
 from build_checks.compile import Kinematics, Library, compiled
 from build_checks.reference import Reference
@@ -57,23 +59,27 @@ class Unit:
 _WORK: dict[str, Work] = {
     "inputs": check_inputs,
     "atan2": check_atan2,
+    "huge": check_huge,
     "right angles": check_right_angles,
     "degenerate": check_degenerate,
     "unreachable": check_unreachable,
     "at limits": check_at_limits,
     "beyond limits": check_beyond_limits,
     "far turns": check_far_turns,
+    "ties": check_ties,
     "random": check_random,
 }
 _FULL_SIZES = {
     "inputs": 64,
     "atan2": 200_000,
+    "huge": 1024,
     "right angles": 4096,
     "degenerate": 2048,
     "unreachable": 2048,
     "at limits": 4096,
     "beyond limits": 4096,
     "far turns": 4096,
+    "ties": 4096,
 }
 
 

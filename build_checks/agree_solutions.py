@@ -21,6 +21,7 @@ from build_checks.agree_bench import (
 )
 from build_checks.compile import CANARY, CANARY_BRANCH, AnyArray, Branches, Status
 from build_checks.reference import Array, Flags, Integers
+from build_checks.reference_task import length
 from build_checks.report import Check, Failure
 
 _SINGULAR_WITHIN = 128.0  # units of the number type: how singular a place must be for SINGULAR to be said there
@@ -30,7 +31,7 @@ def inspect(bench: Bench, batch: Batch) -> tuple[Branches, Flat]:
     """Solves every branch of every pose and judges what comes back."""
     found = bench.c.inverse_all(batch.packed, batch.seeds)
     flat = flatten(found)
-    _outputs(bench, batch, found)
+    check_outputs(bench, batch, found)
     _round_trip(bench, batch, found, flat)
     _held(bench, batch, flat)
     _turns_and_limits(bench, batch, found, flat)
@@ -40,7 +41,7 @@ def inspect(bench: Bench, batch: Batch) -> tuple[Branches, Flat]:
     return found, flat
 
 
-def _outputs(bench: Bench, batch: Batch, found: Branches) -> None:
+def check_outputs(bench: Bench, batch: Batch, found: Branches) -> None:
     """Known statuses, finite joint values, untouched rows where there is no solution, the right count."""
     solved = is_in(found.status, SOLVED)
     legal = solved | (found.status == Status.OUT_OF_REACH)
@@ -88,7 +89,7 @@ def _round_trip(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None
         found_here = {"branch": branch, "statuses": found.status[row], "joints_found": flat.q[index]}
         return Failure(what, bench.details(batch, row, **found_here))
 
-    ordinary = ~(np.abs(flat.q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi)
+    ordinary = _ordinary(bench, flat.q, targets.position)
     origins = np.where(np.isnan(batch.origins[flat.rows]), flat.q, batch.origins[flat.rows])
     bench.tally.judge(
         Check.ROUND_TRIP,
@@ -97,6 +98,14 @@ def _round_trip(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None
         position=worst(position[ordinary], origins[ordinary]),
         angle=worst(angle[ordinary], origins[ordinary]),
     )
+
+
+def _ordinary(bench: Bench, q: Array, position: Array) -> Flags:
+    """Joint values within a turn and positions near the arm: the plain budgets hold, and the worst error is told."""
+    turned = np.abs(q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi
+    far = length(position - bench.reference.base_position) > 2 * bench.reference.reach
+    ordinary: Flags = ~(turned | far)
+    return ordinary
 
 
 def _held(bench: Bench, batch: Batch, flat: Flat) -> None:
@@ -139,7 +148,8 @@ def _turns_and_limits(bench: Bench, batch: Batch, found: Branches, flat: Flat) -
 def turns(bench: Bench, q: Array, seeds: Array) -> tuple[Flags, Flags, Flags]:
     """[M, n] each: a turn is within the limits by more than rounding; to rounding; this turn is the wrong one."""
     low, high = bench.reference.lower, bench.reference.upper
-    sizes = (np.abs(q), np.abs(seeds), _finite_size(low), _finite_size(high), np.ones(1))
+    own_size = np.where(bench.reference.revolute, 1.0, bench.reference.reach)
+    sizes = (np.abs(q), np.abs(seeds), _finite_size(low), _finite_size(high), own_size)
     margin = 4 * bench.budget.unit * np.maximum.reduce([np.broadcast_to(size, q.shape) for size in sizes])
     surely = _some_turn(bench, q, low + margin, high - margin)
     perhaps = _some_turn(bench, q, low - margin, high + margin)
