@@ -129,8 +129,14 @@ def _layout(target: Target) -> tuple[str, ...]:
 
 
 def _arithmetic(target: Target) -> tuple[str, ...]:
-    """Only the compiler's arithmetic library; on AVR the float arithmetic is in the C library's mathematics."""
-    return target.libm if target.emulator is Emulator.SIMAVR else ("-nostdlib", "-lgcc")
+    """The compiler's arithmetic library, and of the C library what a compiler may call by itself: memcpy and its kin.
+
+    On AVR the float arithmetic is in the C library's mathematics.
+    """
+    if target.emulator is Emulator.SIMAVR:
+        return target.libm
+    specs = tuple(flag for flag in target.libm if flag.startswith("--specs"))
+    return (*specs, "-nodefaultlibs", "-lgcc", "-lc", "-lgcc")
 
 
 def _run(command: list[str], folder: Path, where: str) -> str:

@@ -1,7 +1,8 @@
 """Every loop of the C runs a constant number of times at most: read from clang's syntax tree, not by eye.
 
-Accepted is one shape only: for (unsigned i = constant; i < constant; i++), with <, <= or !=, a constant step, and no
-assignment to i in the body. `while`, `do` and `goto` are findings whatever they do.
+Accepted is one shape only: for (unsigned i = constant; i < constant; i++), with any comparison, a constant step, and no
+assignment to i in the body. In place of a constant may stand the counter of an accepted loop around it, and beside the
+comparison another condition that ends the loop sooner. `while`, `do` and `goto` are findings whatever they do.
 """
 
 from __future__ import annotations
@@ -46,76 +47,98 @@ class _Place:
         return Finding("loops", self.file.removeprefix("./"), self.line, rule, what)
 
 
-def _walk(node: Node, place: _Place) -> Iterator[Finding]:
+def _walk(node: Node, place: _Place, counters: frozenset[str] = frozenset()) -> Iterator[Finding]:
+    """`counters`: identities of the counters of the accepted loops around the node."""
     place.read(node.get("loc", {}))
     place.read(node.get("range", {}).get("begin", {}))
     kind = node.get("kind")
     if kind in _NEVER:
         yield place.finding(_NEVER[kind], "has no constant bound that can be read from its head")
-    elif kind == "ForStmt" and (reason := _unbounded(node)):
-        yield place.finding("for", reason)
+    elif kind == "ForStmt":
+        loop = _Loop(node, counters)
+        if loop.fault:
+            yield place.finding("for", loop.fault)
+        else:
+            counters = counters | {loop.counter}
     for child in node.get("inner", []):
-        yield from _walk(child, place)
+        yield from _walk(child, place, counters)
 
 
-def _unbounded(loop: Node) -> str | None:
-    """Why a for loop is not of the accepted shape; None when it is."""
-    start, _, condition, step, body = loop["inner"]
-    counter = _counter(start)
-    if counter is None:
-        return "does not start an integer counter of its own at a constant"
-    if not _compares(condition, counter):
-        return "does not compare its counter with a constant"
-    if not _steps(step, counter):
-        return "does not step its counter by a constant"
-    if any(_writes(node, counter) for node in _nodes(body)):
-        return "writes its counter in the body"
-    return None
+class _Loop:
+    """A for loop inside loops with the counters `around`.
 
+    counter  the identity of its counter; "" when it has none of its own
+    fault    why it is not of the accepted shape; None when it is
+    """
 
-def _counter(start: Node) -> str | None:
-    """The identity of the one variable declared in the loop's head, an integer with a constant start."""
-    declared = [node for node in start.get("inner", []) if node.get("kind") == "VarDecl"]
-    if start.get("kind") != "DeclStmt" or len(declared) != 1:
+    def __init__(self, node: Node, around: frozenset[str]) -> None:
+        start, _, self._condition, self._step, self._body = node["inner"]
+        self._around = around
+        self.counter = self._declared(start)
+        self.fault = self._find_fault()
+
+    def _find_fault(self) -> str | None:
+        if not self.counter:
+            return "does not start an integer counter of its own at a constant"
+        if not self._compares(self._condition):
+            return "does not compare its counter with a constant"
+        if not self._steps():
+            return "does not step its counter by a constant"
+        if any(_writes(node, self.counter) for node in _nodes(self._body)):
+            return "writes its counter in the body"
         return None
-    variable = declared[0]
-    integer = "float" not in variable["type"]["qualType"] and "double" not in variable["type"]["qualType"]
-    values = variable.get("inner", [])
-    return str(variable["id"]) if integer and len(values) == 1 and _is_constant(values[0]) else None
 
+    def _declared(self, start: Node) -> str:
+        """The one variable declared in the loop's head, an integer with a constant start."""
+        declared = [node for node in start.get("inner", []) if node.get("kind") == "VarDecl"]
+        if start.get("kind") != "DeclStmt" or len(declared) != 1:
+            return ""
+        kind, values = declared[0]["type"]["qualType"], declared[0].get("inner", [])
+        integer = "float" not in kind and "double" not in kind
+        return str(declared[0]["id"]) if integer and len(values) == 1 and self._is_constant(values[0]) else ""
 
-def _is_constant(node: Node) -> bool:
-    """An expression of literals, enumerators and sizes."""
-    if node.get("kind") in _CONSTANT_LEAVES:
-        return True
-    if node.get("kind") == "DeclRefExpr":
-        return bool(node["referencedDecl"]["kind"] == "EnumConstantDecl")
-    children = node.get("inner", [])
-    return bool(children) and all(map(_is_constant, children))
+    def _is_constant(self, node: Node) -> bool:
+        """An expression of literals, enumerators, sizes and counters around."""
+        if node.get("kind") in _CONSTANT_LEAVES:
+            return True
+        if node.get("kind") == "DeclRefExpr":
+            named = node["referencedDecl"]
+            return named["kind"] == "EnumConstantDecl" or named["id"] in self._around
+        children = node.get("inner", [])
+        return bool(children) and all(map(self._is_constant, children))
 
+    def _compares(self, condition: Node) -> bool:
+        if condition.get("kind") == "ParenExpr":
+            return self._compares(condition["inner"][0])
+        if condition.get("kind") != "BinaryOperator":
+            return False
+        left, right = condition["inner"]
+        if condition["opcode"] == "&&":
+            return self._compares(left) or self._compares(right)
+        pairs = ((left, right), (right, left)) if condition["opcode"] in _COMPARISONS else ()
+        return any(_is_variable(one, self.counter) and self._is_constant(other) for one, other in pairs)
 
-def _compares(condition: Node, counter: str) -> bool:
-    if condition.get("kind") != "BinaryOperator" or condition.get("opcode") not in _COMPARISONS:
+    def _steps(self) -> bool:
+        if self._step.get("kind") == "UnaryOperator":
+            return self._step["opcode"] in _STEPS and _is_variable(self._step["inner"][0], self.counter)
+        if self._step.get("kind") == "CompoundAssignOperator" and self._step["opcode"] in ("+=", "-="):
+            left, right = self._step["inner"]
+            return _is_variable(left, self.counter) and all(map(_is_literal, _leaves(right)))
         return False
-    left, right = condition["inner"]
-    return (_is_variable(left, counter) and _is_constant(right)) or (
-        _is_variable(right, counter) and _is_constant(left)
-    )
+
+
+def _is_literal(node: Node) -> bool:
+    return node.get("kind") in _CONSTANT_LEAVES
+
+
+def _leaves(node: Node) -> Iterator[Node]:
+    return (each for each in _nodes(node) if not each.get("inner"))
 
 
 def _is_variable(node: Node, counter: str) -> bool:
     if node.get("kind") in ("ImplicitCastExpr", "ParenExpr"):
         return _is_variable(node["inner"][0], counter)
-    return node.get("kind") == "DeclRefExpr" and node["referencedDecl"]["id"] == counter
-
-
-def _steps(step: Node, counter: str) -> bool:
-    if step.get("kind") == "UnaryOperator":
-        return step.get("opcode") in _STEPS and _is_variable(step["inner"][0], counter)
-    if step.get("kind") == "CompoundAssignOperator":
-        left, right = step["inner"]
-        return step.get("opcode") in ("+=", "-=") and _is_variable(left, counter) and _is_constant(right)
-    return False
+    return node.get("kind") == "DeclRefExpr" and bool(node["referencedDecl"]["id"] == counter)
 
 
 def _writes(node: Node, counter: str) -> bool:
