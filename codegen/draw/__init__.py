@@ -16,7 +16,7 @@ import numpy as np
 from codegen.draw.units import in_file_units, is_angle, number, unit_size
 from codegen.errors import CallError, Fault
 from codegen.link_product import Floats, quantity_value
-from codegen.model import Arm, Quantity
+from codegen.model import Arm, JointRow
 
 FORMATS = {".pdf": "pdf", ".png": "png", ".svg": "svg"}
 
@@ -63,15 +63,15 @@ def _format(out: Path) -> str:
 
 
 def resting_values(arm: Arm) -> list[float]:
-    """Zero for every joint, or the nearest value that its limits allow."""
-    return [_clamped(row.limits) for row in arm.joints]
+    """For a turning joint zero, or the nearest angle that its limits allow; for a slide the middle of its travel."""
+    return [_resting_value(row) for row in arm.joints]
 
 
-def _clamped(limits: tuple[Quantity, Quantity] | None) -> float:
-    if limits is None:
+def _resting_value(row: JointRow) -> float:
+    if row.limits is None:
         return 0.0
-    lower, upper = map(quantity_value, limits)
-    return min(max(0.0, lower), upper)
+    lower, upper = map(quantity_value, row.limits)
+    return min(max(0.0, lower), upper) if is_angle(row) else (lower + upper) / 2
 
 
 def _require_count(arm: Arm, count: int) -> None:

@@ -76,4 +76,4 @@ def _compose(
         return ()
     from codegen.draw.reach_panel import draw_reach
 
-    return draw_reach(figure.add_axes((0.752, 0.135, 0.236, 0.775)), arm, q, unit, positions)
+    return draw_reach(figure.add_axes((0.752, 0.28, 0.236, 0.63)), arm, q, unit, positions)

@@ -13,6 +13,7 @@ import numpy as np
 from matplotlib import patheffects
 from matplotlib.axes import Axes
 from matplotlib.patches import Polygon
+from matplotlib.patheffects import AbstractPathEffect
 
 from codegen.draw.labels import Box, Placed, Placer, Wanted
 from codegen.draw.scene import FrameMark, JointMark, Scene
@@ -21,7 +22,8 @@ from codegen.draw.views import View
 from codegen.link_product import Floats
 from codegen.model import JointKind
 
-LINK, JOINT_EDGE, AXIS_LINE, FRAME, TOOL = "#4d4d4d", "black", "#707070", "black", "#0072b2"
+LINK, JOINT_EDGE, AXIS_LINE, FRAME = "#4d4d4d", "black", "#707070", "black"
+TOOL, WORLD = "#0072b2", "#8a8a8a"
 _MARGIN = 0.16  # of the view, left free for labels
 _FONT = 8.5
 _FLAT = 0.25  # an arrow seen shorter than this share of its length points at the onlooker, and is left out
@@ -98,7 +100,7 @@ def _scale_bar(axes: Axes, unit: tuple[str, float]) -> None:
     tick = (top - bottom) * 0.012
     end = x + length * metres
     axes.plot([x, x, x, end, end, end], [y - tick, y + tick, y, y, y - tick, y + tick], color="black", linewidth=1.2)
-    axes.text(end + (right - left) * 0.015, y, f"{length:g} {name}", fontsize=8, va="center")
+    axes.text(end + (right - left) * 0.015, y, f"{length:g} {name}", fontsize=8, va="center", path_effects=_halo())
 
 
 def round_length(most: float) -> float:
@@ -191,7 +193,9 @@ class _Arrow:
 def _frame_arrows(axes: Axes, scene: Scene, view: View, every_frame: bool) -> list[_Arrow]:
     """x (full line) and z (dashed) of each frame, and y (dotted) of the tool's."""
     found: dict[tuple[float, ...], _Arrow] = {}
-    for frame in scene.frames if every_frame else scene.frames[-1:]:
+    for frame in scene.frames:
+        if not every_frame and frame.index != "tool":
+            continue
         tool = frame.index == "tool"
         for number, letter in ((0, "x"), (1, "y"), (2, "z")):
             if letter == "y" and not tool:
@@ -205,14 +209,14 @@ def _frame_arrows(axes: Axes, scene: Scene, view: View, every_frame: bool) -> li
             if key in found:
                 found[key] = _Arrow((*found[key].names, name), found[key].start, found[key].end, found[key].colour)
                 continue
-            colour = TOOL if tool else FRAME
+            colour = {"tool": TOOL, "world": WORLD}.get(frame.index, FRAME)
             found[key] = _Arrow((name,), _pixels(axes, start), _pixels(axes, start + step), colour)
             _arrow(axes, start, start + step, letter, colour)
     return list(found.values())
 
 
 def _axis_name(letter: str, frame: FrameMark) -> str:
-    index = r"\mathrm{t}" if frame.index == "tool" else frame.index
+    index = {"tool": r"\mathrm{t}", "world": r"\mathrm{w}"}.get(frame.index, frame.index)
     return f"${letter}_{{{index}}}$"
 
 
@@ -290,12 +294,16 @@ def _labels(axes: Axes, placer: Placer, wanted: Sequence[Wanted | tuple[_Arrow, 
         _write(axes, placer.place(label), arrow.colour)
 
 
+def _halo() -> list[AbstractPathEffect]:
+    """White around letters, where they stand on lines."""
+    return [patheffects.withStroke(linewidth=2.5, foreground="white")]
+
+
 def _write(axes: Axes, placed: Placed, colour: str) -> None:
     to_data = axes.transData.inverted()
     x, y = to_data.transform(placed.centre)
-    halo = [patheffects.withStroke(linewidth=2.5, foreground="white")]
     text = placed.wanted.text
-    axes.text(x, y, text, fontsize=_FONT, color=colour, ha="center", va="center", zorder=7, path_effects=halo)
+    axes.text(x, y, text, fontsize=_FONT, color=colour, ha="center", va="center", zorder=7, path_effects=_halo())
     if placed.needs_line:
         ends = to_data.transform([placed.wanted.anchor, placed.centre])
         axes.plot(ends[:, 0], ends[:, 1], color="#909090", linewidth=0.5, zorder=1.5)

@@ -6,6 +6,7 @@ from collections.abc import Callable, Sequence
 
 import numpy as np
 from matplotlib.axes import Axes
+from numpy.typing import NDArray
 
 from codegen.draw.picture import AXIS_LINE, LINK, TOOL
 from codegen.draw.scene import scene_of
@@ -17,7 +18,9 @@ from codegen.model import Arm
 Positions = Callable[[Floats], Floats]
 
 _REGION, _REGION_EDGE = "#dcdcdc", "black"
-_EVERYWHERE = 0.6  # of the region's cells: a set that covers more is a matter of posture, not of place
+_EVERYWHERE = 0.8  # of the region's blocks: a set that covers more is a matter of posture, not of place
+_BLOCK = 12  # cells along the side of a block
+_APART = 3  # cells: marks of one set are not drawn closer
 _MARKERS = (("x", "black"), (".", "#0072b2"), ("+", "#d55e00"), ("1", "black"))
 
 
@@ -33,10 +36,11 @@ def draw_reach(
     region = reached_region(section, forward, lower, upper, vectors, points)
     scale = 1 / unit[1]
     _fill(axes, region, scale)
-    everywhere = _mark_singular(axes, section, region, singular_sets(arm, lower, upper), forward, scale)
+    sets = singular_sets(arm, lower, upper)
+    everywhere = _mark_singular(axes, section, region, sets, forward, scale)
     _chain(axes, arm, q, section, scale)
     _finish(axes, section, region, unit)
-    axes.text(0, -0.075, _remarks(everywhere), transform=axes.transAxes, fontsize=7.5, va="top", color="#404040")
+    _explain(axes, _remarks(sets, everywhere))
     return notes
 
 
@@ -62,11 +66,10 @@ def _mark_singular(
     marked = 0
     for group in sets:
         coordinates = section.coordinates(forward(group.q))
-        rows, columns = region.cells(coordinates)
-        cells, first = np.unique(np.stack([rows // 2, columns // 2], axis=1), axis=0, return_index=True)
-        if 4 * len(cells) > _EVERYWHERE * region.filled.sum() or marked == len(_MARKERS):
+        if _is_everywhere(region, coordinates) or marked == len(_MARKERS):
             everywhere.append(group)
             continue
+        first = np.unique(_blocks(region, coordinates, _APART), axis=0, return_index=True)[1]
         marker, colour = _MARKERS[marked]
         marked += 1
         place = coordinates[first] * scale
@@ -77,12 +80,32 @@ def _mark_singular(
     return everywhere
 
 
+def _blocks(region: Region, coordinates: Floats, side: int) -> NDArray[np.int64]:
+    """Row and column of the block of cells that each point is in: (N, 2)."""
+    return np.asarray(np.stack(region.cells(coordinates), axis=1) // side)
+
+
+def _is_everywhere(region: Region, coordinates: Floats) -> bool:
+    filled = np.unique(np.argwhere(region.filled) // _BLOCK, axis=0)
+    return len(np.unique(_blocks(region, coordinates, _BLOCK), axis=0)) > _EVERYWHERE * len(filled)
+
+
+def _explain(axes: Axes, remarks: str) -> None:
+    """Legend and remarks under the axes."""
+    figure = axes.figure
+    handles, names = axes.get_legend_handles_labels()
+    figure.legend(handles, names, fontsize=7.5, loc="upper left", bbox_to_anchor=(0.745, 0.215), frameon=False)
+    figure.text(0.75, 0.025, remarks, fontsize=7.5, va="bottom", color="#404040")
+
+
 def _listed(joints: Sequence[int]) -> str:
     return ", ".join(map(str, joints))
 
 
-def _remarks(everywhere: Sequence[SingularSet]) -> str:
-    lines = ["Sampled within limits. Singular: the joints named can move while the tool rests."]
+def _remarks(sets: Sequence[SingularSet], everywhere: Sequence[SingularSet]) -> str:
+    if not sets:
+        return "Sampled within limits. No singular place was found."
+    lines = ["Sampled within limits. Singular: the joints named can move", "while what the task reads stays at rest."]
     if everywhere:
         named = "; ".join(_listed(group.joints) for group in everywhere)
         lines.append(f"Singular at no one place but by posture: joints {named}.")
@@ -99,11 +122,10 @@ def _chain(axes: Axes, arm: Arm, q: Floats, section: Section, scale: float) -> N
 
 
 def _finish(axes: Axes, section: Section, region: Region, unit: tuple[str, float]) -> None:
-    axes.set_aspect("equal", adjustable="datalim")
+    axes.set_aspect("equal", adjustable="box", anchor="N")
     axes.set_xlabel(f"{section.labels[0]} [{unit[0]}]", fontsize=8.5)
     axes.set_ylabel(f"{section.labels[1]} [{unit[0]}]", fontsize=8.5)
     axes.tick_params(labelsize=7.5)
     axes.grid(color="#c8c8c8", linewidth=0.4, zorder=0)
     axes.set_axisbelow(True)
     axes.set_title(f"Reach: {section.about}", loc="left", fontsize=10, fontweight="bold", pad=4)
-    axes.legend(fontsize=7.5, loc="upper right", framealpha=0.9)

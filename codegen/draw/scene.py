@@ -11,8 +11,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from codegen.link_product import Floats, frame_matrix, frames_along
-from codegen.model import Arm, Convention, JointKind
+from codegen.link_product import Floats, frames_along
+from codegen.model import Arm, Convention, Frame, JointKind
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,8 +79,14 @@ def scene_of(arm: Arm, q: Floats) -> Scene:
     mark = size / 14
     joints = _spread([_joint_mark(arm, poses, index, joint_segments[index]) for index in range(len(arm.joints))], mark)
     frames = [FrameMark(str(index), pose) for index, pose in enumerate(poses[:-1])]
-    frames.append(FrameMark("tool", poses[-1]))
+    frames += [FrameMark("tool", poses[-1]), *_world_frame(arm, poses[0], size)]
     return Scene(tuple(segments), joints, tuple(frames), size, mark)
+
+
+def _world_frame(arm: Arm, base: Floats, size: float) -> list[FrameMark]:
+    """The world frame, when frame 0 is another one and not so far away that the arm would be drawn tiny."""
+    near = float(np.linalg.norm(base[:3, 3])) < size
+    return [FrameMark("world", np.eye(4))] if near and arm.base != Frame() else []
 
 
 def _row_segments(arm: Arm, poses: Floats, index: int) -> tuple[Segment, Segment]:
@@ -118,8 +124,3 @@ def _spread(marks: list[JointMark], size: float) -> tuple[JointMark, ...]:
 
 def _apart(centre: Floats, other: JointMark, size: float) -> bool:
     return float(np.linalg.norm(centre - other.centre)) > 1.2 * size
-
-
-def world_frame(arm: Arm) -> FrameMark | None:
-    """The world frame, when frame 0 is another one."""
-    return FrameMark("world", np.eye(4)) if not np.allclose(frame_matrix(arm.base), np.eye(4)) else None

@@ -5,9 +5,10 @@ A first joint that turns leaves the distance from its axis and the height along 
 coordinates across it; so the region is that section, turned or moved by the first joint. An arm that moves in a plane
 is shown in its plane, with its first joint moving too.
 
-Cells are filled by joint vectors of the R sequence (Roberts, "The unreasonable effectiveness of quasirandom
-sequences", 2018), and then grown: joint vectors near those that reached the border are tried until the border stands
-still. Each filled cell was reached by some joint vector within limits.
+Cells are filled by joint vectors of the R sequence (Roberts, "The unreasonable effectiveness of quasirandom sequences",
+2018), and then grown: from the joint vectors that reached the border, steps outwards by the damped inverse of the
+Jacobian, and random steps, are tried until the border stands still. Each filled cell was reached by some joint vector
+within limits.
 """
 
 from __future__ import annotations
@@ -25,9 +26,11 @@ from codegen.model import Arm, JointKind, JointRow
 
 SAMPLES = 300_000
 CELLS = 180  # along the longer side
-_GROWTHS = 30
-_TRIES = 24  # joint vectors near each border cell's own, in each round
-_SPREADS = np.array([0.2, 0.05, 0.012])  # of a joint's range
+_GROWTHS = 60
+_SPREADS = np.array([0.2, 0.05, 0.05, 0.012, 0.012])  # random steps tried from each border cell, of a joint's range
+_STEPS = np.array([0.7, 2.0])  # steps outwards tried from each border cell, of a cell's width
+_OUTWARDS = np.array([[np.cos(angle), np.sin(angle)] for angle in np.arange(8) * np.pi / 4])
+_DAMPING = 0.05  # of a cell's width: beside it, how far a whole joint range should move the tool to be used
 _FLAT = 1e-6  # of the region's size: thinner than this it is no region but a line
 
 
@@ -101,14 +104,16 @@ def section_of(arm: Arm, points: Floats) -> Section:
     normal = _plane_normal(scene.joints, points)
     if normal is not None:
         right, up = _plane_directions(normal)
-        return Section("in the plane of motion", ("x", "y"), origin, np.array([right, up, normal]), polar=False)
+        labels = _direction_name(right), _direction_name(up)
+        return Section("in the plane of motion", labels, origin, np.array([right, up, normal]), polar=False)
     if first.kind is JointKind.REVOLUTE:
         right, other = across(first.axis)
         origin = first.centre + first.axis * float((origin - first.centre) @ first.axis)
         labels = "distance from axis 1", "along axis 1"
         return Section("section through axis 1", labels, origin, np.array([right, first.axis, other]), polar=True)
     right, up = _plane_directions(first.axis)
-    return Section("section square to slide 1", ("x", "y"), origin, np.array([right, up, first.axis]), polar=False)
+    labels = _direction_name(right), _direction_name(up)
+    return Section("section square to slide 1", labels, origin, np.array([right, up, first.axis]), polar=False)
 
 
 def _plane_normal(joints: tuple[JointMark, ...], points: Floats) -> Floats | None:
@@ -130,6 +135,14 @@ def _plane_directions(normal: Floats) -> tuple[Floats, Floats]:
     return np.cross(up, normal), up
 
 
+def _direction_name(direction: Floats) -> str:
+    """Which way a coordinate counts, from frame 0."""
+    axis = int(np.argmax(np.abs(direction)))
+    if abs(abs(direction[axis]) - 1) < 1e-9:
+        return f"along {'-' if direction[axis] < 0 else ''}{'xyz'[axis]} from frame 0"
+    return f"along ({', '.join(f'{part:.2g}' for part in direction.round(9) + 0.0)}) from frame 0"
+
+
 def r_sequence(count: int, dimensions: int) -> Floats:
     """The first points of the R sequence in the unit cube: (count, dimensions)."""
     root = 2.0
@@ -149,14 +162,55 @@ def reached_region(
     vectors = np.zeros((*region.filled.shape, q.shape[1]))
     _fill(region, vectors, coordinates, q)
     random = np.random.default_rng(5)
+    reach = _Reach(section, positions, lower, upper)
     for _ in range(_GROWTHS):
         border = vectors[_border(region.filled)]
-        spread = np.repeat(_SPREADS, _TRIES // len(_SPREADS))[None, :, None] * (upper - lower)
-        near = border[:, None, :] + spread * random.normal(size=(len(border), _TRIES, q.shape[1]))
-        tried = np.clip(near.reshape(-1, q.shape[1]), lower, upper)
-        if not _fill(region, vectors, section.coordinates(positions(tried)), tried):
+        tried = np.vstack([reach.outwards(border, right[1] - right[0]), reach.nearby(border, random)])
+        if not _fill(region, vectors, reach.coordinates(tried), tried):
             break
     return region
+
+
+@dataclass(frozen=True, slots=True)
+class _Reach:
+    """Steps from joint vectors (N, n) to others within limits."""
+
+    section: Section
+    positions: Callable[[Floats], Floats]
+    lower: Floats
+    upper: Floats
+
+    def coordinates(self, q: Floats) -> Floats:
+        return self.section.coordinates(self.positions(q))
+
+    def nearby(self, q: Floats, random: np.random.Generator) -> Floats:
+        spread = _SPREADS[None, :, None] * (self.upper - self.lower)
+        return self._within(q[:, None, :] + spread * random.normal(size=(len(q), len(_SPREADS), q.shape[1])))
+
+    def outwards(self, q: Floats, cell: float) -> Floats:
+        """Steps that should move the point by a cell or so in each direction of the section."""
+        ranges = self.upper - self.lower
+        rates = self._rates(q) * ranges  # of the coordinates, (N, 2, n), by joints measured in their ranges
+        square = rates @ rates.transpose(0, 2, 1) + (_DAMPING * cell) ** 2 * np.eye(2)
+        inverse = rates.transpose(0, 2, 1) @ np.linalg.inv(square)
+        steps = np.einsum("njk,dk->ndj", inverse, _OUTWARDS) * cell
+        steps = np.clip(steps[:, :, None, :] * _STEPS[:, None], -0.2, 0.2) * ranges
+        return self._within(q[:, None, None, :] + steps)
+
+    def _rates(self, q: Floats) -> Floats:
+        """By differences: `positions` may be a compiled program."""
+        here = self.coordinates(q)
+        rates = np.empty((len(q), 2, q.shape[1]))
+        for joint in range(q.shape[1]):
+            small = 1e-3 * (self.upper[joint] - self.lower[joint])
+            inward = np.where(q[:, joint] + small > self.upper[joint], -small, small)
+            moved = q.copy()
+            moved[:, joint] += inward
+            rates[:, :, joint] = (self.coordinates(moved) - here) / inward[:, None]
+        return rates
+
+    def _within(self, q: Floats) -> Floats:
+        return np.asarray(np.clip(q.reshape(-1, q.shape[-1]), self.lower, self.upper))
 
 
 def _edges(coordinates: Floats, polar: bool) -> tuple[Floats, Floats]:

@@ -56,9 +56,12 @@ def _sum(variable: str, arm: Arm, offset: Quantity) -> str:
 
 
 def _legend(arm: Arm) -> str:
-    frames = "distal frames (standard)" if arm.convention is Convention.STANDARD else "proximal frames (modified)"
+    standard = arm.convention is Convention.STANDARD
+    frames, order = (
+        ("distal frames (standard)", "d, then a") if standard else ("proximal frames (modified)", "a, then d")
+    )
     return (
         f"{frames}; cylinder: turning joint, hatched box: sliding joint; chain line: joint axis; "
         "dot or cross in a joint: its z axis points at or away from the reader;\n"
-        "arrows: x full, y dotted, z dashed; thick line: link, along d then a; broken thick line: base or tool"
+        f"arrows: x full, y dotted, z dashed; thick line: link, along {order}; broken thick line: base or tool"
     )
