@@ -98,7 +98,7 @@ def _compile(target: Target, folder: Path, source: str, optimise: str, libm: boo
     specs = [flag for flag in hosted if not flag.startswith("-l")]
     sections = ["-ffunction-sections", "-fdata-sections", "-fstack-usage", "-fno-math-errno"]
     position = ["-fPIC"] if target.emulator is Emulator.HOST else []
-    flags = [*target.flags, *specs, *STANDARD, optimise, *sections, *position, *WARNINGS]
+    flags = [*STANDARD, *target.flags, *specs, optimise, *sections, *position, *WARNINGS]
     return _run([f"{target.toolchain}gcc", *flags, "-c", source], folder, f"{target.title}: {source}")
 
 

@@ -52,8 +52,10 @@ def mix_calls(real: str, target: Target, count: int) -> list[Call]:
     return [Call("mix", (Input(struct.pack(f"<4{kind}", *row)), Output(6 * size))) for row in rows]
 
 
-@pytest.mark.parametrize("real", ["float", "double"])
-@pytest.mark.parametrize("target", SAME_BITS, **BY_NAME)
+BITS = [(target, real) for target in SAME_BITS for real in ("float", "double")] + [(AVR, "float")]
+
+
+@pytest.mark.parametrize(("target", "real"), BITS, ids=[f"{target.name}-{real}" for target, real in BITS])
 def test_arithmetic_has_the_same_bits_everywhere(target: Target, real: str) -> None:
     """IEEE 754-2008, 5.4.1: add, subtract, multiply and divide are correctly rounded, so no two processors differ."""
     need_target(HOST)
