@@ -1,9 +1,9 @@
 """What every agreement check works with: the reference, the compiled C, the error budgets, the count of results.
 
 Error budgets are those of the accuracy promise: a position within `share` of the reach and a rotation within `angle`,
-doubled at singular and boundary poses. Two things are added that no implementation can avoid: joint values of more
-than one turn are rounded more coarsely than those within it, and so are positions further from the world origin than
-the reach.
+doubled at singular and boundary poses. Two things are added that no implementation can avoid: joint values of more than
+one turn, and sums of them, are rounded more coarsely than those within it; and a tool further from the world origin
+than the reach is moved further by the same angle.
 """
 
 from __future__ import annotations
@@ -189,9 +189,10 @@ class Bench:
     def allowed(self, q: Array, position: Array, stretch: float = 1.0) -> tuple[Array, Array]:
         """Position (m) and angle (rad) errors allowed where joint values q [M, n] meet positions [M, 3]."""
         beyond_a_turn = np.maximum(0.0, np.abs(q) - 2 * np.pi)[:, self.reference.revolute].sum(axis=1)
-        coarse = self.budget.unit * beyond_a_turn
-        far = 4 * self.budget.unit * np.maximum(0.0, length(position) - self.reference.reach)
-        return (stretch * self.budget.share + coarse) * self.reference.reach + far, stretch * self.budget.angle + coarse
+        coarse = 2 * self.budget.unit * beyond_a_turn
+        far = np.maximum(0.0, length(position) - self.reference.reach)
+        angle = stretch * self.budget.angle + coarse
+        return (stretch * self.budget.share + coarse) * self.reference.reach + angle * far, angle
 
     def apart(self, first: Array, second: Array) -> Array:
         """How far joint vectors [..., n] are apart: the largest difference, turns not counted, metres in reaches."""

@@ -18,7 +18,9 @@ def check_at_limits(bench: Bench, rng: np.random.Generator, size: int) -> None:
     q = bench.reference.random_joints(rng, size)
     steps = 2 * bench.budget.unit * rng.integers(-_STEPS, _STEPS + 1, q.shape)
     ends = np.where(rng.random(q.shape) < 0.5, low + np.abs(low) * steps, high + np.abs(high) * steps)
-    q = bench.exact(np.where(rng.random(q.shape) < 0.5, ends, q))
+    chosen = rng.random(q.shape) < 0.5
+    chosen[:, bench.reference.held] = False
+    q = bench.exact(np.where(chosen, ends, q))
     batch = bench.batch(q, bench.random_joints(rng, size), "joints at their limits", 2.0)
     found, _ = inspect(bench, batch)
     if not bench.c.numeric:

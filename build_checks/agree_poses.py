@@ -15,11 +15,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from build_checks.reference import Array, Flags, Reference
+from build_checks.reference import Array, Flags, Poses, Reference
 from build_checks.reference_task import TaskReading, length
 
 _NEWTON_STEPS = 14
 _FOLLOWED = 0.15  # how far along the null direction a self-motion is followed, rad and reaches
+_OWN_ROUNDING = 4 * 2.0**-53  # of the reference, which matters beside C in double
 _EPSILON = 1e-5  # of the central difference
 
 
@@ -105,6 +106,22 @@ def _newton_step(reading: TaskReading, q: Array) -> Array:
     move[:, reading.reference.held] = 0.0
     moved: Array = q + move * units
     return moved
+
+
+def response(reading: TaskReading, q: Array, target: Poses) -> Array:
+    """[K] how far the joints of rank-deficient places q must move to meet targets that differ by rounding.
+
+    The larger of the motion that the other singular values call for and of the part that no first-order motion meets.
+    """
+    chain = reading.reference.chain(q)
+    misses = reading.misses(target, chain)
+    rows = np.concatenate((misses.linear / reading.reference.reach, misses.angular), axis=1)
+    left, values, _ = np.linalg.svd(reading.scaled(reading.jacobian(chain.tool, chain)), full_matrices=False)
+    parts = np.einsum("nij,ni->nj", left, rows)
+    moves = parts[:, :-1] / np.maximum(values[:, :-1], 1e-12)
+    own_rounding = _OWN_ROUNDING / np.maximum(values[:, -2], 1e-12)
+    larger: Array = np.maximum(length(moves), np.abs(parts[:, -1])) + own_rounding
+    return larger
 
 
 def _has_self_motion(reading: TaskReading, q: Array, null: Array) -> Flags:

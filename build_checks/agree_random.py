@@ -48,7 +48,10 @@ def check_forward(bench: Bench, q: Array) -> None:
     ordinary = ~(np.abs(q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi)
 
     def describe(index: int) -> Failure:
-        what = f"status {status[index]}, off by {position[index]:.3g} m and {angle[index]:.3g} rad"
+        what = (
+            f"status {status[index]}, off by {position[index]:.3g} m and {angle[index]:.3g} rad, "
+            f"allowed {position_budget[index]:.3g} m and {angle_budget[index]:.3g} rad"
+        )
         return Failure(what, _compared(q[index], packed[index], bench.c.pack(wanted)[index]))
 
     bench.tally.judge(

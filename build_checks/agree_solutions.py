@@ -24,6 +24,7 @@ from build_checks.reference import Array, Flags, Integers
 from build_checks.reference_task import length
 from build_checks.report import Check, Failure
 
+_ROUNDING = 10.0  # units of the number type, relative: how near a limit either answer is right
 _SINGULAR_WITHIN = 128.0  # units of the number type: how singular a place must be for SINGULAR to be said there
 
 
@@ -150,7 +151,7 @@ def turns(bench: Bench, q: Array, seeds: Array) -> tuple[Flags, Flags, Flags]:
     low, high = bench.reference.lower, bench.reference.upper
     own_size = np.where(bench.reference.revolute, 1.0, bench.reference.reach)
     sizes = (np.abs(q), np.abs(seeds), _finite_size(low), _finite_size(high), own_size)
-    margin = 4 * bench.budget.unit * np.maximum.reduce([np.broadcast_to(size, q.shape) for size in sizes])
+    margin = _ROUNDING * bench.budget.unit * np.maximum.reduce([np.broadcast_to(size, q.shape) for size in sizes])
     surely = _some_turn(bench, q, low + margin, high - margin)
     perhaps = _some_turn(bench, q, low - margin, high + margin)
     return surely, perhaps, _wrong_turns(bench, q, seeds, margin, (surely, perhaps))
