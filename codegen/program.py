@@ -254,6 +254,7 @@ def _flattened(terms: tuple[tuple[int, Node], ...]) -> list[tuple[int, Node]]:
             opened.append((-sign, node.args[0]))
         else:
             opened.append((sign, node))
+    opened = _opened_where_cancelling(opened)
     with_constants = sum(1 for _, n in opened if n.is_constant or _holds_constant(n))
     if with_constants < 2:
         return opened
@@ -261,6 +262,18 @@ def _flattened(terms: tuple[tuple[int, Node], ...]) -> list[tuple[int, Node]]:
     for sign, node in opened:
         if _holds_constant(node):
             flat.extend((sign * s, a) for s, a in zip(node.signs, node.args, strict=True))
+        else:
+            flat.append((sign, node))
+    return flat
+
+
+def _opened_where_cancelling(terms: list[tuple[int, Node]]) -> list[tuple[int, Node]]:
+    """Open an inner sum that holds a term which another term takes away again."""
+    flat: list[tuple[int, Node]] = []
+    for sign, node in terms:
+        inner = [(sign * s, a) for s, a in zip(node.signs, node.args, strict=False)]  # only a sum has signs
+        if any((-s, a) in terms for s, a in inner):
+            flat.extend(inner)
         else:
             flat.append((sign, node))
     return flat

@@ -116,7 +116,7 @@ class Scope:
             if all(re.fullmatch(r"[A-Za-z_][\w.]*", part) for part in parts):
                 return "_".join(part.replace(".", "_").lower() for part in parts)
         if node.op is Op.PRODUCT and node.args[0] is node.args[1] and node.args[0] in self.names:
-            return f"{self.names[node.args[0]]}_squared"
+            return re.sub(r"work->|pose[.]|\W", "", self.names[node.args[0]]) + "_squared"
         return self.builder.topics.get(node, "value")
 
     def value(self, node: Node) -> str:

@@ -121,6 +121,7 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
         "branch_of": branch_of,
         "check": check.kind,
         "reads": check.reads,
+        "reads_position": [entry for entry in check.reads if entry.startswith("p")],
         "plane_lines": check.lines,
     }
 

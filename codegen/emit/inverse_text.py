@@ -210,9 +210,17 @@ class InverseText:
     def reach_lines(self) -> list[str]:
         misses = self.reach_misses()
         scope = self.scope(len(self.stages), [node for _, node in misses], carried=False)
-        for measure, node in misses:
-            limit = "LEAST_MISS" if measure == "length" else "LEAST_TURN"
-            scope.put(f"near = near && ({self.options.prefix}_abs({scope.value(node)}) <= {limit});")
+        tests = []
+        for measure, limit in (("length", "LEAST_MISS"), ("angle", "LEAST_TURN")):
+            own = [node for kind, node in misses if kind == measure]
+            for k, node in enumerate(own):
+                text = scope.names.get(node) or scope.value(node)
+                scope.put(f"const {self.options.prefix}_real {measure}_{k + 1} = {text};")
+            if own:
+                squares = " + ".join(f"{measure}_{k + 1} * {measure}_{k + 1}" for k in range(len(own)))
+                scope.put(f"const bool {measure}_good = ({squares}) <= {limit} * {limit};")
+                tests.append(f"{measure}_good")
+        scope.put(f"return {' && '.join(tests)};")
         return scope.lines
 
 

@@ -6,12 +6,15 @@ from dataclasses import dataclass, field
 
 from codegen.chain import Chain, chain_of
 from codegen.emit.expression import Constants, Scope
-from codegen.forward import Carrier, Heading, jacobian_nodes, pose_nodes
+from codegen.exact import Angle
+from codegen.forward import Carrier, Heading, cumulative_pair, jacobian_nodes, pose_nodes
 from codegen.geometry import Pair, Space
 from codegen.model import Arm
 from codegen.names import joint_identifiers
 from codegen.options import Options
 from codegen.program import Builder, Node
+
+_LARGEST_SUM = 8.0  # rad: a float of this size is spaced by 2^-21
 
 
 @dataclass
@@ -21,13 +24,28 @@ class JointValues:
     builder: Builder
     chain: Chain
     labels: tuple[str, ...]
+    arm: Arm
     pairs: dict[Heading, Pair] = field(default_factory=dict)
 
     def pair(self, heading: Heading) -> Pair:
+        if len(heading) > 1 and not self.sums_well(heading):
+            return cumulative_pair(Space(self.builder), lambda index: self.pair(((index, 1),)), heading)
         if heading not in self.pairs:
             name = "_".join(self.labels[index] for index, _ in heading)
             self.pairs[heading] = Pair(self.builder.input(f"{name}.c"), self.builder.input(f"{name}.s"))
         return self.pairs[heading]
+
+    def sums_well(self, heading: Heading) -> bool:
+        """Whether the angles' sum stays small: beyond about a turn its rounding would show in the pose."""
+        total = 0.0
+        for index, _ in heading:
+            limits = self.arm.joints[index].limits
+            if limits is None:
+                return False
+            offset = self.chain.joints[index].offset
+            shift = float(offset.value)
+            total += max(abs(float(limit.value()) + shift) for limit in limits if isinstance(limit, Angle))
+        return total <= _LARGEST_SUM
 
     def variable(self, index: int) -> Node:
         """A joint's variable plus its offset."""
@@ -49,7 +67,7 @@ class MotionText:
     def __post_init__(self) -> None:
         self.builder = Builder()
         self.space = Space(self.builder)
-        self.values = JointValues(self.builder, chain_of(self.arm, self.builder), joint_identifiers(self.arm))
+        self.values = JointValues(self.builder, chain_of(self.arm, self.builder), joint_identifiers(self.arm), self.arm)
         self.carrier = Carrier(self.space, self.values.chain, self.values.pair, self.values.variable, self.values.labels)
 
     def forward(self) -> list[str]:

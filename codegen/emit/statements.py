@@ -9,6 +9,7 @@ from codegen.emit.numbers import literal
 from codegen.geometry import Pair
 from codegen.inverse.goal import Goal
 from codegen.inverse.plan import (
+    Absorption,
     BalanceStep,
     DirectionStep,
     Least,
@@ -37,7 +38,8 @@ def step_roots(step: Step) -> list[Node]:
     """The values that a step's statements read."""
     match step:
         case DirectionStep():
-            return [step.x, step.y]
+            own = [step.x, step.y]
+            return own if step.absorbed is None else [*own, step.absorbed.x, step.absorbed.y]
         case BalanceStep():
             return [*([step.size] if step.size else []), step.target, step.square, step.x, step.y]
         case SlideStep():
@@ -129,21 +131,35 @@ class Statements:
         else:
             self.put(f"if ({self.p}_unit({x}, {y}, {least}, &{name})) {{")
             self._settle_turn(step.joint, name, deeper=True)
-            self._keep_else(step.joint, step.seed, name)
+            self._keep_else(step.joint, step.seed, name, step.absorbed)
         self._store(name)
+        if step.absorbed is not None:
+            self._store(self._name(step.absorbed.pair))
 
     def _settle_turn(self, joint: int | None, name: str, deeper: bool = False) -> None:
         if joint is not None:
             angle = self._with_offset(f"{self.p}_atan2({name}.s, {name}.c)", self.goal.chain.joints[joint].offset, "-")
             self.put(("    " if deeper else "") + f"{self.p}_settle_turn(work, {joint}u, {angle});")
 
-    def _keep_else(self, joint: int | None, seed: SeedAngle, name: str) -> None:
+    def _keep_else(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
         self.put("} else {  /* the pose leaves it free: it keeps its seed */")
         self.put(f"    {name} = {self._seed_pair(seed)};")
         self.put("    work->marks |= MARK_FREE;")
         if joint is not None:
             self.put(f"    {self.p}_keep(work, {joint}u);")
+        if absorbed is not None:
+            self._absorb(absorbed)
         self.put("}")
+
+    def _absorb(self, absorbed: Absorption) -> None:
+        """Inside the branch of a joint that keeps its seed: the joint before it takes up the rest."""
+        outer = dict(self.scope.names), self.scope.indent
+        self.scope.indent += "    "
+        other = self._name(absorbed.pair)
+        x, y = self.scope.value(absorbed.x), self.scope.value(absorbed.y)
+        self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{other});  /* takes up the rest */")
+        self._settle_turn(absorbed.joint, other)
+        self.scope.names, self.scope.indent = outer
 
     def _store(self, name: str) -> None:
         """Rough values are polished in the same stage; nothing later reads them."""

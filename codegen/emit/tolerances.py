@@ -14,12 +14,13 @@ from codegen.exact import MP, Angle
 from codegen.model import Arm, JointKind
 from codegen.options import Options
 
-FREE, SLACK, STEP, MISS, TURN, EXCESS = 16, 4096, 8, 24, 48, 8
+FREE, FREE_TURN, SLACK, STEP, MISS, TURN, EXCESS = 16, 40, 4096, 8, 20, 40, 8
+FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
 def reach_of(arm: Arm) -> Fraction:
-    """Longest distance from the world's origin that the tool point could have, links end to end; m."""
-    total = sum((abs(x) for frame in (arm.base, arm.tool) for x in frame.xyz), Fraction(0))
+    """The links, the slides' travel and the tool end to end: a distance from the base that the tool never exceeds; m."""
+    total = sum((abs(x) for x in arm.tool.xyz), Fraction(0))
     for row in arm.joints:
         total += abs(row.a) + abs(row.d)
         if row.kind is JointKind.PRISMATIC and row.limits is not None:
@@ -37,17 +38,22 @@ def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
 
     return [
         row("REACH", reach, "m, all links end to end"),
+        row("FAR", FAR * (reach + _base_distance(arm)), "m, farther than any pose worth trying"),
         row("LEAST_LENGTH", FREE * u * reach, "m, a distance from an axis below which it is zero"),
-        row("LEAST_ANGLE", FREE * u, "the same for entries of unit vectors"),
+        row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
         row("LEAST_MISS", MISS * u * reach, "m, a clamped solution may miss the point by this"),
-        row("LEAST_TURN", TURN * u, "and an entry of the rotation by this"),
+        row("LEAST_TURN", TURN * u, "and the rotation by this, all entries' squares added up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
         row("TURNS_PER_RADIAN", 1 / (2 * MP.pi), "1 / (2 pi)"),
         row("FULL_TURN", high, "2 pi in two parts: this one is exact when multiplied"),
         row("FULL_TURN_REST", low, "and what is left of it"),
     ]
+
+
+def _base_distance(arm: Arm) -> Fraction:
+    return sum((abs(x) for x in arm.base.xyz), Fraction(0))
 
 
 def _full_turn(options: Options) -> tuple[object, object]:

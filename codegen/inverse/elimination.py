@@ -181,3 +181,15 @@ def solved_for_z(solver: Solver, equations: tuple[Equation, Equation], left: Nod
     if det.is_constant:
         return b.div(z_x, det), b.div(z_y, det)
     return b.mul(z_x, det), b.mul(z_y, det)
+
+
+def square_by_radius(solver: Solver, a: Vector, height: Node, goal: Vector) -> Node:
+    """A^2 + B^2 - C^2 of  a . R u = goal_z, where the two axes meet, so that |u| = |goal|; height is u_z.
+
+    With x the angle between the axes it is (sin(x) |goal_xy|)^2 - (u_z - cos(x) goal_z)^2. Near the first axis, where
+    A^2 + B^2 and C^2 are nearly equal, this form keeps its digits: both its terms are small there.
+    """
+    b = solver.builder
+    across = b.add(b.square(goal[0]), b.square(goal[1]))
+    sine_squared = b.add(b.square(a[0]), b.square(a[1]))
+    return b.sub(b.mul(sine_squared, across), b.square(b.sub(height, b.mul(a[2], goal[2]))))

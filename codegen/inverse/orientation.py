@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from codegen.geometry import Matrix, Vector
+from codegen.inverse.elimination import square_by_radius
 from codegen.inverse.plan import Least
 from codegen.inverse.segment import Segment, Use
 from codegen.inverse.solver import Balance, Solver
@@ -43,38 +44,29 @@ def solve_direction2(solver: Solver, problem: DirectionProblem, what: str) -> bo
     name = solver.label(first.joint.index)
     space.named(turned, f"{name}_from", f"{what}, before {name} turns it")
     solver.turn_onto(first, turned, way.v, Least.ANGLE_SQUARED, f"{what}: {name} turns it to its place")
+    _absorb_tilt(solver, way)
     return True
 
 
+def _absorb_tilt(solver: Solver, way: DirectionProblem) -> None:
+    """Where the first joint keeps its seed, the second takes up what it can of the direction: the pose stays exact."""
+    space, b = solver.space, solver.builder
+    first, second = way.segment.uses
+    back = space.times(space.transposed(solver.motion(first).rotation), way.v)
+    back = space.times(space.transposed(way.segment.cores[0].middle.rotation), back)
+    x = b.add(b.mul(way.n[0], back[0]), b.mul(way.n[1], back[1]))
+    y = b.sub(b.mul(way.n[0], back[1]), b.mul(way.n[1], back[0]))
+    solver.absorb(second, x, y)
+
+
 def _height_equation(solver: Solver, problem: DirectionProblem) -> Balance:
-    """z . K R n = v_z, with the product of its two factors in a form that stays good near the poles."""
+    """z . K R n = v_z."""
     b, n, v = solver.builder, problem.n, problem.v
     a = problem.segment.cores[0].middle.rotation[2]
     cosine_part = b.add(b.mul(a[0], n[0]), b.mul(a[1], n[1]))
     sine_part = b.sub(b.mul(a[1], n[0]), b.mul(a[0], n[1]))
     target = b.sub(v[2], b.mul(a[2], n[2]))
-    return Balance(cosine_part, sine_part, target, Least.ANGLE, _pole_square(solver, a, n, v))
-
-
-def _pole_square(solver: Solver, a: Vector, n: Vector, v: Vector) -> Node | None:
-    """(A^2 + B^2) - C^2 = (cos(x - y) - v_z)(v_z - cos(x + y)), x and y the tilts of a and n.
-
-    Where cos(x - y) is 1 the two outer axes can line up: 1 - v_z is then |v_xy|^2 / (1 + v_z), which keeps its digits.
-    """
-    b, oracle = solver.builder, solver.oracle
-    if not (a[2].is_constant and n[2].is_constant):
-        return None
-    meets_above = oracle.vanishes(b.sub(a[2], n[2]))
-    meets_below = oracle.vanishes(b.add(a[2], n[2]))
-    across = b.add(b.square(v[0]), b.square(v[1]))
-    if meets_above and meets_below:
-        return across
-    if not (meets_above or meets_below):
-        return None
-    height = v[2] if meets_above else b.neg(v[2])
-    near = b.choice(height, b.div(across, b.add(b.integer(1), b.size(height))), b.sub(b.integer(1), height))
-    doubled = b.sub(b.mul(b.integer(2), b.square(a[2])), b.integer(1))  # cos(2 x)
-    return b.mul(near, b.sub(height, doubled))
+    return Balance(cosine_part, sine_part, target, Least.ANGLE, square_by_radius(solver, a, n[2], v))
 
 
 def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what: str) -> bool:

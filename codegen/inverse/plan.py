@@ -27,6 +27,16 @@ class Least(Enum):
 
 
 @dataclass(frozen=True, slots=True)
+class Absorption:
+    """What a joint solved before takes up where the joint of this step keeps its seed: its pair along (x, y)."""
+
+    joint: int | None
+    pair: Pair
+    x: Node
+    y: Node
+
+
+@dataclass(frozen=True, slots=True)
 class DirectionStep:
     """The pair (c, s) along (x, y): one root, from two equations linear in the pair.
 
@@ -42,6 +52,7 @@ class DirectionStep:
     least: Least
     seed: SeedAngle
     note: str
+    absorbed: Absorption | None = None
     roots: int = 1
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from codegen.geometry import Pair, Vector
 from codegen.inverse.commuting import orders
@@ -13,6 +13,7 @@ from codegen.inverse.elimination import (
     point_equations,
     solve_outer,
     solved_for_z,
+    square_by_radius,
 )
 from codegen.inverse.plan import Least
 from codegen.inverse.polish import polish
@@ -142,7 +143,7 @@ class SecondJoint:
         note = f"{what}: {solver.label(use.joint.index)}"
         equation = self.equations[self.which]
         if self.kind == "balance":
-            solver.balance(use, _balance(solver, equation, self.u), note)
+            solver.balance(use, self._kept_balance(solver, equation), note)
         elif self.kind == "direction":
             _from_both(solver, use, self.equations, self.u, note)
         elif self.kind == "slide":
@@ -150,6 +151,15 @@ class SecondJoint:
             solver.slide(use, rest, equation.a[2], note)
         else:
             _slide_roots(solver, self.problem, self.u, note)
+
+
+    def _kept_balance(self, solver: Solver, equation: Equation) -> Balance:
+        """The equation; where the axes meet, with its discriminant in the form that is good near the first axis."""
+        balance = _balance(solver, equation, self.u)
+        _, p, core, first = _inner_data(solver, self.problem)
+        if first.turns and self.which == 0 and solver.oracle.vanishes(*core.middle.shift):
+            return replace(balance, square=square_by_radius(solver, equation.a, self.u[2], p))
+        return balance
 
 
 def _rhs(solver: Solver, equation: Equation) -> Node:

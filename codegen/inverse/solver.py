@@ -7,11 +7,12 @@ Control (1968).
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from codegen.geometry import Pair, Rigid, Space, Vector
 from codegen.inverse.oracle import Oracle
 from codegen.inverse.plan import (
+    Absorption,
     BalanceStep,
     DirectionStep,
     Least,
@@ -33,7 +34,7 @@ from codegen.program import Builder, Node
 class Balance:
     """The equation A c + B s = C of one turning joint, before it is solved.
 
-    square  (sqrt(A^2+B^2) - C)(sqrt(A^2+B^2) + C) where a better form of it is known
+    square  A^2 + B^2 - C^2 where a better form of it is known
     """
 
     cosine_part: Node
@@ -126,6 +127,15 @@ class Solver:
         self.pairs[use.joint.index] = pair
         return self.own_pair(use)
 
+    def absorb(self, use: Use, x: Node, y: Node) -> None:
+        """Where the joint just solved keeps its seed, `use`, solved before it, goes along (x, y) instead."""
+        step = self.steps[-1]
+        assert isinstance(step, DirectionStep)
+        if use.sign < 0:
+            y = self.builder.neg(y)
+        joint = use.joint.index if self.is_real(use) else None
+        self.steps[-1] = replace(step, absorbed=Absorption(joint, self.pairs[use.joint.index], x, y))
+
     def heading_angle(self, name: str, x: Node, y: Node, seed: SeedAngle, note: str) -> Pair:
         """The angle of a whole group of joints, by the same form."""
         pair = self.new_pair(name)
@@ -147,7 +157,9 @@ class Solver:
             square = b.mul(below, above) if equation.square is None else b.div(equation.square, b.square(scale))
         else:
             size = b.sqrt(b.add(b.square(a_part), b.square(b_part)))
-            square = b.mul(b.sub(size, target), b.add(size, target))
+            square = equation.square
+            if square is None:
+                square = b.mul(b.sub(size, target), b.add(size, target))
         name = self.label(use.joint.index)
         b.named(target, f"{name}_target", "what the pair of the joint must add up to" if size is None else "")
         b.named(square, f"{name}_square")
