@@ -43,14 +43,14 @@ def page_bytes(
         matplotlib.rcParams.update(_SETTINGS)
         figure = Figure(figsize=(17.0 if reach else 12.0, 8.6))
         FigureCanvasAgg(figure)
-        notes = _compose(figure, arm, q, reach, positions)
+        notes = compose(figure, arm, q, reach, positions)
         content = io.BytesIO()
         dots = _PNG_DOTS if picture_format == "png" else 100
         figure.savefig(content, format=picture_format, dpi=dots, metadata=_NO_DATE[picture_format])
     return content.getvalue(), notes
 
 
-def _compose(
+def compose(
     figure: Figure, arm: Arm, q: Floats, reach: bool, positions: Callable[[Floats], Floats] | None
 ) -> tuple[str, ...]:
     scene = scene_of(arm, q)

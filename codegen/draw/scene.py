@@ -73,7 +73,8 @@ def scene_of(arm: Arm, q: Floats) -> Scene:
     poses = frames_along(arm, q[None, :])[0]
     joint_segments = [_row_segments(arm, poses, index) for index in range(len(arm.joints))]
     segments = [Segment(np.zeros(3), poses[0][:3, 3], "base")]
-    segments += [segment for pair in joint_segments for segment in pair]
+    for along_z, along_x in joint_segments:  # in the order of the chain
+        segments += [along_z, along_x] if arm.convention is Convention.STANDARD else [along_x, along_z]
     segments.append(Segment(poses[-2][:3, 3], poses[-1][:3, 3], "tool"))
     size = _size(segments)
     mark = size / 14
@@ -90,7 +91,7 @@ def _world_frame(arm: Arm, base: Floats, size: float) -> list[FrameMark]:
 
 
 def _row_segments(arm: Arm, poses: Floats, index: int) -> tuple[Segment, Segment]:
-    """The lengths of a row: the one along the joint's axis and the one along x, in the order of its convention."""
+    """The lengths of a row: the one along the joint's axis and the one along x."""
     start, end = poses[index][:3, 3], poses[index + 1][:3, 3]
     if arm.convention is Convention.STANDARD:
         corner = end - float(arm.joints[index].a) * poses[index + 1][:3, 0]

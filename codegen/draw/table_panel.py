@@ -30,8 +30,11 @@ def draw_table(axes: Axes, arm: Arm, q: Floats) -> None:
 
 
 def _head(arm: Arm) -> list[str]:
-    return ["", "joint", "type", f"$a$ [{arm.length_unit}]", rf"$\alpha$ [{arm.angle_unit}]",
-            f"$d$ [{arm.length_unit}]", rf"$\theta$ [{arm.angle_unit}]", "drawn at", "limits"]  # fmt: skip
+    """With the index that each column's symbols have in the picture: a proximal row i holds a and alpha of i-1."""
+    before = "i" if arm.convention is Convention.STANDARD else "i-1"
+    a, alpha = f"$a_{{{before}}}$ [{arm.length_unit}]", rf"$\alpha_{{{before}}}$ [{arm.angle_unit}]"
+    d, theta = f"$d_i$ [{arm.length_unit}]", rf"$\theta_i$ [{arm.angle_unit}]"
+    return ["$i$", "joint", "type", a, alpha, d, theta, "drawn at", "limits"]
 
 
 def _cells(arm: Arm, index: int, row: JointRow, value: float) -> list[str]:
