@@ -111,7 +111,7 @@ def _beside(bench: Bench, rng: np.random.Generator, q: Array) -> None:
     batch = bench.batch(beside, _seeds(bench, rng, q), "beside a singular pose or the edge of the reach", _STRETCH)
     found, _ = inspect(bench, batch)
     if not bench.c.numeric:
-        check_known(bench, batch, found, unsolved_counts=False)
+        check_known(bench, batch, found)
         check_branch_of(bench, bench.exact(beside), batch, np.arange(len(q)))
 
 

@@ -21,6 +21,7 @@ from build_checks.reference_task import TaskReading, length
 _NEWTON_STEPS = 14
 _FOLLOWED = 0.15  # how far along the null direction a self-motion is followed, rad and reaches
 _OWN_ROUNDING = 4 * 2.0**-53  # of the reference, which matters beside C in double
+_TURNED = 1e-4  # 1 - cosine; a straight wrist's direction turns with the joint before it
 _EPSILON = 1e-5  # of the central difference
 
 
@@ -29,7 +30,7 @@ class Degenerate:
     """K joint vectors where the scaled task Jacobian has lost one rank.
 
     q       [K, n]
-    free    [K] True: some joint can move while the task stands still; False: a fold
+    free    [K] True: some joint can move while the task stands still; False: a fold, or both at once
     across  [K, 3 + m] unit direction of the scaled task in which no joint motion leads
     """
 
@@ -149,4 +150,14 @@ def _followed(reading: TaskReading, q: Array, null: Array) -> Flags:
     position, angle = reading.errors(target, reference.chain(at))
     moved = np.abs((at - q)[:, reference.free] / units).max(axis=1) > _FOLLOWED / 4
     on_target: Flags = (position / reference.reach + angle < 1e-10) & moved
-    return on_target
+    return on_target & _turned(reading, q, at)
+
+
+def _turned(reading: TaskReading, q: Array, at: Array) -> Flags:
+    """Whether the direction that no motion leads in turned on the way.
+
+    Where it stays, the place is at an edge too, and rounding of the pose moves the solution by its square root.
+    """
+    before, after = _decompose(reading, q)[0], _decompose(reading, at)[0]
+    turned: Flags = 1.0 - np.abs((before * after).sum(axis=1)) > _TURNED
+    return turned

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from build_checks.agree_bench import SOLVED, WITHIN_LIMITS, Batch, Bench, Flat, any_in_row, is_in
+from build_checks.agree_bench import SOLVED, WITHIN_LIMITS, Batch, Bench, Flat, is_in
 from build_checks.agree_solutions import named, turns
 from build_checks.compile import Branches
 from build_checks.reference import Array, Flags, Integers
@@ -37,12 +37,10 @@ def _distances(bench: Bench, found: Branches, wanted: Array) -> Array:
     return np.where(is_in(found.status, SOLVED), apart, np.inf)
 
 
-def check_known(bench: Bench, batch: Batch, found: Branches, *, unsolved_counts: bool = True) -> None:
-    """`unsolved_counts`: where rounding may explain a lost solution, a pose without any solution fails all the same."""
+def check_known(bench: Bench, batch: Batch, found: Branches) -> None:
+    """The joint values that each pose of the batch came from are among its solutions."""
     distance = _distances(bench, found, batch.origins).min(axis=1)
     same, undecided = bench.same(distance, batch.origins)
-    if unsolved_counts:
-        undecided &= any_in_row(is_in(found.status, SOLVED))
 
     def describe(index: int) -> Failure:
         what = f"the nearest solution is {distance[index]:.3g} away from the joint values that the pose came from"
@@ -142,7 +140,7 @@ def check_branch_of(bench: Bench, q: Array, batch: Batch, rows: Integers) -> Non
         more = {"joints_in": q[index], "joints_back": back[index]}
         return Failure(what, bench.details(batch, int(rows[index]), **more))
 
-    bench.tally.judge(Check.BRANCH_OF, ~same, describe, undecided=undecided & exists & solved)
+    bench.tally.judge(Check.BRANCH_OF, ~same, describe, undecided=undecided & exists)
 
 
 def _near_a_limit(bench: Bench, q: Array) -> Flags:
