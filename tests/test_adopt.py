@@ -6,6 +6,8 @@ chains are compared with scipy's rotations (scipy.spatial.transform.Rotation), m
 
 from __future__ import annotations
 
+from dataclasses import replace
+from fractions import Fraction
 from pathlib import Path
 
 import numpy as np
@@ -18,12 +20,15 @@ from scipy.spatial.transform import Rotation
 from build_checks.reference import Reference
 from codegen.adopt import Adoption, Wanted, adopt, adopt_file
 from codegen.adopt.snapping import read_number, snap_angle, snap_limit
+from codegen.adopt.table import link_table as link_table_of_the_tool
 from codegen.armfile import read_arm
 from codegen.armwriter import arm_file_text
-from codegen.errors import CallError
-from codegen.model import JointKind, Task
+from codegen.errors import CallError, CannotSolveError, CheckFailedError, Fault
+from codegen.exact import Angle
+from codegen.model import Arm, JointKind, Task
 
 Array = npt.NDArray[np.float64]
+TINY = Angle(radians=Fraction(1, 10**6))
 WALL_LIFT = Path(__file__).parent / "data" / "wall_lift.urdf"
 
 
@@ -151,6 +156,24 @@ def test_what_is_no_finite_number(text: str) -> None:
     assert read_number(text) is None
 
 
+def test_a_table_that_disagrees_is_never_given_out(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Each number of the table spoilt in turn by a micrometre or a microradian: the check against the description's own
+    transforms refuses it."""
+    good = link_table_of_the_tool
+    for row in range(5):
+        for key, off in (("a", Fraction(1, 10**6)), ("d", Fraction(1, 10**6)), ("alpha", TINY), ("theta", TINY)):
+
+            def spoilt(*arguments: object, row: int = row, key: str = key, off: object = off) -> object:
+                table = good(*arguments)
+                rows = list(table.rows)
+                rows[row] = replace(rows[row], **{key: getattr(rows[row], key) + off})
+                return replace(table, rows=tuple(rows), snaps=())
+
+            monkeypatch.setattr("codegen.adopt.link_table", spoilt)
+            with pytest.raises(CheckFailedError, match="nothing was written"):
+                adopt_file(WALL_LIFT, Wanted("plate"))
+
+
 # --- tasks ---
 
 
@@ -189,8 +212,12 @@ def test_the_derivation_may_choose_the_joint_to_hold() -> None:
     text = robot(*(joint(i, axis="0 1 0" if i % 2 else "0 0 1") for i in range(1, 8)))
     adoption = adopt(text.encode(), "made.urdf", Wanted("link7"), solvable=lambda arm: arm.held == ("joint5",))
     assert adoption.arm.held == ("joint5",)
-    adoption = adopt(text.encode(), "made.urdf", Wanted("link7"), solvable=lambda arm: False)
+    adoption = adopt(text.encode(), "made.urdf", Wanted("link7"), solvable=gives_up)
     assert adoption.arm.held == ("joint3",)
+
+
+def gives_up(arm: Arm) -> bool:
+    raise CannotSolveError(Fault(arm.name, "no closed form"))
 
 
 # --- errors ---

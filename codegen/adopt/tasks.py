@@ -6,7 +6,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import replace
 
 from codegen.adopt.rigid import NO_SHIFT, Motion, Vector, about_x, about_z, dot, motion_of, multiply
-from codegen.errors import CallError, Fault
+from codegen.errors import CallError, CannotSolveError, Fault
 from codegen.model import Arm, JointKind, JointRow, Task
 
 # Joints to try to hold, first choice first. The third is the usual one (it swivels the elbow); a joint of the elbow
@@ -52,7 +52,15 @@ def _hold_one(arm: Arm, solvable: Callable[[Arm], bool] | None) -> Arm:
     judge = solvable or _looks_solvable
     order = [index for index in HOLD_ORDER if index < len(arm.joints)]
     candidates = [replace(arm, held=(arm.joints[index].name,)) for index in order]
-    return next((candidate for candidate in candidates if judge(candidate)), candidates[0])
+    return next((candidate for candidate in candidates if _judged(judge, candidate)), candidates[0])
+
+
+def _judged(judge: Callable[[Arm], bool], candidate: Arm) -> bool:
+    """A derivation that gives up with a reason is a no."""
+    try:
+        return judge(candidate)
+    except CannotSolveError:
+        return False
 
 
 def _looks_solvable(arm: Arm) -> bool:
