@@ -123,7 +123,7 @@ def link_image(objects: Objects, roots: Iterable[str], name: str, *, libm: bool 
 def _layout(target: Target) -> tuple[str, ...]:
     """A shared library on this machine; elsewhere code, constants and data alone, nothing that starts them."""
     if target.emulator is Emulator.HOST:
-        return ("-shared",)
+        return ("-shared", "-nostartfiles")
     bare = ("-nostartfiles", "-Wl,--gc-sections,-e,0")
     return bare if target.emulator is Emulator.SIMAVR else (*bare, "-T", str(_LINKER_SCRIPT))
 

@@ -87,10 +87,15 @@ def _undefined(objects: Objects) -> Iterator[Finding]:
     for path, elf in _elf_files(objects):
         table = elf.get_section_by_name(".symtab")
         for symbol in table.iter_symbols():
-            if symbol.name and symbol["st_shndx"] == "SHN_UNDEF" and not is_arithmetic(symbol.name):
+            if symbol.name and symbol["st_shndx"] == "SHN_UNDEF" and not _is_expected(objects.target, symbol.name):
                 yield Finding(
                     _check(objects.target), path.name, 0, symbol.name, "is called or read but not defined here"
                 )
+
+
+def _is_expected(target: Target, symbol: str) -> bool:
+    """On AVR an object with constants names the start-up routine that copies them to memory; nothing calls it."""
+    return is_arithmetic(symbol) or (target.emulator is Emulator.SIMAVR and symbol == "__do_copy_data")
 
 
 def is_arithmetic(symbol: str) -> bool:
