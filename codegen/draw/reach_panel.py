@@ -116,7 +116,16 @@ def _chain(axes: Axes, arm: Arm, q: Floats, section: Section, scale: float) -> N
     """The chain as drawn in the views, seen from the side, and its tool point."""
     points = section.side_on(scene_of(arm, q).points) * scale
     axes.plot(points[2:, 0], points[2:, 1], color=LINK, linewidth=1.8, zorder=4, label="the arm as drawn")
-    axes.plot(points[-1:, 0], points[-1:, 1], color=TOOL, marker="D", markersize=5, linestyle="none", zorder=5)
+    axes.plot(
+        points[-1:, 0],
+        points[-1:, 1],
+        color=TOOL,
+        marker="D",
+        markersize=5,
+        linestyle="none",
+        zorder=5,
+        label="its tool point",
+    )
     if section.polar:
         axes.axvline(0, color=AXIS_LINE, linewidth=0.8, linestyle=(0, (9, 2, 1.5, 2)), zorder=1.5)
 
