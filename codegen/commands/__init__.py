@@ -1,0 +1,1 @@
+"""The commands, one small module each. A module imports what it needs only when its command runs."""

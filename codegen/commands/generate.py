@@ -1,0 +1,28 @@
+"""`linkwright generate`: from an arm file to the C."""
+
+from __future__ import annotations
+
+from codegen.commands.arguments import AngleError, ArmPath, Math, OutFolder, Prefix, Real, wanted
+from codegen.commands.console import say
+from codegen.writing import write_files
+
+
+def generate(
+    arm: ArmPath,
+    out: OutFolder,
+    real: Real = "float",
+    math: Math = "own",
+    prefix: Prefix = "arm",
+    angle_error: AngleError = 2,
+) -> None:
+    """Derive the kinematics of an arm and write them as C.
+
+    The files are PREFIX_kin.c and PREFIX_kin.h. Nothing is written where the arm has no solution.
+
+    \b
+    Example:
+      linkwright generate arms/vial_picker.toml --out firmware/src --real float
+    """
+    files = wanted(arm, real, math, prefix, angle_error).generated()
+    write_files(out, files)
+    say(f"wrote {', '.join(str(out / name) for name in sorted(files))}")
