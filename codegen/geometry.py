@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from codegen.program import Builder, Node
 
@@ -21,10 +21,16 @@ class Pair:
 
 @dataclass(frozen=True, slots=True)
 class Rigid:
-    """x -> rotation x + shift."""
+    """x -> rotation x + shift.
+
+    undone   the motion that this one was made to undo: undoing it again gives that motion back, not a longer formula
+    factors  the motions that it was composed of: each is undone by itself, for the same reason
+    """
 
     rotation: Matrix
     shift: Vector
+    undone: Rigid | None = field(default=None, compare=False)
+    factors: tuple[Rigid, ...] = field(default=(), compare=False)
 
 
 class Space:
@@ -106,15 +112,27 @@ class Space:
         return self.plus(self.times(g.rotation, v), g.shift)
 
     def compose(self, *motions: Rigid) -> Rigid:
-        total = motions[0]
-        for g in motions[1:]:
-            total = Rigid(self.product(total.rotation, g.rotation), self.moved(total, g.shift))
+        total = self.identity
+        for g in motions:
+            if total == self.identity or g == self.identity:
+                total = g if total == self.identity else total
+                continue
+            factors = (*(total.factors or (total,)), *(g.factors or (g,)))
+            shift = self.moved(total, g.shift)
+            total = Rigid(self.product(total.rotation, g.rotation), shift, factors=factors)
         return total
 
     def inverse(self, g: Rigid) -> Rigid:
+        if g.undone is not None:
+            return g.undone
+        if g.factors:
+            backward = self.compose(*(self.inverse(factor) for factor in reversed(g.factors)))
+            return Rigid(backward.rotation, backward.shift, undone=g)
         back = self.transposed(g.rotation)
-        t = self.times(back, g.shift)
-        return Rigid(back, (self.b.neg(t[0]), self.b.neg(t[1]), self.b.neg(t[2])))
+        return Rigid(back, self.negative(self.times(back, g.shift)), undone=g)
+
+    def negative(self, v: Vector) -> Vector:
+        return (self.b.neg(v[0]), self.b.neg(v[1]), self.b.neg(v[2]))
 
     def slide_z(self, k: Node) -> Rigid:
-        return Rigid(self.unit, self.along_z(k))
+        return self.identity if k.is_exactly(0) else Rigid(self.unit, self.along_z(k))

@@ -204,9 +204,10 @@ class Statements:
         self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
         self._settle_turn(step.joint, name)
         self.scope.indent = self.scope.indent[4:]
-        self.put(f"}} else if ({self.p}_abs({target}) > {least}) {{")
-        self.put("    work->marks |= MARK_OUT_OF_REACH;")
-        self.put("    return;")
+        if not step.target.is_exactly(0):
+            self.put(f"}} else if ({self.p}_abs({target}) > {least}) {{")
+            self.put("    work->marks |= MARK_OUT_OF_REACH;")
+            self.put("    return;")
         self._keep_else(step.joint, step.seed, name)
 
     def _root(self, name: str, square: str, slack: str) -> None:

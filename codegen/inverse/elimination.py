@@ -42,32 +42,34 @@ class Outer:
     kind: str
 
 
-def point_equations(solver: Solver, first: Use, core: Core, u: PolyVector, p: Vector, algebra: Algebra) -> list[Equation]:
+def point_equations(
+    solver: Solver, first: Use, core: Core, u_square: Poly, p: Vector, algebra: Algebra
+) -> list[Equation]:
     """What joint `first` cannot change in  first . core . J2 u = p.  `core.before` is already moved into p."""
     space, b = solver.space, solver.builder
     turn, shift = core.middle.rotation, core.middle.shift
-    back = space.transposed(turn)
+    back_shift = space.negative(space.inverse(core.middle).shift)  # the shift in the frame behind the core
     if not first.turns:
         return [
             Equation(turn[k], algebra.constant(b.sub(p[k], shift[k])), Least.LENGTH) for k in (0, 1)
         ]
     height = Equation(turn[2], algebra.constant(b.sub(p[2], shift[2])), Least.LENGTH)
-    u_square = algebra.add(*(algebra.mul(entry, entry) for entry in u))
-    known = b.sub(space.dot(p, p), space.dot(shift, shift))
+    shortest = min((shift, back_shift), key=lambda v: sum(node.serial for node in v))
+    known = b.sub(space.dot(p, p), space.dot(shortest, shortest))
     half = b.half(b.integer(1))
     rhs = algebra.scale(algebra.sub(algebra.constant(known), u_square), half)
-    return [height, Equation(space.times(back, shift), rhs, Least.AREA)]
+    return [height, Equation(back_shift, rhs, Least.AREA)]
 
 
 def plane_equations(
     solver: Solver, first: Use, core: Core, n: PolyVector, k: Poly, goal: tuple[Vector, Node], algebra: Algebra
 ) -> list[Equation]:
     """The same for a plane n . x = k that joint `first` takes to the goal plane; n is a unit vector."""
-    space, b = solver.space, solver.builder
-    turn, shift = core.middle.rotation, core.middle.shift
-    back = space.transposed(turn)
+    space = solver.space
+    turn = core.middle.rotation
+    back_shift = space.negative(space.inverse(core.middle).shift)
     tilt = Equation(turn[2], algebra.constant(goal[0][2]), Least.ANGLE)
-    distance = Equation(space.times(back, shift), algebra.sub(algebra.constant(goal[1]), k), Least.LENGTH)
+    distance = Equation(back_shift, algebra.sub(algebra.constant(goal[1]), k), Least.LENGTH)
     return [tilt, distance]
 
 

@@ -26,8 +26,13 @@ class Plane:
 
 
 def moved_plane(solver: Solver, motion: Rigid, plane: Plane) -> Plane:
-    normal = solver.space.times(motion.rotation, plane.normal)
-    return Plane(normal, solver.builder.add(plane.offset, solver.space.dot(normal, motion.shift)))
+    space = solver.space
+    normal = space.times(motion.rotation, plane.normal)
+    if motion.undone is None:
+        along = space.dot(normal, motion.shift)
+    else:  # the same product in the other frame, where the shift is known as it was given
+        along = space.dot(plane.normal, space.negative(motion.undone.shift))
+    return Plane(normal, solver.builder.add(plane.offset, along))
 
 
 def meeting(solver: Solver, core: Core) -> tuple[Node, Node] | None:

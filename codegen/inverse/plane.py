@@ -105,7 +105,11 @@ def _carried(solver: Solver, problem: PlaneProblem) -> tuple[PolyVector, Poly, P
     turned = algebra.moved_by_joint(problem.source.normal, use.sign)
     behind = b.add(problem.source.offset, b.mul(second.behind, problem.source.normal[2]))
     normal = algebra.times(second.middle.rotation, turned)
-    offset = algebra.add(algebra.constant(behind), algebra.dot(second.middle.shift, normal))
+    if second.middle.undone is None:
+        along_shift = algebra.dot(second.middle.shift, normal)
+    else:  # the same product in the other frame, where the shift is known as it was given
+        along_shift = algebra.dot(space.negative(second.middle.undone.shift), turned)
+    offset = algebra.add(algebra.constant(behind), along_shift)
     along = b.add(second.before, first.behind)
     offset = algebra.add(offset, algebra.scale(normal[2], along))
     goal = problem.goal

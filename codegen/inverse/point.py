@@ -17,7 +17,7 @@ from codegen.inverse.elimination import (
 )
 from codegen.inverse.plan import Least
 from codegen.inverse.polish import polish
-from codegen.inverse.polynomial import Algebra, PolyVector
+from codegen.inverse.polynomial import Algebra, Poly, PolyVector
 from codegen.inverse.segment import Core, Segment, Use
 from codegen.inverse.solver import Balance, Solver
 from codegen.program import Node
@@ -45,26 +45,45 @@ class Elimination:
     outer: Outer
 
 
-def carried(solver: Solver, segment: Segment, w: Vector) -> tuple[PolyVector, Algebra]:
-    """u of J1 K1 J2 u = p, as a polynomial in joint 3; the slides of K1 along axis 2 are in it."""
-    space = solver.space
+@dataclass(frozen=True, slots=True)
+class Carried:
+    """u of J1 K1 J2 u = p and |u|^2, as polynomials in joint 3; the slides of K1 along axis 2 are in them."""
+
+    u: PolyVector
+    square: Poly
+    algebra: Algebra
+
+
+def carried(solver: Solver, segment: Segment, w: Vector) -> Carried:
+    space, b = solver.space, solver.builder
     first, second = segment.cores
-    use = segment.uses[2]
-    algebra = Algebra(solver.builder, use.turns)
-    moved = algebra.plus(algebra.moved_by_joint(w, use.sign), space.along_z(second.behind))
-    u = algebra.plus(algebra.times(second.middle.rotation, moved), second.middle.shift)
-    along = solver.builder.add(second.before, first.behind)
-    return algebra.plus(u, space.along_z(along)), algebra
+    use, middle = segment.uses[2], segment.cores[1].middle
+    algebra = Algebra(b, use.turns)
+    x = algebra.plus(algebra.moved_by_joint(w, use.sign), space.along_z(second.behind))
+    along = b.add(second.before, first.behind)
+    shift = space.plus(middle.shift, space.along_z(along))
+    u = algebra.plus(algebra.times(middle.rotation, x), shift)
+    # |R x + t|^2 = |x|^2 + 2 x . R^T t + |t|^2, and a turn does not change |x|^2
+    back = space.negative(space.inverse(middle).shift)
+    back = space.plus(back, space.scaled(middle.rotation[2], along))
+    start = space.plus(w, space.along_z(second.behind))
+    x_square = algebra.constant(space.dot(start, start))
+    if not use.turns:
+        x_square = algebra.add(*(algebra.mul(entry, entry) for entry in x))
+    doubled = algebra.scale(algebra.dot(back, x), b.integer(2))
+    square = algebra.add(x_square, doubled, algebra.constant(space.dot(back, back)))
+    return Carried(u, square, algebra)
 
 
 def eliminations(solver: Solver, problem: PointProblem) -> list[Elimination]:
     """Every workable order, cheapest first."""
     ways = []
     for way in readings(solver, problem):
-        u, algebra = carried(solver, way.segment, way.w)
+        source = carried(solver, way.segment, way.w)
+        u, algebra = source.u, source.algebra
         first, core = way.segment.uses[0], way.segment.cores[0]
         p = solver.space.minus(way.p, solver.space.along_z(core.before))
-        equations = point_equations(solver, first, core, u, p, algebra)
+        equations = point_equations(solver, first, core, source.square, p, algebra)
         outer = outer_equation(solver, equations, u, algebra, way.segment.uses[1])
         if outer is not None:
             ways.append(Elimination(way, u, equations, outer))
@@ -179,8 +198,7 @@ def _second_joint(solver: Solver, problem: PointProblem) -> SecondJoint | None:
     u, p, core, first = _inner_data(solver, problem)
     inner = problem.segment.uses[1]
     algebra = Algebra(solver.builder, inner.turns)
-    constant = (algebra.constant(u[0]), algebra.constant(u[1]), algebra.constant(u[2]))
-    one, two = point_equations(solver, first, core, constant, p, algebra)
+    one, two = point_equations(solver, first, core, algebra.constant(solver.space.dot(u, u)), p, algebra)
     found = _turning_kind(solver, (one, two), u) if inner.turns else _sliding_kind(solver, (one, two))
     return None if found is None else SecondJoint(problem, u, (one, two), *found)
 
