@@ -7,6 +7,7 @@ once.
 from __future__ import annotations
 
 import ctypes
+from collections import Counter
 from ctypes import POINTER, byref, c_uint32, c_uint64, c_void_p, cast
 from dataclasses import dataclass
 from importlib import import_module
@@ -101,6 +102,11 @@ class UnicornMachine:
         if self._counter is None:
             self._counter = _Counter(self._engine, self.image)
 
+    @property
+    def cycles_by_function(self) -> Counter[str]:
+        """Cycles spent in each function itself, over all calls since counting began."""
+        return self._counter.by_function if self._counter else Counter()
+
     def call(self, function: str, arguments: tuple[int, ...]) -> tuple[int, int, int]:
         """Result register, instructions, cycles; the counts are 0 when nothing is counted."""
         for register, value in zip(self._registers.arguments, arguments, strict=False):
@@ -125,7 +131,10 @@ class UnicornMachine:
 
 
 class _Counter:
-    """Instructions and cycles from how often each basic block ran and was left by a jump."""
+    """Instructions and cycles from how often each basic block ran and was left by a jump.
+
+    by_function  cycles spent in each function itself, over all calls counted
+    """
 
     def __init__(self, engine: Any, image: Image) -> None:
         slots = image.code // 2 + 1
@@ -143,6 +152,7 @@ class _Counter:
         )
         self._instructions = {row.address: row for row in disassemble(image)}
         self._weights = image.target.weights
+        self.by_function: Counter[str] = Counter()
         self._costs: dict[int, tuple[int, int, int]] = {}
         _hook_blocks(engine, self._counts)
 
@@ -153,7 +163,9 @@ class _Counter:
             length, cost, taken = self._cost(slot)
             runs, jumps = int(self._runs[slot]), int(self._jumps[slot])
             instructions += runs * length
-            cycles += runs * cost + jumps * taken
+            spent = runs * cost + jumps * taken
+            cycles += spent
+            self.by_function[self._instructions[_FLASH + 2 * slot].function] += spent
         self._runs.fill(0)
         self._jumps.fill(0)
         self._counts.previous = self._counts.slots
