@@ -176,7 +176,7 @@ class Statements:
         for side in (step.x, step.y):
             self._ready_without(side, step.root)
         if step.size is None:
-            self._root(name, square, "SLACK")
+            self._root(name, square, "SLACK", self.zero if step.exact else "FLAT")
             x, y = self.scope.text(step.x), self.scope.text(step.y)
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
             self._settle_turn(step.joint, name)
@@ -199,7 +199,8 @@ class Statements:
         size, least = self.scope.value(step.size), LEASTS[step.least]
         self.put(f"if ({size} > {least}) {{")
         self.scope.indent += "    "
-        self._root(name, square, f"{size} * (SLACK * {size} + {least})")
+        flat = self.zero if step.exact else f"FLAT * {size} * {size}"
+        self._root(name, square, f"{size} * (SLACK * {size} + {least})", flat)
         x, y = self.scope.text(step.x), self.scope.text(step.y)
         self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
         self._settle_turn(step.joint, name)
@@ -210,8 +211,8 @@ class Statements:
             self.put("    return;")
         self._keep_else(step.joint, step.seed, name)
 
-    def _root(self, name: str, square: str, slack: str) -> None:
-        self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, second, &{name}_root)) {{")
+    def _root(self, name: str, square: str, slack: str, flat: str) -> None:
+        self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {flat}, second, &{name}_root)) {{")
         self.put("    return;  /* out of reach */")
         self.put("}")
 
@@ -256,7 +257,7 @@ class Statements:
         name, root = step.value.name, step.root.name
         square, middle = self.scope.value(step.square), self.scope.value(step.middle)
         self.put(f"{self.p}_real {root};")
-        self.put(f"if (!{self.p}_signed_root(work, {square}, SLACK * REACH * REACH, second, &{root})) {{")
+        self.put(f"if (!{self.p}_signed_root(work, {square}, SLACK * REACH * REACH, FLAT * REACH * REACH, second, &{root})) {{")
         self.put("    return;  /* out of reach */")
         self.put("}")
         value = root if step.middle.is_exactly(0) else f"{middle} + {root}"

@@ -15,6 +15,7 @@ from codegen.model import Arm, JointKind
 from codegen.options import Options
 
 FREE, FREE_TURN, SLACK, STEP, MISS, TURN, EXCESS = 16, 40, 4096, 8, 20, 40, 8
+FLAT = 8
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
@@ -42,6 +43,7 @@ def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
         row("LEAST_LENGTH", FREE * u * reach, "m, a distance from an axis below which it is zero"),
         row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
+        row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
         row("LEAST_MISS", MISS * u * reach, "m, a clamped solution may miss the point by this"),
         row("LEAST_TURN", TURN * u, "and the rotation by this, all entries' squares added up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),

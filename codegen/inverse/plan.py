@@ -64,6 +64,7 @@ class BalanceStep:
     square  size^2 - C^2 in a form that keeps its digits; root is its signed square root, made known by the step
     x, y    the direction of (c, s): (A C - B root, B C + A root)
     side    A s - B c
+    exact   the square keeps its digits down to zero, where the axes of two joints line up
     """
 
     joint: int | None
@@ -80,6 +81,7 @@ class BalanceStep:
     side: Node
     meaning: str
     note: str
+    exact: bool = False
     roots: int = 2
 
 

@@ -185,6 +185,7 @@ class Solver:
                 side=b.sub(b.mul(a_part, pair.sine), b.mul(b_part, pair.cosine)),
                 meaning=self._side_meaning(use, a_part, b_part),
                 note=note,
+                exact=equation.square is not None,
             )
         )
         self.pairs[use.joint.index] = pair
