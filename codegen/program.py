@@ -185,9 +185,17 @@ class Builder:
         return self._intern(key, op=Op.PRODUCT, args=args, stage=_stage(args))
 
     def _rescaled(self, left: Node, right: Node) -> Node | None:
-        """constant * (constant * x) as one constant times x."""
+        """constant * (constant * x) as one constant times x; constant * (x + constant) with the constants as one.
+
+        So constants meet and cancel with all their digits, before anything is rounded.
+        """
         if right.is_constant:
             left, right = right, left
+        if left.is_constant and _holds_constant(right):
+            terms = list(zip(right.signs, right.args, strict=True))
+            rest = self.signed_sum(*(term for term in terms if not term[1].is_constant))
+            offset = self.signed_sum(*(term for term in terms if term[1].is_constant))
+            return self.add(self.mul(left, rest), self.mul(left, offset))
         if left.is_constant and right.op is Op.PRODUCT and right not in self.names:
             for one, other in (right.args, right.args[::-1]):
                 if one.is_constant:
