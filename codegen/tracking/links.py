@@ -6,13 +6,21 @@ the modified rows cut the same alternation one place earlier.
 
 from __future__ import annotations
 
+from codegen.chain import Chain, ChainJoint
 from codegen.exact import MP, Angle, Real, real
-from codegen.model import Arm, Convention, Frame, JointRow
+from codegen.geometry import Rigid, Space
+from codegen.model import Arm, Convention, Frame
+from codegen.program import Builder, Node
 from codegen.tracking.conditioning import Matrix, balanced_links
 
 
 def links_of(arm: Arm) -> tuple[Matrix, ...]:
-    """K0..Kn (4x4, metres): base and tool frames included, cancelling offsets along near-parallel axes removed."""
+    """K0..Kn (4x4, metres), cancelling offsets along near-parallel axes removed."""
+    return balanced_links(raw_links(arm))
+
+
+def raw_links(arm: Arm) -> tuple[Matrix, ...]:
+    """K0..Kn (4x4, metres) as the table has them, base and tool frames included."""
     links = [frame_matrix(arm.base)]
     for row in arm.joints:
         along_x = _rotation(0, row.alpha) * _translation(real(row.a), 0, 0)
@@ -23,7 +31,7 @@ def links_of(arm: Arm) -> tuple[Matrix, ...]:
             links[-1] = links[-1] * along_x
             links.append(along_z)
     links[-1] = links[-1] * frame_matrix(arm.tool)
-    return balanced_links(links)
+    return tuple(links)
 
 
 def frame_matrix(frame: Frame) -> Matrix:
@@ -33,9 +41,30 @@ def frame_matrix(frame: Frame) -> Matrix:
     return _translation(x, y, z) * _rotation(2, yaw) * _rotation(1, pitch) * _rotation(0, roll)
 
 
-def row_lengths(row: JointRow) -> Real:
-    """How much one row of the table can add to the reach (m), its slide left out."""
-    return abs(real(row.a)) + abs(real(row.d))
+def small_chain(arm: Arm, builder: Builder) -> Chain | None:
+    """The chain with small constants, made in `builder`; None where the link table's own are small enough."""
+    raw = raw_links(arm)
+    links = balanced_links(raw)
+    if all(before is after for before, after in zip(raw, links, strict=True)):
+        return None
+    zero = Space(builder).zero
+    joints = tuple(ChainJoint(index, row.kind, row.name, zero, zero) for index, row in enumerate(arm.joints))
+    return Chain(joints, tuple(_core(builder, number, link) for number, link in enumerate(links)))
+
+
+def _core(builder: Builder, number: int, link: Matrix) -> Rigid:
+    """A link whose entries are constants named after their places."""
+
+    def entry(i: int, j: int) -> Node:
+        value = link[i, j]
+        if value in (0, 1, -1):
+            return builder.integer(int(value))
+        what = "shift" if j == 3 else "turn"
+        name = f"LINK{number}_{'XYZ'[i]}" if j == 3 else f"LINK{number}_{i}{j}"
+        return builder.constant(name, value, f"{what} between joints {number} and {number + 1}")
+
+    x, y, z = ((entry(i, 0), entry(i, 1), entry(i, 2)) for i in range(3))
+    return Rigid((x, y, z), (entry(0, 3), entry(1, 3), entry(2, 3)))
 
 
 def _translation(x: Real, y: Real, z: Real) -> Matrix:

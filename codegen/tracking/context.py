@@ -1,0 +1,183 @@
+"""The tracked inverse as text that is ready to place into `tracking.c.j2`, and what the header says of it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+
+from codegen.emit.numbers import literal
+from codegen.emit.tolerances import slowness
+from codegen.exact import MP, Real
+from codegen.model import Arm, Task
+from codegen.options import Options, RealType
+from codegen.tracking.batch import DAMPING, LARGEST_MOVE, NEAR, SEARCH_STEPS
+from codegen.tracking.shape import ArmShape
+from codegen.tracking.starts import TrackingTables
+
+ATTEMPTS = 4
+ASIDE = 0.2
+CLOSEST = 2.8  # the nearest second solution, in units of `solitude`, over the cases below: measured on nine arms
+CLOSEST_CASES = 16000
+_LOST = 10**15
+_SOLVED_UNITS = {RealType.FLOAT: 32, RealType.DOUBLE: 64}  # measured: residuals end at 12 units or fewer
+_LOOSE = {RealType.FLOAT: Fraction(1, 10**6), RealType.DOUBLE: Fraction(1, 10**12)}
+_SURELY_SAME = {RealType.FLOAT: Fraction(1, 10**4), RealType.DOUBLE: Fraction(1, 10**8)}
+_FINISHING = {RealType.FLOAT: 10, RealType.DOUBLE: 22}  # at a double root the residual shrinks fourfold a step
+
+_ROWS_TEXT = {
+    Task.POSE: "position and rotation",
+    Task.POINT_AXIS: "position and the tool's z axis",
+    Task.POINT_PITCH: "position and one angle",
+    Task.POINT_YAW: "position and one angle",
+    Task.POINT: "position",
+    Task.PLANE_POSE: "position in the plane and one angle",
+    Task.PLANE_POINT: "position in the plane",
+}
+_DIRECTION_ROWS = {Task.POSE: 3, Task.POINT_AXIS: 3, Task.POINT_PITCH: 1, Task.POINT_YAW: 1, Task.PLANE_POSE: 1}
+_ALL = tuple(f"r[{i}][{j}]" for i in range(3) for j in range(3))
+_READS = {
+    Task.POSE: _ALL,
+    Task.POINT_AXIS: ("r[0][2]", "r[1][2]", "r[2][2]"),
+    Task.POINT_PITCH: ("r[0][2]", "r[1][2]", "r[2][2]"),
+    Task.POINT_YAW: ("r[0][0]", "r[1][0]"),
+    Task.PLANE_POSE: _ALL,
+}
+
+
+@dataclass(frozen=True, slots=True)
+class TrackingContext:
+    """Every string and number that the templates of the tracked inverse place.
+
+    numbers      (name, literal, comment) of constants
+    positions    of the solved joints in q; used only where some joint is held
+    units        how far a joint goes for one unit of its unknown; used only where some joint slides
+    starts       the table, in `step_values`
+    bounded      the reach is known, so targets beyond it need no search
+    reads        entries of a pose that the task reads
+    branch_text  lines for the header
+    """
+
+    task: str
+    free_joints: int
+    rows: int
+    rows_text: str
+    attempts: int
+    search_steps: int
+    finishing_steps: int
+    held: bool
+    positions: tuple[int, ...]
+    slides: bool
+    turning_bits: str
+    turning_joints: str
+    units: tuple[str, ...]
+    numbers: tuple[tuple[str, str, str], ...]
+    starts: tuple[tuple[int, ...], ...]
+    step_values: tuple[str, ...]
+    last_turning: int | None
+    plane: bool
+    plane_rows: tuple[tuple[str, str, str], ...]
+    bounded: bool
+    closest: float
+    closest_cases: int
+    reads: tuple[str, ...]
+    branches: int
+    branch_text: tuple[str, ...]
+
+
+def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> TrackingContext:
+    shape, real = tables.shape, options.real
+    slides = not all(shape.turning[joint] for joint in shape.free)
+    plane = bool(shape.plane)
+    return TrackingContext(
+        task=arm.task.key,
+        free_joints=len(shape.free),
+        rows=(2 if plane else 3) + _DIRECTION_ROWS.get(arm.task, 0),
+        rows_text=_ROWS_TEXT[arm.task],
+        attempts=ATTEMPTS,
+        search_steps=SEARCH_STEPS,
+        finishing_steps=_FINISHING[real],
+        held=len(shape.free) < len(arm.joints),
+        positions=shape.free,
+        slides=slides,
+        turning_bits=f"0x{sum(shape.turning[joint] << j for j, joint in enumerate(shape.free)):X}",
+        turning_joints=f"0x{sum(turns << i for i, turns in enumerate(shape.turning)):X}",
+        units=tuple(literal(_unit(shape, joint), real) for joint in shape.free),
+        numbers=_numbers(arm, shape, real, bounded=not slides and not plane),
+        starts=tables.starts,
+        step_values=tuple(literal(Fraction(1, grid), real) for grid in tables.grid),
+        last_turning=shape.last_turning,
+        plane=plane,
+        plane_rows=tuple((literal(x, real), literal(y, real), literal(z, real)) for x, y, z in shape.plane),
+        bounded=not slides and not plane,
+        closest=CLOSEST,
+        closest_cases=CLOSEST_CASES,
+        reads=("p[0]", "p[1]", "p[2]", *_READS.get(arm.task, ())),
+        branches=tables.branches,
+        branch_text=branch_text(tables, options),
+    )
+
+
+def most_steps(tables: TrackingTables, options: Options) -> tuple[int, int]:
+    """Steps at the very worst: tracking from the seed, and the whole search, each start and the seed's attempts."""
+    each = SEARCH_STEPS + _FINISHING[options.real]
+    return ATTEMPTS * each, (ATTEMPTS + len(tables.starts)) * each
+
+
+def branch_text(tables: TrackingTables, options: Options) -> tuple[str, ...]:
+    """What the header says of this kind of inverse: what a branch number means, what is found, what it costs."""
+    prefix, upper = options.prefix, options.prefix.upper()
+    tracked, searched = most_steps(tables, options)
+    measured = tables.measured
+    share = f"{measured.found} of {measured.solutions} solutions of {measured.poses} random poses"
+    bound = (
+        f"{upper}_BRANCHES is a proven bound; {tables.most_found} is the most that one pose was seen to have."
+        if tables.proven
+        else f"One pose was seen to have {tables.most_found} solutions at most; {upper}_BRANCHES allows for two more."
+    )
+    return (
+        "Inverse: numeric, for this arm has no closed form. Damped Newton steps with the exact Jacobian.",
+        "  branch 0     the solution tracked from the seed",
+        f"  others       by travel from the seed: a number names a solution only within one call of {prefix}_inverse_all",
+        f"  found        {share}, against a dense search ({100 * measured.share:.2f} %)",
+        f"  steps        {prefix}_inverse on branch 0: a few from a near seed, {tracked} at the very worst",
+        f"               all else: {measured.mean_steps} on average, {searched} at the very worst",
+        f"  {bound}",
+    )
+
+
+def _unit(shape: ArmShape, joint: int) -> Real:
+    return MP.mpf(1) if shape.turning[joint] else shape.slide_unit
+
+
+def _number(value: object) -> Real:
+    return MP.mpf(value.numerator) / value.denominator if isinstance(value, Fraction) else value
+
+
+def _numbers(arm: Arm, shape: ArmShape, real: RealType, bounded: bool) -> tuple[tuple[str, str, str], ...]:
+    """(name, literal, comment)."""
+    u = real.rounding
+    solved = _SOLVED_UNITS[real] * _number(u) * (1 + shape.base_distance / shape.reach)
+    least = min(_number(slowness(arm, joint)) * _unit(shape, joint) for joint in shape.free)
+    rows: list[tuple[str, object, str]] = [
+        ("LENGTH_SCALE", shape.length_scale, "1/m, a residual length of half the reach counts as 1 rad"),
+        ("DAMPING", Fraction(str(DAMPING)), "of the squared residual"),
+        ("LEAST_DAMPING", u, "keeps steps at singular places within rounding"),
+        ("LARGEST_MOVE", Fraction(str(LARGEST_MOVE)), "of an unknown in one step"),
+        ("CAUGHT", Fraction(str(NEAR)), "a residual from which a start may finish"),
+        ("SOLVED", solved, "a residual that rounding alone can explain"),
+        ("LOST", _LOST, "a residual beyond all arms"),
+        ("LOOSE", _LOOSE[real], "squared length of a column that seems to depend on others"),
+        ("PROBE", 1, "how far a free joint must be free to move"),
+        ("ASIDE", Fraction(str(ASIDE)), "between attempts from the seed"),
+        ("SURELY_SAME", _SURELY_SAME[real], "two solutions as near as this are one"),
+        ("PERHAPS_SAME", Fraction(1, 20), "as near as this they may be"),
+        ("LEAST_SLOWNESS", least, "s, the least time that one unit of an unknown takes"),
+        ("HALF_TURN", MP.pi, "rad"),
+        ("WHOLE_TURN", 2 * MP.pi, "rad"),
+    ]
+    if bounded:
+        rows += [
+            ("LONGEST", shape.reach * (1 + MP.mpf(10) ** -5), "m, all links end to end"),
+            *((f"FRAME_0_{axis}", shape.links[0][k, 3], "m, where they begin") for k, axis in enumerate("XYZ")),
+        ]
+    return tuple((name, literal(value, real), comment) for name, value, comment in rows)

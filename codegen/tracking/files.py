@@ -1,0 +1,88 @@
+"""The two files of an arm whose inverse is tracked."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+from codegen import VERSION
+from codegen.elementary import maths_context
+from codegen.emit import files as emit
+from codegen.emit.expression import Constants
+from codegen.emit.motion_text import MotionText
+from codegen.emit.tolerances import tolerance_rows
+from codegen.forward import jacobian_nodes, pose_nodes
+from codegen.model import Arm, Task
+from codegen.options import Options
+from codegen.tracking.context import tracking_context
+from codegen.tracking.links import small_chain
+from codegen.tracking.starts import TrackingTables, prepare_starts
+
+_CHECKS = {Task.POSE: "rotation", Task.POINT_AXIS: "axis", Task.POINT_PITCH: "axis", Task.POINT_YAW: "heading"}
+
+
+class TrackedMotion(MotionText):
+    """Forward kinematics and the Jacobian of a chain whose constants are small."""
+
+    def __post_init__(self) -> None:
+        super().__post_init__()
+        chain = small_chain(self.arm, self.builder)
+        if chain is not None:
+            self.values.chain = chain
+            self.carrier = replace(self.carrier, chain=chain)
+
+    def core(self) -> list[str]:
+        """Pose and Jacobian in one function, so that each sine and cosine is taken once."""
+        pose = pose_nodes(self.carrier)
+        _, columns = jacobian_nodes(self.carrier)
+        targets = [(f"pose->p[{i}]", pose.position[i]) for i in range(3)]
+        targets += [(f"pose->r[{i}][{j}]", pose.rotation[i][j]) for i in range(3) for j in range(3)]
+        targets += [
+            (f"jac[{row + 3 * half}][{k}]", vector[row])
+            for k, column in enumerate(columns)
+            for half, vector in enumerate(column)
+            for row in range(3)
+        ]
+        return self._function(targets)
+
+
+def tracked_files(
+    arm: Arm, options: Options, source: emit.Source, tables: TrackingTables | None = None
+) -> dict[str, str]:
+    """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm without a closed form."""
+    context = _context(arm, tables or prepare_starts(arm), options, source)
+    p = options.prefix
+    return {
+        f"{p}_kin.h": emit._render("kin.h.j2", context),
+        f"{p}_kin.c": emit._pruned("tracking_kin.c.j2", context),
+    }
+
+
+def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.Source) -> dict[str, object]:
+    tracking = tracking_context(arm, tables, options)
+    constants = Constants(options)
+    forward = TrackedMotion(arm, options, constants).forward()
+    core = TrackedMotion(arm, options, constants).core()
+    return {
+        **emit._words(options),
+        "arm": {
+            "name": arm.name,
+            "task": arm.task.key,
+            "matches": arm.task.matches,
+            "held": arm.held,
+            "joints": [emit._joint_text(arm, k, options) for k in range(len(arm.joints))],
+            "branch_text": tracking.branch_text,
+        },
+        "command": emit._command(source, options),
+        "version": VERSION,
+        "numeric": True,
+        "branches": tracking.branches,
+        "maths": maths_context(options),
+        "constants": constants.declarations(),
+        "tolerances": tolerance_rows(arm, options),
+        "forward": forward,
+        "core": core,
+        "check": _CHECKS.get(arm.task, "none"),
+        "reads": tracking.reads,
+        "plane_lines": (),
+        "t": tracking,
+    }
