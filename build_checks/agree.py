@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import multiprocessing
 import os
+import zlib
 from collections.abc import Callable, Iterable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -16,13 +17,15 @@ from dataclasses import dataclass
 import numpy as np
 
 from build_checks.agree_atan2 import check_atan2
-from build_checks.agree_bench import BUDGETS, Bench
+from build_checks.agree_bench import Bench
+from build_checks.agree_budget import budget_of
 from build_checks.agree_edges import check_degenerate, check_right_angles, check_unreachable
 from build_checks.agree_huge import check_huge
 from build_checks.agree_inputs import check_inputs
 from build_checks.agree_limits import check_at_limits, check_beyond_limits
 from build_checks.agree_nearest import check_ties
-from build_checks.agree_random import check_far_turns, check_random
+from build_checks.agree_random import check_far_turns, check_motion, check_random
+from build_checks.agree_search import check_search
 from build_checks.compile import Kinematics, Library, compiled
 from build_checks.reference import Reference
 from build_checks.report import AgreeReport, Check, CheckResult, Failure, Run, join_all
@@ -31,6 +34,8 @@ from codegen.options import Options
 
 DEFAULT_SAMPLES = 100_000
 _PART = 4096  # samples of one unit
+_SEARCHED = 4  # poses searched in one unit
+_NUMERIC_SHARE = 32
 _WORTH_PROCESSES = 20_000  # samples; below, starting processes costs more than it saves
 Progress = Callable[[int, int], None]
 Work = Callable[[Bench, np.random.Generator, int], None]
@@ -38,11 +43,18 @@ Work = Callable[[Bench, np.random.Generator, int], None]
 
 @dataclass(frozen=True, slots=True)
 class Settings:
-    """samples: random joint vectors; seed: repeats the run; processes: None for one per processor;
-    shard: (i, n) runs the i-th of n parts of the work, i from 1."""
+    """How much to check.
+
+    samples    random joint vectors
+    seed       repeats the run
+    thorough   poses whose solutions are also searched for by brute force; 0: none
+    processes  None: one per processor
+    shard      (i, n) runs the i-th of n parts of the work, i from 1; `report_merge` joins their reports
+    """
 
     samples: int = DEFAULT_SAMPLES
     seed: int = 1
+    thorough: int = 0
     processes: int | None = None
     shard: tuple[int, int] = (1, 1)
 
@@ -67,7 +79,9 @@ _WORK: dict[str, Work] = {
     "beyond limits": check_beyond_limits,
     "far turns": check_far_turns,
     "ties": check_ties,
+    "motion": check_motion,
     "random": check_random,
+    "search": check_search,
 }
 _FULL_SIZES = {
     "inputs": 64,
@@ -83,12 +97,24 @@ _FULL_SIZES = {
 }
 
 
-def units(samples: int) -> list[Unit]:
-    """All the work of a run. Few samples also mean fewer cases of the other kinds, but never none."""
-    share = min(1.0, samples / 20_000)
+def units(settings: Settings, numeric: bool = False) -> list[Unit]:
+    """All the work of a run. Few samples also mean fewer cases of the other kinds, but never none.
+
+    A numeric inverse takes a thousand times as long as a closed form, so fewer of its poses are solved.
+    """
+    share = min(1.0, settings.samples / 20_000) / (_NUMERIC_SHARE if numeric else 1)
     special = [Unit(work, 0, max(32, round(share * size))) for work, size in _FULL_SIZES.items()]
-    starts = range(0, samples, _PART)
-    return special + [Unit("random", start // _PART, min(_PART, samples - start)) for start in starts]
+    solved = max(32, settings.samples // _NUMERIC_SHARE) if numeric else settings.samples
+    return [
+        *special,
+        *_split("motion", settings.samples, _PART),
+        *_split("random", solved, _PART // _NUMERIC_SHARE if numeric else _PART),
+        *_split("search", settings.thorough, _SEARCHED),
+    ]
+
+
+def _split(work: str, total: int, most: int) -> list[Unit]:
+    return [Unit(work, start // most, min(most, total - start)) for start in range(0, total, most)]
 
 
 def agree(
@@ -107,7 +133,8 @@ def agree(
         if interface.failed:
             results: tuple[CheckResult, ...] = (interface,)
         else:
-            results = join_all([interface, *_run(arm, library, settings, progress or _silent)])
+            work = _shard(units(settings, c.numeric), settings.shard)
+            results = join_all([interface, *_run(arm, library, settings, work, progress or _silent)])
         return AgreeReport(_describe(arm, options, settings, c), results)
 
 
@@ -126,7 +153,7 @@ def _interface(arm: Arm, c: Kinematics) -> CheckResult:
 
 
 def _describe(arm: Arm, options: Options, settings: Settings, c: Kinematics) -> Run:
-    budget = BUDGETS[options.real]
+    budget = budget_of(options, len(arm.joints))
     return Run(
         arm=arm.name,
         task=arm.task.key,
@@ -135,8 +162,10 @@ def _describe(arm: Arm, options: Options, settings: Settings, c: Kinematics) -> 
         prefix=options.prefix,
         joints=c.joints,
         branches=c.branches,
+        numeric=c.numeric,
         seed=settings.seed,
         samples=settings.samples,
+        thorough=settings.thorough,
         reach=Reference(arm).reach,
         position_budget=budget.share,
         angle_budget=budget.angle,
@@ -145,9 +174,12 @@ def _describe(arm: Arm, options: Options, settings: Settings, c: Kinematics) -> 
     )
 
 
-def _run(arm: Arm, library: Library, settings: Settings, progress: Progress) -> Iterator[CheckResult]:
-    part, parts = settings.shard
-    work = units(settings.samples)[part - 1 :: parts]
+def _shard(work: list[Unit], shard: tuple[int, int]) -> list[Unit]:
+    part, parts = shard
+    return work[part - 1 :: parts]
+
+
+def _run(arm: Arm, library: Library, settings: Settings, work: list[Unit], progress: Progress) -> Iterator[CheckResult]:
     progress(0, len(work))
     with _mapper(arm, library, settings) as mapped:
         for done, results in enumerate(mapped([(settings.seed, unit) for unit in work]), start=1):
@@ -161,14 +193,21 @@ Mapped = Callable[[list[tuple[int, Unit]]], Iterable[list[CheckResult]]]
 @contextmanager
 def _mapper(arm: Arm, library: Library, settings: Settings) -> Iterator[Mapped]:
     """Runs units in order, on as many processes as are worth starting."""
-    processes = settings.processes or len(os.sched_getaffinity(0))
-    if processes == 1 or settings.samples < _WORTH_PROCESSES:
+    processes = settings.processes or _processors()
+    if processes == 1 or (settings.samples < _WORTH_PROCESSES and not settings.thorough):
         _open_bench(arm, library)
         yield lambda work: map(_run_unit, work)
         return
     context = multiprocessing.get_context("spawn")
     with context.Pool(processes, initializer=_open_bench, initargs=(arm, library)) as pool:
         yield lambda work: pool.imap(_run_unit, work)
+
+
+def _processors() -> int:
+    """Those that this process may use, where the system tells."""
+    if hasattr(os, "sched_getaffinity"):
+        return len(os.sched_getaffinity(0))
+    return os.cpu_count() or 1
 
 
 _bench: list[Bench] = []  # one per process: the reference and the library are opened once
@@ -182,7 +221,7 @@ def _run_unit(job: tuple[int, Unit]) -> list[CheckResult]:
     """One unit, judged with a fresh tally."""
     seed, unit = job
     bench = _bench[0].fresh()
-    place = list(_WORK).index(unit.work)
+    place = zlib.crc32(unit.work.encode())
     rng = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(place, unit.index)))
     with np.errstate(all="ignore"):  # what comes out is judged, whatever the arithmetic met on the way
         _WORK[unit.work](bench, rng, unit.size)

@@ -12,8 +12,6 @@ from build_checks.compile import AnyArray
 from build_checks.reference import Array, Flags
 from build_checks.report import Check, Failure
 
-_ALLOWED = 4.0  # units of the number type, relative: two units in the last place at the most
-
 
 def check_atan2(bench: Bench, rng: np.random.Generator, size: int) -> None:
     """Random arguments, and all pairs of zeros, ones, infinities and NaN of both signs."""
@@ -29,9 +27,15 @@ def _random(bench: Bench, rng: np.random.Generator, size: int) -> None:
     y, x = (bench.c.rounded(column) for column in (magnitudes * rng.choice([-1.0, 1.0], (size, 2))).T)
     angles = bench.c.atan2(y, x).astype(np.float64)
     wanted = np.arctan2(y.astype(np.float64), x.astype(np.float64))
-    allowed = _ALLOWED * bench.budget.unit * np.abs(wanted) + float(np.finfo(bench.c.real).tiny)
+    allowed = bench.budget.ulps * _last_place(bench, wanted) + float(np.finfo(bench.c.real).smallest_subnormal)
     failed = ~((np.abs(angles - wanted) <= allowed) & (np.abs(angles) <= float(bench.c.real.type(math.pi))))
     _judge(bench, failed, (y, x), (angles, wanted))
+
+
+def _last_place(bench: Bench, values: Array) -> Array:
+    """The distance of neighbouring numbers of the number type at each value."""
+    spacing: Array = np.spacing(np.abs(values).astype(bench.c.real)).astype(np.float64)
+    return spacing
 
 
 def _special(bench: Bench) -> None:

@@ -1,9 +1,8 @@
 """What every agreement check works with: the reference, the compiled C, the error budgets, the count of results.
 
-Error budgets are those of the accuracy promise: a position within `share` of the reach and a rotation within `angle`,
-doubled at singular and boundary poses. Two things are added that no implementation can avoid: joint values of more than
-one turn, and sums of them, are rounded more coarsely than those within it; and a tool further from the world origin
-than the reach is moved further by the same angle.
+Two things are added to the promised accuracy (`agree_budget`) that no implementation can avoid: joint values of more
+than one turn, and sums of them, are rounded more coarsely than those within it; and a tool further from the world
+origin than the reach is moved further by the same angle.
 """
 
 from __future__ import annotations
@@ -16,35 +15,15 @@ from typing import Any
 
 import numpy as np
 
+from build_checks.agree_budget import budget_of
 from build_checks.compile import AnyArray, Branches, Kinematics, Library, Status
 from build_checks.reference import Array, Flags, Integers, Poses, Reference
 from build_checks.reference_task import TaskReading, length
 from build_checks.report import Check, CheckResult, Failure, Worst, join
 from codegen.model import Arm
-from codegen.options import RealType
 
 SOLVED = (Status.OK, Status.SINGULAR, Status.OVER_LIMIT)
 WITHIN_LIMITS = (Status.OK, Status.SINGULAR)
-
-
-@dataclass(frozen=True, slots=True)
-class Budget:
-    """Errors allowed: `share` of the reach, `angle` in radians; `unit` is half the last place of 1."""
-
-    share: float
-    angle: float
-    unit: float
-
-    @property
-    def task(self) -> float:
-        """Both together, metres counted in reaches."""
-        return self.share + self.angle
-
-
-BUDGETS = {
-    RealType.FLOAT: Budget(1e-6, 2e-6, 2.0**-24),
-    RealType.DOUBLE: Budget(1e-14, 2e-14, 2.0**-53),
-}
 
 
 def is_in(statuses: Integers, wanted: tuple[Status, ...]) -> Flags:
@@ -156,7 +135,7 @@ class Bench:
         self.reference = Reference(arm)
         self.reading = TaskReading(self.reference)
         self.c = Kinematics(library)
-        self.budget = BUDGETS[library.real]
+        self.budget = budget_of(library.options, self.reference.count)
         self.tally = Tally()
 
     def fresh(self) -> Bench:

@@ -17,7 +17,7 @@ _BESIDE = 1e-4  # of the way between the two seeds, to either side of the tie
 
 def check_ties(bench: Bench, rng: np.random.Generator, size: int) -> None:
     """Between two seeds that call for different branches lies a tie: the choice must turn right there."""
-    if bench.c.branches < 2 or bench.c.numeric:
+    if bench.c.branches < 2 or bench.c.numeric:  # whose branches are not the same at two seeds
         return
     q = bench.random_joints(rng, size)
     first, second = (bench.seeds_for(q, bench.random_joints(rng, size)) for _ in range(2))

@@ -15,12 +15,16 @@ from build_checks.report import Check, Failure
 FAR_TURNS = 5.0  # seeds and joint values of the far poses reach this many turns to either side
 
 
-def check_random(bench: Bench, rng: np.random.Generator, size: int) -> None:
-    """Joint vectors and seeds within the limits."""
+def check_motion(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """Forward kinematics and the Jacobian at joint vectors within the limits."""
     q = bench.random_joints(rng, size)
     check_forward(bench, q)
     check_jacobian(bench, q)
-    batch = bench.batch(q, bench.random_joints(rng, size), "random joint values")
+
+
+def check_random(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """The poses of joint vectors within the limits, from seeds within them."""
+    batch = bench.batch(bench.random_joints(rng, size), bench.random_joints(rng, size), "random joint values")
     found, flat = inspect(bench, batch)
     check_sets(bench, batch, found, flat)
 

@@ -25,7 +25,7 @@ from build_checks.reference_task import length
 from build_checks.report import Check, Failure
 
 _ROUNDING = 10.0  # units of the number type, relative: how near a limit either answer is right
-_SINGULAR_WITHIN = 128.0  # units of the number type: how singular a place must be for SINGULAR to be said there
+_SINGULAR_WITHIN = 4.0  # angle budgets: how singular a place must be for SINGULAR to be said there
 
 
 def inspect(bench: Bench, batch: Batch) -> tuple[Branches, Flat]:
@@ -188,7 +188,7 @@ def _singular_claims(bench: Bench, batch: Batch, found: Branches, flat: Flat) ->
     singular = bench.reading.smallest_singular(q)
     near = np.abs(q - seeds) <= 4 * bench.budget.unit * np.maximum(1.0, np.abs(seeds))
     kept = near[:, bench.reference.free].any(axis=1)
-    not_free = ~(singular <= _SINGULAR_WITHIN * bench.budget.unit)
+    not_free = ~(singular <= _SINGULAR_WITHIN * bench.budget.angle)
 
     def describe(index: int) -> Failure:
         said = f"smallest singular value of the task Jacobian is {singular[index]:.3g}, so no joint is free"
@@ -200,21 +200,29 @@ def _singular_claims(bench: Bench, batch: Batch, found: Branches, flat: Flat) ->
 
 def _one_by_one(bench: Bench, batch: Batch, found: Branches) -> None:
     """inverse gives branch by branch what inverse_all gave, and inverse_all counts what it gave."""
-    size = bench.c.branches
-    branches = np.tile(np.arange(size), len(batch))
-    q, status = bench.c.inverse(np.repeat(batch.packed, size, axis=0), branches, np.repeat(batch.seeds, size, axis=0))
-    equal = _equal_or_same(bench, q, found.q.reshape(-1, bench.c.joints), is_in(status, SOLVED))
-    differs = (status != found.status.ravel()) | ~equal
+    rows, branches = _asked_alone(bench, batch)
+    q, status = bench.c.inverse(batch.packed[rows], branches, batch.seeds[rows])
+    among_all, status_among_all = found.q[rows, branches], found.status[rows, branches]
+    differs = (status != status_among_all) | ~_equal_or_same(bench, q, among_all, is_in(status, SOLVED))
     miscounted: Flags = np.not_equal(found.solved, is_in(found.status, WITHIN_LIMITS).sum(axis=1))
 
     def describe(index: int) -> Failure:
-        row, branch = divmod(index, size)
-        both = f"{named(int(status[index]))} by itself, {named(int(found.status[row, branch]))} among all"
+        row, branch = int(rows[index]), int(branches[index])
+        both = f"{named(int(status[index]))} by itself, {named(int(status_among_all[index]))} among all"
         what = f"inverse_all counts {found.solved[row]}" if miscounted[row] else f"branch {branch} is {both}"
-        details = {"statuses": found.status[row], "joints_alone": q[index], "joints_among_all": found.q[row, branch]}
+        details = {"statuses": found.status[row], "joints_alone": q[index], "joints_among_all": among_all[index]}
         return Failure(what, bench.details(batch, row, branch=branch, **details))
 
-    bench.tally.judge(Check.ALL, differs | np.repeat(miscounted, size), describe)
+    bench.tally.judge(Check.ALL, differs | miscounted[rows], describe)
+
+
+def _asked_alone(bench: Bench, batch: Batch) -> tuple[Integers, Integers]:
+    """Every branch of every pose; of a numeric inverse, where each costs a whole search, two of each pose."""
+    rows = np.arange(len(batch))
+    if bench.c.numeric:
+        some = (rows + rows // bench.c.branches) % bench.c.branches
+        return np.tile(rows, 2), np.concatenate((np.zeros_like(rows), some))
+    return np.repeat(rows, bench.c.branches), np.tile(np.arange(bench.c.branches), len(batch))
 
 
 def _equal_or_same(bench: Bench, first: AnyArray, second: AnyArray, solved: Flags) -> Flags:

@@ -67,11 +67,10 @@ class NoCompilerError(LinkwrightError):
 
 @dataclass(frozen=True, slots=True)
 class Library:
-    """Where a compiled library lies and how its C is called: all that another process needs to open it."""
+    """Where a compiled library lies and how it was generated: all that another process needs to open it."""
 
     path: str
-    real: RealType
-    prefix: str
+    options: Options
 
 
 def find_compiler() -> str:
@@ -101,7 +100,7 @@ def compile_library(files: dict[str, str], options: Options, folder: Path, flags
     if done.returncode != 0:
         shown = "\n".join(done.stderr.splitlines()[:_SHOWN_LINES])
         raise CheckFailedError(Fault(f"{compiler}: {', '.join(sources)}", f"does not compile\n{shown}"))
-    return Library(str(folder / "checked.so"), options.real, options.prefix)
+    return Library(str(folder / "checked.so"), options)
 
 
 def _definitions(options: Options) -> list[str]:
@@ -129,8 +128,7 @@ class Kinematics:
     """The compiled functions, called over arrays. Joint values and poses go in rounded to the C's number type."""
 
     def __init__(self, library: Library) -> None:
-        self.real: np.dtype[Any] = np.dtype(np.float32 if library.real is RealType.FLOAT else np.float64)
-        self.prefix = library.prefix
+        self.real: np.dtype[Any] = np.dtype(np.float32 if library.options.real is RealType.FLOAT else np.float64)
         self._ffi: Any = cffi.FFI()
         self._ffi.cdef(_DECLARATIONS)
         self._library: Any = self._ffi.dlopen(library.path)

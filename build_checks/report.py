@@ -119,8 +119,10 @@ class Run:
     prefix: str
     joints: int
     branches: int
+    numeric: bool
     seed: int
     samples: int
+    thorough: int
     reach: float
     position_budget: float
     angle_budget: float

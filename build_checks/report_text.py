@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from build_checks.report import AgreeReport, CheckResult, Failure, Run, Worst
+from build_checks.report import AgreeReport, Check, CheckResult, Failure, Run, Worst
 
 _UNITS = {"m": 1.0, "mm": 1000.0}
 _TITLE_WIDTH = 66
@@ -42,6 +42,18 @@ def _table(results: tuple[CheckResult, ...]) -> str:
             lines.append(f"{result.check.value:<{_TITLE_WIDTH}} {counts}")
     if any(result.undecided for result in results):
         lines.append("undecided: so near a singularity or an edge that rounding of the pose explains either answer")
+    return "\n".join(lines)
+
+
+def _shares(report: AgreeReport) -> str:
+    """What a numeric inverse finds: it promises no completeness, so what it lacks is undecided above."""
+    if not report.run.numeric:
+        return ""
+    lines = ["The inverse is numeric: its branch numbers hold within one call."]
+    for check, what in ((Check.KNOWN, "known solutions"), (Check.SEARCH, "solutions that a search finds")):
+        result = report.result(check)
+        if total := result.cases + result.undecided:
+            lines.append(f"found {result.cases:,} of {total:,} {what}: {100 * result.cases / total:.2f} %")
     return "\n".join(lines)
 
 
@@ -93,7 +105,8 @@ def _shown(value: Any) -> str:
 
 def _verdict(report: AgreeReport) -> str:
     run = report.run
-    again = f"repeat with --samples {run.samples} --seed {run.seed}"
+    searched = f" --thorough {run.thorough}" if run.thorough else ""
+    again = f"repeat with --samples {run.samples} --seed {run.seed}{searched}"
     if report.agreed:
         return f"The C agrees with the link table; {again}."
     failed = [result for result in report.results if result.failed]
