@@ -99,7 +99,8 @@ def _compile(target: Target, folder: Path, source: str, optimise: str, libm: boo
     sections = ["-ffunction-sections", "-fdata-sections", "-fstack-usage", "-fno-math-errno"]
     position = ["-fPIC"] if target.emulator is Emulator.HOST else []
     flags = [*STANDARD, *target.flags, *specs, optimise, *sections, *position, *WARNINGS]
-    return _run([f"{target.toolchain}gcc", *flags, "-c", source], folder, f"{target.title}: {source}")
+    said = _run([f"{target.toolchain}gcc", *flags, "-c", source], folder, f"{target.title}: {source}")
+    return "".join(line for line in said.splitlines(keepends=True) if ": note: disable pass " not in line)
 
 
 def _frames(folder: Path) -> dict[str, int]:

@@ -117,11 +117,15 @@ RV32 = Target(
     libm=("--specs=picolibc.specs", "-lm", "-lc"),
     packages=("gcc-riscv64-unknown-elf", "picolibc-riscv64-unknown-elf"),
 )
+# avr-gcc 5.4 forgets in its postreload pass that a scratch register overwrites half of a pointer: where a structure is
+# longer than 63 bytes it may write to a wrong address, at -O2 and at -Os. Without that pass the code is right, and
+# hardly longer. (GCC 5.4 manual, "Debugging Options", for the switch.)
+_WITHOUT_WRONG_ADDRESSES = ("-fdisable-rtl-postreload",)
 AVR = Target(
     name="avr",
     title="AVR ATmega2560",
     toolchain="avr-",
-    flags=("-mmcu=atmega2560",),
+    flags=("-mmcu=atmega2560", *_WITHOUT_WRONG_ADDRESSES),
     emulator=Emulator.SIMAVR,
     core="atmega2560",
     hard_reals=(),
