@@ -5,39 +5,31 @@ from __future__ import annotations
 from codegen.ability import Lack, lack_of
 from codegen.emit.files import Source, closed_form_files
 from codegen.errors import CannotSolveError, Fault
-from codegen.inverse.tasks import Derivation, derive
+from codegen.inverse.tasks import derive
 from codegen.model import Arm
 from codegen.options import Options
 
 
 def generate(arm: Arm, options: Options, source: Source | None = None) -> dict[str, str]:
-    """{file name: text} of the generated C.
+    """{file name: text} of the generated C: in closed form where the arm has one, else tracked from a seed.
 
     Raises CannotSolveError where the arm cannot do its task.
     """
     place = source or Source(f"{arm.name}.toml")
-    return closed_form_files(arm, derivation_of(arm, place.name), options, place)
+    refuse_unable(arm, place.name)
+    derivation = derive(arm)
+    if derivation is not None:
+        return closed_form_files(arm, derivation, options, place)
+    from codegen.tracking.files import tracked_files  # brings numpy: only for arms that need it
+
+    return tracked_files(arm, options, place)
 
 
-def derivation_of(arm: Arm, where: str) -> Derivation:
-    """The closed form of an arm that can do its task.
-
-    Raises CannotSolveError with the motion that is missing, or where no closed form is known.
-    """
+def refuse_unable(arm: Arm, where: str) -> None:
+    """Raise CannotSolveError, with the motion that is missing, for an arm that cannot do its task."""
     lack = lack_of(arm)
     if lack is not None:
         raise CannotSolveError(lack_fault(arm, lack, where))
-    derivation = derive(arm)
-    if derivation is None:
-        raise CannotSolveError(
-            Fault(
-                where,
-                f'task "{arm.task.key}": no closed form: no three neighbouring axes that are not held meet in a point or '
-                "are parallel, and no other group of joints that simplifies the arm was found",
-                "a wrist whose three axes meet, or three parallel axes, would give one",
-            )
-        )
-    return derivation
 
 
 def lack_fault(arm: Arm, lack: Lack, where: str) -> Fault:

@@ -65,20 +65,20 @@ def closed_form_files(arm: Arm, derivation: Derivation, options: Options, source
     """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm whose inverse is in closed form."""
     context = _context(arm, derivation, options, source)
     p = options.prefix
-    return {f"{p}_kin.h": _render("kin.h.j2", context), f"{p}_kin.c": _pruned("kin.c.j2", context)}
+    return {f"{p}_kin.h": rendered("kin.h.j2", context), f"{p}_kin.c": pruned("kin.c.j2", context)}
 
 
-def _render(template: str, context: dict[str, object]) -> str:
+def rendered(template: str, context: dict[str, object]) -> str:
     text = environment().get_template(template).render(context)
     return re.sub(r"\n{3,}", "\n\n", text).rstrip("\n") + "\n"
 
 
-def _pruned(template: str, context: dict[str, object]) -> str:
+def pruned(template: str, context: dict[str, object]) -> str:
     """The file without the helpers that nothing in it calls; a helper may be needed by another only."""
     used, p = frozenset(_HELPERS), context["p"]
     rows: list[tuple[str, str, str]] = context["tolerances"]  # type: ignore[assignment]
     while True:
-        text = _render(template, {**context, "used": used, "uses": used | {"atan2"}, "tolerances": rows})
+        text = rendered(template, {**context, "used": used, "uses": used | {"atan2"}, "tolerances": rows})
         called = frozenset(name for name in used if len(re.findall(rf"\b{p}_{name}\(", text)) > 1)
         read = [row for row in rows if len(re.findall(rf"\b{row[0]}\b", text)) > 1]
         if called == used and read == rows:
@@ -95,9 +95,9 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
     branch_of = BranchText(derivation, options, constants).lines()
     jacobian = MotionText(arm, options, constants).jacobian()
     check = pose_check(derivation, options, constants)
-    joints = [_joint_text(arm, k, options) for k in range(len(arm.joints))]
+    joints = [joint_text(arm, k, options) for k in range(len(arm.joints))]
     return {
-        **_words(options),
+        **words(options),
         "arm": {
             "name": arm.name,
             "task": arm.task.key,
@@ -106,7 +106,7 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
             "joints": joints,
             "branch_text": _branch_text(stages, derivation.plan.branches),
         },
-        "command": _command(source, options),
+        "command": command_line(source, options),
         "version": VERSION,
         "numeric": False,
         "branches": derivation.plan.branches,
@@ -126,7 +126,7 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
     }
 
 
-def _words(options: Options) -> dict[str, object]:
+def words(options: Options) -> dict[str, object]:
     """Literals and names that every template may place."""
 
     def number(value: float) -> str:
@@ -165,7 +165,7 @@ def _stage_context(stage: StageText) -> dict[str, object]:
     }
 
 
-def _joint_text(arm: Arm, index: int, options: Options) -> JointText:
+def joint_text(arm: Arm, index: int, options: Options) -> JointText:
     row = arm.joints[index]
     motion = "turns, rad" if row.kind.value == "revolute" else "slides, m"
     lower, upper = limit_texts(arm, index, options)
@@ -191,7 +191,7 @@ def _branch_text(stages: list[StageText], branches: int) -> list[str]:
     return lines
 
 
-def _command(source: Source, options: Options) -> str:
+def command_line(source: Source, options: Options) -> str:
     name = re.sub(r"[^\w.+-]", "_", source.name, flags=re.ASCII)
     mathematics = options.mathematics.value
     text = f"linkwright generate {name} --real {options.real.c_name} --math {mathematics} --prefix {options.prefix}"

@@ -52,8 +52,8 @@ def tracked_files(
     context = _context(arm, tables or prepare_starts(arm), options, source)
     p = options.prefix
     return {
-        f"{p}_kin.h": emit._render("kin.h.j2", context),
-        f"{p}_kin.c": emit._pruned("tracking_kin.c.j2", context),
+        f"{p}_kin.h": emit.rendered("kin.h.j2", context),
+        f"{p}_kin.c": emit.pruned("tracking_kin.c.j2", context),
     }
 
 
@@ -63,16 +63,16 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
     forward = TrackedMotion(arm, options, constants).forward()
     core = TrackedMotion(arm, options, constants).core()
     return {
-        **emit._words(options),
+        **emit.words(options),
         "arm": {
             "name": arm.name,
             "task": arm.task.key,
             "matches": arm.task.matches,
             "held": arm.held,
-            "joints": [emit._joint_text(arm, k, options) for k in range(len(arm.joints))],
+            "joints": [emit.joint_text(arm, k, options) for k in range(len(arm.joints))],
             "branch_text": tracking.branch_text,
         },
-        "command": emit._command(source, options),
+        "command": emit.command_line(source, options),
         "version": VERSION,
         "numeric": True,
         "branches": tracking.branches,
