@@ -6,16 +6,16 @@ from collections.abc import Iterable, Sequence
 from dataclasses import asdict, dataclass
 from typing import Any
 
+from codegen.ability import lack_of
 from codegen.armfile import ArmFile
 from codegen.armfile_text import angle_number, length_number
 from codegen.doubts import doubts
-from codegen.errors import CannotSolveError, Fault
+from codegen.errors import Fault
 from codegen.exact import Angle
 from codegen.inverse.plan import Plan, RefineStep
 from codegen.inverse.tasks import derive
 from codegen.model import Arm, Convention, Frame, JointRow, Quantity
-from codegen.options import Options
-from codegen.pipeline import generate
+from codegen.pipeline import lack_fault
 
 _FRAMES = {Convention.STANDARD: "distal frames", Convention.MODIFIED: "proximal frames"}
 _COLUMNS = ("", "joint", "type", "a", "alpha", "d", "theta", "limits", "max_speed", "")
@@ -35,8 +35,8 @@ class Stage:
 class Inverse:
     """How the inverse is solved.
 
-    kind       in a word or two; empty where it cannot be solved
-    branches   None where the kind has none that hold from call to call
+    kind       in a few words; empty where it cannot be solved
+    branches   None where their numbers hold within one call only
     structure  what was found in the chain
     order      the steps of a closed form
     reasons    why it cannot be solved
@@ -75,24 +75,23 @@ class Overview:
 
 
 def overview(file: ArmFile) -> Overview:
-    return Overview(file, _inverse(file.arm), doubts(file.arm))
+    return Overview(file, _inverse(file.arm, file.path), doubts(file.arm))
 
 
 def faults_content(faults: Iterable[Fault]) -> list[dict[str, str]]:
     return [asdict(fault) for fault in faults]
 
 
-def _inverse(arm: Arm) -> Inverse:
-    """A closed form where there is one; else what the generator itself says."""
+def _inverse(arm: Arm, where: str) -> Inverse:
+    """As the generator decides, without generating: preparing starts for an arm without a closed form takes long."""
+    lack = lack_of(arm)
+    if lack is not None:
+        return Inverse(reasons=(lack_fault(arm, lack, where),))
     derivation = derive(arm)
-    if derivation is not None:
-        plan = derivation.plan
-        return Inverse("closed form", plan.branches, plan.structure, _order(plan))
-    try:
-        generate(arm, Options())
-    except CannotSolveError as error:
-        return Inverse(reasons=error.faults)
-    return Inverse("numeric")
+    if derivation is None:
+        return Inverse("no closed form: solutions are tracked in bounded steps")
+    plan = derivation.plan
+    return Inverse("closed form", plan.branches, plan.structure, _order(plan))
 
 
 def _order(plan: Plan) -> tuple[Stage, ...]:

@@ -14,7 +14,8 @@ from codegen.errors import CallError, Fault
 from codegen.writing import write_file
 
 if TYPE_CHECKING:
-    from build_checks.report_shards import Part, Shard
+    from build_checks.agree import Settings
+    from build_checks.report_merge import Part, Shard
 
 Inputs = Annotated[
     list[Path],
@@ -22,6 +23,10 @@ Inputs = Annotated[
 ]
 Samples = Annotated[int, typer.Option("--samples", metavar="N", min=1, help="Random joint vectors.")]
 Seed = Annotated[int, typer.Option("--seed", metavar="S", min=0, help="Repeats a run.")]
+Thorough = Annotated[
+    int,
+    typer.Option("--thorough", metavar="N", min=0, help="Poses whose solutions are also all searched by brute force."),
+]
 Report = Annotated[Path | None, typer.Option("--report", metavar="FILE.json", help="Also write every figure as JSON.")]
 JUnit = Annotated[Path | None, typer.Option("--junit", metavar="FILE.xml", help="Also write the checks as JUnit XML.")]
 WhichPart = Annotated[
@@ -34,6 +39,7 @@ def agree(
     arm: Inputs,
     samples: Samples = 100_000,
     seed: Seed = 1,
+    thorough: Thorough = 0,
     report: Report = None,
     junit: JUnit = None,
     shard: WhichPart = "1/1",
@@ -58,8 +64,10 @@ def agree(
     if merge:
         part = _merged(arm)
     else:
-        which = _shard(shard)
-        part = _run(wanted(_only(arm), real, math, prefix, angle_error), samples, seed, which)
+        from build_checks.agree import Settings
+
+        settings = Settings(samples, seed, thorough, shard=_shard(shard))
+        part = _run(wanted(_only(arm), real, math, prefix, angle_error), settings)
     _hand_out(part, as_json, report, junit)
     if not part.report.agreed:
         raise typer.Exit(1)
@@ -79,30 +87,29 @@ def _shard(text: str) -> Shard:
     return part, parts
 
 
-def _run(what: Wanted, samples: int, seed: int, shard: Shard) -> Part:
+def _run(what: Wanted, settings: Settings) -> Part:
     """Generates and checks; shows how far it is."""
-    from build_checks.agree import Settings
     from build_checks.agree import agree as check
-    from build_checks.report_shards import Part, digest_of
+    from build_checks.report_merge import Part, digest_of
 
     files = what.generated()
     progress = Progress("checking")
     try:
-        report = check(what.file.arm, files, what.options, Settings(samples, seed, shard=shard), progress)
+        report = check(what.file.arm, files, what.options, settings, progress)
     finally:
         progress.end()
-    return Part(what.file.path, report, shard, digest_of(files))
+    return Part(what.file.path, report, settings.shard, digest_of(files))
 
 
 def _merged(paths: list[Path]) -> Part:
-    from build_checks.report_shards import Part, joined
+    from build_checks.report_merge import Part, joined
 
     parts = [_read(path) for path in paths]
     return Part("", joined(parts), (1, 1), parts[0].digest)
 
 
 def _read(path: Path) -> Part:
-    from build_checks.report_shards import read_part
+    from build_checks.report_merge import read_part
 
     try:
         text = path.read_text(encoding="utf-8")
@@ -116,7 +123,7 @@ def _read(path: Path) -> Part:
 def _hand_out(part: Part, as_json: bool, report: Path | None, junit: Path | None) -> None:
     """To standard output first: a file that cannot be written then loses nothing."""
     from build_checks.report_junit import to_junit
-    from build_checks.report_shards import part_text
+    from build_checks.report_merge import part_text
     from build_checks.report_text import to_text
 
     text = part_text(part)

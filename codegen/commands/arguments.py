@@ -9,7 +9,6 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from codegen.armfile_names import did_you_mean, identifier_problem
 from codegen.commands.console import show_faults, working
 from codegen.errors import CallError, Fault
 from codegen.options import Mathematics, Options, RealType
@@ -85,12 +84,16 @@ def _real_fault(real: str) -> list[Fault]:
 def _choice_fault(option: str, word: str, accepted: tuple[str, ...]) -> list[Fault]:
     if word in accepted:
         return []
+    from codegen.armfile_names import did_you_mean
+
     hint = did_you_mean(word, accepted) or f"accepted are {', '.join(sorted(accepted))}"
     return [Fault(option, f'unknown word "{word}"', hint)]
 
 
 def _prefix_fault(prefix: str) -> list[Fault]:
     """At file scope, names that begin with _ belong to the compiler (ISO/IEC 9899:1999, 7.1.3)."""
+    from codegen.armfile_names import identifier_problem
+
     problem, hint = identifier_problem(prefix)
     if not problem and prefix.startswith("_"):
         problem, hint = "is reserved for the C compiler", f'write "{prefix.lstrip("_") or "arm"}", say'
