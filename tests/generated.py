@@ -10,7 +10,7 @@ from pathlib import Path
 
 import numpy as np
 
-from build_checks.compile import Kinematics, Status, compile_library
+from build_checks.compile import FLAGS, Kinematics, Status, compile_library
 from build_checks.reference import Array, Poses, Reference
 from build_checks.search import Solutions, all_solutions
 from codegen.model import Arm
@@ -18,13 +18,14 @@ from codegen.options import Mathematics, Options, RealType
 from codegen.pipeline import generate
 
 REACHED = (Status.OK, Status.SINGULAR, Status.OVER_LIMIT)
+QUICK = tuple("-O0" if flag == "-O2" else flag for flag in FLAGS)  # the same bits, sooner compiled
 SAME = 1e-6  # joint values (rad; m in reaches) nearer than this are one solution
 
 
 @contextmanager
 def compiled_arm(arm: Arm, options: Options) -> Iterator[Kinematics]:
     with tempfile.TemporaryDirectory(prefix="linkwright-") as folder:
-        yield Kinematics(compile_library(generate(arm, options), options, Path(folder)))
+        yield Kinematics(compile_library(generate(arm, options), options, Path(folder), QUICK))
 
 
 @cache
