@@ -79,6 +79,13 @@ def test_junit_holds_one_test_for_each_check_of_the_report(tmp_path: Path) -> No
     assert (suite.attrib["tests"], suite.attrib["failures"]) == (str(len(names)), "0")
 
 
+def test_a_thorough_run_searches_for_every_solution() -> None:
+    content = json.loads(call("agree", PLOTTER, "--samples", "50", "--thorough", "2", "--json").out)
+    assert content["run"]["thorough"] == 2
+    (search,) = (row for row in content["checks"] if row["check"] == "search")
+    assert search["cases"] > 0
+
+
 def test_a_report_that_cannot_be_written_loses_nothing(tmp_path: Path) -> None:
     done = call("agree", PLOTTER, *FEW, "--report", tmp_path / "no folder" / "report.json")
     assert done.status == 2
