@@ -12,7 +12,7 @@ import os
 import zlib
 from collections.abc import Callable, Iterable, Iterator
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -36,6 +36,8 @@ DEFAULT_SAMPLES = 100_000
 _PART = 4096  # samples of one unit
 _SEARCHED = 4  # poses searched in one unit
 _NUMERIC_SHARE = 32
+_FLOOR = 0.99  # share of solutions that a numeric inverse must find, counted over this many cases at least
+_FLOOR_CASES = 100
 _WORTH_PROCESSES = 20_000  # samples; below, starting processes costs more than it saves
 Progress = Callable[[int, int], None]
 Work = Callable[[Bench, np.random.Generator, int], None]
@@ -135,7 +137,16 @@ def agree(
         else:
             work = _shard(units(settings, c.numeric), settings.shard)
             results = join_all([interface, *_run(arm, library, settings, work, progress or _silent)])
-        return AgreeReport(_describe(arm, options, settings, c), results)
+        return AgreeReport(_describe(arm, options, settings, c), tuple(map(_floored, results)))
+
+
+def _floored(result: CheckResult) -> CheckResult:
+    """A numeric inverse may lack solutions, but not many."""
+    if result.cases < _FLOOR_CASES or result.lacking <= (1 - _FLOOR) * result.cases:
+        return result
+    found = result.cases - result.lacking
+    failure = Failure(f"finds {found} of {result.cases} solutions, fewer than {_FLOOR:.0%}", {})
+    return replace(result, failed=result.lacking, failure=failure)
 
 
 def _silent(done: int, total: int) -> None:

@@ -100,15 +100,20 @@ class Tally:
         describe: Callable[[int], Failure],
         *,
         undecided: Flags | None = None,
+        excused: bool = False,
         position: Worst | None = None,
         angle: Worst | None = None,
     ) -> None:
-        """`failed` has one flag per case; undecided cases count for themselves and never fail."""
+        """`failed` has one flag per case; undecided cases count for themselves and never fail.
+
+        `excused`: what failed is only counted as lacking, for a numeric inverse that promises most solutions, not all.
+        """
         open_cases = np.zeros_like(failed) if undecided is None else undecided
         bad = failed & ~open_cases
-        failure = describe(int(np.flatnonzero(bad)[0])) if bad.any() else None
-        judged = int(failed.size - open_cases.sum())
-        self.add(CheckResult(check, judged, int(bad.sum()), int(open_cases.sum()), position, angle, failure))
+        failure = describe(int(np.flatnonzero(bad)[0])) if bad.any() and not excused else None
+        judged, count = int(failed.size - open_cases.sum()), int(bad.sum())
+        wrong, lacking = (0, count) if excused else (count, 0)
+        self.add(CheckResult(check, judged, wrong, int(open_cases.sum()), position, angle, failure, lacking))
 
     @property
     def results(self) -> list[CheckResult]:

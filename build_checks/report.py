@@ -70,6 +70,7 @@ class CheckResult:
     undecided   not judged: rounding of the pose alone could account for the difference
     position    worst position error, m
     angle       worst angle error, rad
+    lacking     of the cases, solutions that a numeric inverse did not find; it promises most, not all
     """
 
     check: Check
@@ -79,6 +80,7 @@ class CheckResult:
     position: Worst | None = None
     angle: Worst | None = None
     failure: Failure | None = None
+    lacking: int = 0
 
 
 def _worse(first: Worst | None, second: Worst | None) -> Worst | None:
@@ -97,6 +99,7 @@ def join(first: CheckResult, second: CheckResult) -> CheckResult:
         _worse(first.position, second.position),
         _worse(first.angle, second.angle),
         first.failure or second.failure,
+        first.lacking + second.lacking,
     )
 
 

@@ -98,6 +98,7 @@ def _result(row: Mapping[str, Any]) -> CheckResult:
         _worst(row["position"]),
         _worst(row["angle"]),
         Failure(str(failure["what"]), dict(failure["details"])) if failure else None,
+        int(row["lacking"]),
     )
 
 

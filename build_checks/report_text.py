@@ -15,6 +15,7 @@ def to_text(report: AgreeReport) -> str:
     parts = [
         _heading(report.run),
         _table(report.results),
+        _shares(report),
         _worst_lines(report),
         _failure_lines(report),
         _verdict(report),
@@ -46,14 +47,15 @@ def _table(results: tuple[CheckResult, ...]) -> str:
 
 
 def _shares(report: AgreeReport) -> str:
-    """What a numeric inverse finds: it promises no completeness, so what it lacks is undecided above."""
+    """What a numeric inverse finds: it promises most solutions, not all."""
     if not report.run.numeric:
         return ""
     lines = ["The inverse is numeric: its branch numbers hold within one call."]
     for check, what in ((Check.KNOWN, "known solutions"), (Check.SEARCH, "solutions that a search finds")):
         result = report.result(check)
-        if total := result.cases + result.undecided:
-            lines.append(f"found {result.cases:,} of {total:,} {what}: {100 * result.cases / total:.2f} %")
+        if total := result.cases:
+            found = total - result.lacking
+            lines.append(f"found {found:,} of {total:,} {what}: {100 * found / total:.2f} %")
     return "\n".join(lines)
 
 

@@ -10,12 +10,13 @@ import pytest
 from hand_written import GANTRY, TURRET, HandWritten
 
 from build_checks.agree import Settings, agree, units
+from build_checks.agree_budget import budget_of
 from build_checks.compile import NoCompilerError
 from build_checks.report import Check
 from build_checks.report_text import to_text
 from codegen.errors import CheckFailedError
 from codegen.exact import Angle
-from codegen.options import RealType
+from codegen.options import Mathematics, Options, RealType
 
 SAMPLES = 2000
 FEW = Settings(samples=SAMPLES)
@@ -105,6 +106,43 @@ def test_planted_faults_are_seen(hand: HandWritten, good: str, bad: str, check: 
     assert report.result(check).failure is not None
     assert not report.agreed
     assert "does NOT agree" in to_text(report)
+
+
+def test_the_search_finds_what_a_missing_branch_lacks():
+    """With --thorough; a sound inverse lacks nothing."""
+    thorough = Settings(samples=100, thorough=2, processes=1)
+    right = agree(TURRET.arm, TURRET.files(), TURRET.options(), thorough)
+    assert right.result(Check.SEARCH).cases == 8
+    assert right.agreed, to_text(right)
+    fault = ("const double facing = branch >= 2 ? -1.0 : 1.0", "const double facing = 1.0")
+    assert agree(TURRET.arm, TURRET.files(fault=fault), TURRET.options(), thorough).result(Check.SEARCH).failed == 4
+
+
+def numeric(files: dict[str, str]) -> dict[str, str]:
+    """The same C with a header that says that its inverse is numeric."""
+    line = "#define TURRET_BRANCHES 4\n"
+    header = files["turret_kin.h"].replace(line, line + "#define TURRET_INVERSE_NUMERIC 1\n")
+    return {**files, "turret_kin.h": header}
+
+
+def test_of_a_numeric_inverse_the_share_found_is_reported():
+    """Few lost solutions are told, many fail."""
+    report = agree(TURRET.arm, numeric(TURRET.files()), TURRET.options(), FEW)
+    assert report.agreed, to_text(report)
+    assert report.run.numeric
+    assert "known solutions: " in to_text(report)
+    assert not report.result(Check.CLOSED).cases
+    fault = ("const double facing = branch >= 2 ? -1.0 : 1.0", "const double facing = 1.0")
+    half = agree(TURRET.arm, numeric(TURRET.files(fault=fault)), TURRET.options(), FEW)
+    assert half.result(Check.KNOWN).failed
+
+
+def test_a_looser_angle_error_widens_the_budgets_by_what_it_adds():
+    """Own functions of 256 units in the last place: six joints, five units each, beside the promise of 2e-6 rad."""
+    exact, loose = (budget_of(Options(angle_error=ulps), 6) for ulps in (2, 256))
+    assert (exact.share, exact.angle, exact.ulps) == (1e-6, 2e-6, 2)
+    assert loose.angle == pytest.approx(2e-6 + 6 * 5 * 254 * 2.0**-24)
+    assert budget_of(Options(mathematics=Mathematics.LIBM, angle_error=256), 6) == exact
 
 
 def test_a_wrong_table_is_seen():
