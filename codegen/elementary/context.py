@@ -1,92 +1,112 @@
-"""What the template of the elementary functions needs, as text that is ready to place.
-
-A number is printed with the digits that read back to the same bits, and its bits stand in a comment beside it.
-"""
+"""What the template of the elementary functions needs, as text that is ready to place."""
 
 from __future__ import annotations
 
-import struct
 from dataclasses import dataclass
 
 from mpmath import mp
 
-from codegen.elementary.coefficients import Row, row_for
+from codegen.elementary.printed import Polynomial, Printed, polynomial, printed
+from codegen.elementary.roots import RootInstruction, root_instructions
+from codegen.elementary.table import figures_for, row_for
+from codegen.elementary.words import Layout, layout_of
+from codegen.elementary.worst import WorstTexts, worst_texts
 from codegen.options import Mathematics, Options, RealType
 
-
-@dataclass(frozen=True, slots=True)
-class Coefficient:
-    """One printed number of the C: the literal, and its bits for the comment."""
-
-    text: str
-    bits: str
+_SPLITS = {RealType.FLOAT: (19,), RealType.DOUBLE: (36, 36)}  # bits of all but the last part of pi/2
 
 
 @dataclass(frozen=True, slots=True)
 class MathsContext:
     """Everything that `maths.c.j2` places.
 
-    own       False: the functions call libm
-    includes  the standard headers that the functions need; they go to the top of the file
+    own          False: the functions call libm
+    single       the type is float
+    suffix       of the libm functions' names; literal_suffix of the numbers
+    includes     the standard headers that the functions need; they go to the top of the file
+    quarter      pi/2 in parts: a part times any number of quarters met is exact, but for the last
+    turn         2 pi in parts, likewise
+    shift        adding it rounds to a whole number, which then stands in the low bits of the sum
+    near         bits of the largest angle that is reduced in one step, and that angle for the comment
     """
 
     own: bool
+    single: bool
     real: str
     suffix: str
-    libm_suffix: str
+    literal_suffix: str
     includes: tuple[str, ...]
-    word: str
-    exponent_mask: str
-    float_digits: str
-    digits: int
-    sine: tuple[Coefficient, ...]
-    cosine: tuple[Coefficient, ...]
-    arc: tuple[Coefficient, ...]
-    quarter: tuple[Coefficient, ...]
-    quarters_per_radian: Coefficient
-    pi: Coefficient
-    half_pi: Coefficient
-    largest_angle: str
+    layout: Layout
+    sine: Polynomial
+    cosine: Polynomial
+    arc: Polynomial
+    quarter: tuple[Printed, ...]
+    turn: tuple[Printed, ...]
+    quarters_per_radian: Printed
+    turns_per_radian: Printed
+    shift: Printed
+    near: Printed
+    quarter_pi: Printed
+    half_pi: Printed
+    pi: Printed
+    turn_unit: Printed
+    upscale: Printed
+    square_scale: Printed
+    square_scale_bits: int
+    libm_sqrt: str
+    roots: tuple[RootInstruction, ...]
+    worst: WorstTexts | None
 
 
 def maths_context(options: Options) -> MathsContext:
-    """The elementary functions for the options: coefficients from the stored table, nothing is fitted here."""
+    """The elementary functions for the options. Nothing is fitted here: coefficients come from the stored table.
+
+    Raises CallError for an angle error that no row meets.
+    """
     real, own = options.real, options.mathematics is Mathematics.OWN
     row = row_for(real, options.angle_error)
+    figures = figures_for(row) if own else None
+
+    def number(value: object) -> Printed:
+        return printed(float(mp.mpf(value)), real)
+
     single = real is RealType.FLOAT
-
-    def each(values: tuple[float, ...]) -> tuple[Coefficient, ...]:
-        return tuple(coefficient(value, real) for value in values)
-
     return MathsContext(
         own=own,
+        single=single,
         real=real.c_name,
-        suffix=real.suffix,
-        libm_suffix=real.libm_suffix,
-        includes=("<float.h>", "<stdint.h>") if own else ("<float.h>", "<math.h>", "<stdint.h>"),
-        word="uint32_t" if single else "uint64_t",
-        exponent_mask="0x7F800000u" if single else "0x7FF0000000000000u",
-        float_digits="FLT_MANT_DIG" if single else "DBL_MANT_DIG",
-        digits=real.bits,
-        sine=each(row.sine),
-        cosine=each(row.cosine),
-        arc=each(row.arc),
-        quarter=each(row.quarter),
-        quarters_per_radian=coefficient(float(2 / mp.pi), real),
-        pi=coefficient(float(mp.pi), real),
-        half_pi=coefficient(float(mp.pi / 2), real),
-        largest_angle="62832.0" + real.suffix,
+        suffix=real.libm_suffix,
+        literal_suffix=real.suffix,
+        includes=("<float.h>", "<stdint.h>") if own else ("<math.h>", "<stdint.h>"),
+        layout=layout_of(real),
+        sine=polynomial("s", row.sine, real),
+        cosine=polynomial("c", row.cosine, real),
+        arc=polynomial("a", row.arc, real),
+        quarter=tuple(map(number, _parts_of_quarter(real))),
+        turn=tuple(number(4 * part) for part in _parts_of_quarter(real)),
+        quarters_per_radian=number(2 / mp.pi),
+        turns_per_radian=number(1 / (2 * mp.pi)),
+        shift=number(3 * 2 ** (real.bits - 2)),
+        near=number(32 if single else 65536),
+        quarter_pi=number(mp.pi / 4),
+        half_pi=number(mp.pi / 2),
+        pi=number(mp.pi),
+        turn_unit=number(mp.mpf(2) ** -30),
+        upscale=number(2 ** (real.bits + 1)),
+        square_scale=number(2 ** (2 * real.bits)),
+        square_scale_bits=2 * real.bits,
+        libm_sqrt=f"sqrt{real.libm_suffix}",
+        roots=root_instructions(real),
+        worst=worst_texts(figures, real) if figures else None,
     )
 
 
-def coefficient(value: float, real: RealType) -> Coefficient:
-    """The shortest literal that reads back to the value rounded to the type, and its bits."""
-    if real is RealType.FLOAT:
-        packed = struct.pack(">f", value)
-        (exact,) = struct.unpack(">f", packed)
-        text = f"{exact:.9g}"
-    else:
-        packed, text = struct.pack(">d", value), f"{value:.17g}"
-    if "." not in text and "e" not in text:
-        text += ".0"
-    return Coefficient(text + real.suffix, "0x" + packed.hex().upper())
+def _parts_of_quarter(real: RealType) -> list[float]:
+    """pi/2 as a sum of short numbers: each has few enough bits that its products with whole numbers are exact."""
+    with mp.workdps(80):
+        rest, parts = mp.pi / 2, []
+        for bits in _SPLITS[real]:
+            unit = mp.mpf(2) ** (mp.floor(mp.log(rest, 2)) + 1 - bits)
+            parts.append(float(mp.floor(rest / unit) * unit))
+            rest -= parts[-1]
+        return [*parts, float(rest)]

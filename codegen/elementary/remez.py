@@ -1,18 +1,19 @@
 """Minimax fits: the linear combination of given functions whose largest weighted error is least.
 
 Method: the exchange algorithm of E. Ya. Remez (1934), as told by E. W. Cheney, *Introduction to Approximation Theory*
-(1966), chapter 3. Solve for the coefficients whose weighted error takes equal size and alternating sign at n + 1 points,
-move the points to the extrema of that error, and repeat until the extrema are level. All in mpmath with many digits, so
-the result does not depend on the machine.
+(1966), chapter 3, on a fixed fine grid. Solve for the coefficients whose weighted error takes equal size and
+alternating sign at n + 1 points, move the points to the extrema of that error, and repeat until no error on the grid is
+larger. All in mpmath with many digits, so the result does not depend on the machine.
 
-The coefficients that leave here are rounded to the number type one after the other, the most sensitive first: each rounded
-one is held while the rest are fitted again, so that the later ones absorb the roundings of the earlier.
+The coefficients that leave here are rounded to the number type one after the other, the lowest power first: each
+rounded one is held while the rest are fitted again, so that the later ones absorb the roundings of the earlier.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from itertools import groupby
 from typing import Any
 
 from mpmath import mp
@@ -20,116 +21,105 @@ from mpmath import mp
 Real = Any
 Function = Callable[[Real], Real]
 
-DIGITS = 60
-GRID = 24  # points searched for an extremum, for each coefficient
-ROUNDS = 40
-LEVEL = 1e-6  # the extrema agree to this part: the fit is as good as the best
+DIGITS = 40
+_GRID = 64  # points for each coefficient: they stand so close that the error rises by less than 1/1000 between them
+_ROUNDS = 60
+_LEVEL = 1e-9  # the extrema agree to this part
 
 
 @dataclass(frozen=True, slots=True)
-class Target:
-    """What is approximated: value(x) by a combination of the basis, error counted in units of 1 / weight(x)."""
+class Samples:
+    """What is approximated, on a grid: `values` by a combination of `columns`, errors counted times `weights`."""
 
-    value: Function
-    weight: Function
-    low: Real
-    high: Real
+    values: tuple[Real, ...]
+    weights: tuple[Real, ...]
+    columns: tuple[tuple[Real, ...], ...]
 
-    def less(self, coefficient: Real, function: Function) -> Target:
-        """What is left to approximate once one coefficient is held."""
-        value = self.value
-        return Target(lambda x: value(x) - coefficient * function(x), self.weight, self.low, self.high)
+    def less(self, coefficient: Real) -> Samples:
+        """What is left to approximate once the first column's coefficient is held."""
+        rest = tuple(v - coefficient * c for v, c in zip(self.values, self.columns[0], strict=True))
+        return Samples(rest, self.weights, self.columns[1:])
+
+    def errors(self, coefficients: Sequence[Real]) -> list[Real]:
+        """The weighted error at every point of the grid."""
+        rows = zip(*self.columns, strict=True) if self.columns else [()] * len(self.values)
+        fitted = [mp.fdot(row, coefficients) for row in rows]
+        return [(v - f) * w for v, f, w in zip(self.values, fitted, self.weights, strict=True)]
 
 
 @dataclass(frozen=True, slots=True)
 class Fit:
-    """Coefficients in the order of the basis, and the largest weighted error."""
+    """Coefficients in the order of the columns, and the largest weighted error on the grid."""
 
     coefficients: tuple[Real, ...]
     error: Real
 
 
-def minimax(target: Target, basis: Sequence[Function]) -> Fit:
-    """The best combination of the basis for the target."""
-    with mp.workdps(DIGITS):
-        if not basis:
-            return Fit((), _largest(target, lambda x: mp.zero, 1))
-        points = _chebyshev(target, len(basis) + 1)
-        for _ in range(ROUNDS):
-            coefficients, level = _levelled(target, basis, points)
-            error = _weighted_error(target, basis, coefficients)
-            points = _extrema(error, points, target)
-            sizes = [abs(error(x)) for x in points]
-            if max(sizes) <= abs(level) * (1 + mp.mpf(LEVEL)):
-                break
-        return Fit(tuple(coefficients), max(sizes))
+def sampled(value: Function, weight: Function, basis: Sequence[Function], low: Real, high: Real) -> Samples:
+    """The functions on a grid over [low, high] that is dense at both ends, where extrema crowd."""
+    count = _GRID * (len(basis) + 1)
+    middle, half = (low + high) / 2, (high - low) / 2
+    points = [middle - half * mp.cospi(mp.mpf(i) / count) for i in range(count + 1)]
+    columns = tuple(tuple(function(x) for x in points) for function in basis)
+    return Samples(tuple(map(value, points)), tuple(map(weight, points)), columns)
 
 
-def rounded_minimax(target: Target, basis: Sequence[Function], round_to: Sequence[Function]) -> Fit:
-    """As `minimax`, each coefficient rounded by its own rounding; the error is that of the rounded coefficients."""
-    with mp.workdps(DIGITS):
-        rest, held = target, []
-        for index, rounding in enumerate(round_to):
-            held.append(rounding(minimax(rest, basis[index:]).coefficients[0]))
-            rest = rest.less(held[-1], basis[index])
-        return Fit(tuple(held), _largest(target, _combination(basis, held), 4 * GRID * len(basis)))
+def minimax(samples: Samples) -> Fit:
+    """The best combination of all columns."""
+    count = len(samples.columns)
+    last = len(samples.values) - 1
+    places = [round(last * (1 - float(mp.cospi(mp.mpf(i) / count))) / 2) for i in range(count + 1)] if count else [0]
+    for _ in range(_ROUNDS):
+        coefficients, level = _levelled(samples, places)
+        errors = samples.errors(coefficients)
+        if max(map(abs, errors)) <= abs(level) * (1 + mp.mpf(_LEVEL)):
+            break
+        peaks = _exchanged(errors, count + 1)
+        if len(peaks) <= count:  # rounding noise: the fit is already exact to the digits carried
+            break
+        places = peaks
+    return Fit(tuple(coefficients), max(map(abs, errors)))
 
 
-def _combination(basis: Sequence[Function], coefficients: Sequence[Real]) -> Function:
-    return lambda x: mp.fsum(c * f(x) for c, f in zip(coefficients, basis, strict=True))
+def rounded_minimax(samples: Samples, rounding: Function) -> Fit:
+    """As `minimax`, with coefficients that `rounding` leaves as they are; the error is that of the rounded ones."""
+    rest, held = samples, []
+    while rest.columns:
+        held.append(rounding(minimax(rest).coefficients[0]))
+        rest = rest.less(held[-1])
+    return Fit(tuple(held), max(map(abs, rest.errors(()))))
 
 
-def _weighted_error(target: Target, basis: Sequence[Function], coefficients: Sequence[Real]) -> Function:
-    fitted = _combination(basis, coefficients)
-    return lambda x: (target.value(x) - fitted(x)) * target.weight(x)
-
-
-def _chebyshev(target: Target, count: int) -> list[Real]:
-    middle, half = (target.low + target.high) / 2, (target.high - target.low) / 2
-    return [middle - half * mp.cospi(mp.mpf(i) / (count - 1)) for i in range(count)]
-
-
-def _levelled(target: Target, basis: Sequence[Function], points: Sequence[Real]) -> tuple[list[Real], Real]:
-    """The coefficients whose weighted error is +level, -level, ... at the points."""
-    count = len(points)
+def _levelled(samples: Samples, places: Sequence[int]) -> tuple[list[Real], Real]:
+    """The coefficients whose weighted error is +level, -level, ... at the places."""
+    count = len(places)
     matrix, right = mp.matrix(count, count), mp.matrix(count, 1)
-    for row, x in enumerate(points):
-        for column, function in enumerate(basis):
-            matrix[row, column] = function(x)
-        matrix[row, count - 1] = (-1) ** row / target.weight(x)
-        right[row] = target.value(x)
+    for row, place in enumerate(places):
+        weight = samples.weights[place]
+        for column, values in enumerate(samples.columns):
+            matrix[row, column] = values[place] * weight
+        matrix[row, count - 1] = (-1) ** row
+        right[row] = samples.values[place] * weight
     solution = mp.lu_solve(matrix, right)
     return [solution[i] for i in range(count - 1)], solution[count - 1]
 
 
-def _extrema(error: Function, points: Sequence[Real], target: Target) -> list[Real]:
-    """Between neighbouring sign changes of the error, the place where it is largest."""
-    bounds = [target.low]
-    bounds += [_crossing(error, points[i], points[i + 1]) for i in range(len(points) - 1)]
-    bounds.append(target.high)
-    return [_peak(error, bounds[i], bounds[i + 1]) for i in range(len(points))]
+def _exchanged(errors: Sequence[Real], count: int) -> list[int]:
+    """Places of alternating sign, the largest error of each run of one sign; where too many, the smaller end goes."""
+    runs = [list(run) for _, run in groupby(range(len(errors)), key=lambda place: errors[place] > 0)]
+    peaks = [max(run, key=lambda place: abs(errors[place])) for run in runs]
+    while len(peaks) > count:
+        if len(peaks) == count + 1:
+            peaks.pop(0 if abs(errors[peaks[0]]) < abs(errors[peaks[-1]]) else -1)
+        else:  # two at once keep the signs alternating: the smallest with its smaller neighbour, or an end alone
+            peaks = _without_smallest(errors, peaks)
+    return peaks
 
 
-def _crossing(error: Function, low: Real, high: Real) -> Real:
-    negative_at_low = error(low) < 0
-    for _ in range(GRID):
-        middle = (low + high) / 2
-        if (error(middle) < 0) == negative_at_low:
-            low = middle
-        else:
-            high = middle
-    return (low + high) / 2
-
-
-def _peak(error: Function, low: Real, high: Real) -> Real:
-    """The largest |error| in [low, high]: a grid, then two finer grids about the best point."""
-    for _ in range(3):
-        step = (high - low) / GRID
-        best = max((low + step * i for i in range(GRID + 1)), key=lambda x: abs(error(x)))
-        low, high = max(low, best - step), min(high, best + step)
-    return best
-
-
-def _largest(target: Target, fitted: Function, count: int) -> Real:
-    points = _chebyshev(target, count + 1)
-    return max(abs((target.value(x) - fitted(x)) * target.weight(x)) for x in points)
+def _without_smallest(errors: Sequence[Real], peaks: list[int]) -> list[int]:
+    smallest = min(range(len(peaks)), key=lambda i: abs(errors[peaks[i]]))
+    if smallest in (0, len(peaks) - 1):
+        return peaks[1:] if smallest == 0 else peaks[:-1]
+    beside = min((smallest - 1, smallest + 1), key=lambda i: abs(errors[peaks[i]]))
+    gone = {smallest, beside}
+    return [peak for i, peak in enumerate(peaks) if i not in gone]
