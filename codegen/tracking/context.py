@@ -12,17 +12,19 @@ from codegen.model import Arm, Task
 from codegen.options import Options, RealType
 from codegen.tracking.batch import DAMPING, LARGEST_MOVE, NEAR, SEARCH_STEPS
 from codegen.tracking.shape import ArmShape
-from codegen.tracking.starts import TrackingTables
+from codegen.tracking.starts import HELD_BACK, TrackingTables
 
 ATTEMPTS = 4
+MOST_LOOSE = 2
+LEGS = 3  # after a first one of a radian: two more radians make more than half a turn
 ASIDE = 0.2
 CLOSEST = 2.8  # the nearest second solution, in units of `solitude`, over the cases below: measured on nine arms
 CLOSEST_CASES = 16000
 _LOST = 10**15
-_SOLVED_UNITS = {RealType.FLOAT: 32, RealType.DOUBLE: 64}  # measured: residuals end at 12 units or fewer
+_SOLVED_UNITS = {RealType.FLOAT: 32, RealType.DOUBLE: 64}  # measured: residuals end below 25 units
 _LOOSE = {RealType.FLOAT: Fraction(1, 10**6), RealType.DOUBLE: Fraction(1, 10**12)}
 _SURELY_SAME = {RealType.FLOAT: Fraction(1, 10**4), RealType.DOUBLE: Fraction(1, 10**8)}
-_FINISHING = {RealType.FLOAT: 10, RealType.DOUBLE: 22}  # at a double root the residual shrinks fourfold a step
+FINISHING = {RealType.FLOAT: 10, RealType.DOUBLE: 22}  # at a double root the residual shrinks fourfold a step
 
 _ROWS_TEXT = {
     Task.POSE: "position and rotation",
@@ -62,6 +64,8 @@ class TrackingContext:
     rows: int
     rows_text: str
     attempts: int
+    most_loose: int
+    legs: int
     search_steps: int
     finishing_steps: int
     held: bool
@@ -94,8 +98,10 @@ def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> Trac
         rows=(2 if plane else 3) + _DIRECTION_ROWS.get(arm.task, 0),
         rows_text=_ROWS_TEXT[arm.task],
         attempts=ATTEMPTS,
+        most_loose=MOST_LOOSE,
+        legs=LEGS,
         search_steps=SEARCH_STEPS,
-        finishing_steps=_FINISHING[real],
+        finishing_steps=FINISHING[real],
         held=len(shape.free) < len(arm.joints),
         positions=shape.free,
         slides=slides,
@@ -104,7 +110,7 @@ def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> Trac
         units=tuple(literal(_unit(shape, joint), real) for joint in shape.free),
         numbers=_numbers(arm, shape, real, bounded=not slides and not plane),
         starts=tables.starts,
-        step_values=tuple(literal(Fraction(1, grid), real) for grid in tables.grid),
+        step_values=tuple(literal(step, real) for step in tables.steps),
         last_turning=shape.last_turning,
         plane=plane,
         plane_rows=tuple((literal(x, real), literal(y, real), literal(z, real)) for x, y, z in shape.plane),
@@ -117,31 +123,49 @@ def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> Trac
     )
 
 
-def most_steps(tables: TrackingTables, options: Options) -> tuple[int, int]:
-    """Steps at the very worst: tracking from the seed, and the whole search, each start and the seed's attempts."""
-    each = SEARCH_STEPS + _FINISHING[options.real]
-    return ATTEMPTS * each, (ATTEMPTS + len(tables.starts)) * each
+@dataclass(frozen=True, slots=True)
+class MostSteps:
+    """Evaluations of the Jacobian at the very worst; `free`: more of them where the pose leaves joints free."""
+
+    tracked: int
+    tracked_free: int
+    searched: int
+    searched_free: int
+
+
+def most_steps(tables: TrackingTables, options: Options) -> MostSteps:
+    """Of tracking from the seed, with all its attempts, and of the whole search.
+
+    A start takes its steps, one look for a free joint, and one look half way to each solution known. Each joint that
+    the pose leaves free goes to its seed in legs, each with a look and its own steps, and one more track at the end.
+    """
+    each = SEARCH_STEPS + FINISHING[options.real] + 1
+    loosening = MOST_LOOSE * ((LEGS + 1) * (each + 1) + each + 1)
+    tracked = ATTEMPTS * each + 1
+    searched = tracked + len(tables.starts) * (each + 1 + tables.branches)
+    return MostSteps(tracked, tracked + loosening, searched, searched + (len(tables.starts) + 1) * loosening)
 
 
 def branch_text(tables: TrackingTables, options: Options) -> tuple[str, ...]:
     """What the header says of this kind of inverse: what a branch number means, what is found, what it costs."""
-    prefix, upper = options.prefix, options.prefix.upper()
-    tracked, searched = most_steps(tables, options)
-    measured = tables.measured
-    share = f"{measured.found} of {measured.solutions} solutions of {measured.poses} random poses"
+    branches = f"{options.prefix.upper()}_BRANCHES"
+    most, measured = most_steps(tables, options), tables.measured
+    found = f"{measured.found} of {measured.solutions} solutions ({100 * measured.share:.2f} %)"
     bound = (
-        f"{upper}_BRANCHES is a proven bound; {tables.most_found} is the most that one pose was seen to have."
+        f"  {branches} is a proven bound; the most solutions seen at one pose were {tables.most_found}."
         if tables.proven
-        else f"One pose was seen to have {tables.most_found} solutions at most; {upper}_BRANCHES allows for two more."
+        else f"  The most solutions seen at one pose were {tables.most_found}; {branches} has room for {HELD_BACK} more."
     )
     return (
-        "Inverse: numeric, for this arm has no closed form. Damped Newton steps with the exact Jacobian.",
-        "  branch 0     the solution tracked from the seed",
-        f"  others       by travel from the seed: a number names a solution only within one call of {prefix}_inverse_all",
-        f"  found        {share}, against a dense search ({100 * measured.share:.2f} %)",
-        f"  steps        {prefix}_inverse on branch 0: a few from a near seed, {tracked} at the very worst",
-        f"               all else: {measured.mean_steps} on average, {searched} at the very worst",
-        f"  {bound}",
+        "Inverse: numeric, for no closed form is known for this arm. Damped Newton steps with the exact Jacobian.",
+        "  branch 0  the solution tracked from the seed: the one for a control loop. From a near seed 3 to 5 steps,",
+        f"            {most.tracked} at the very worst, {most.tracked_free} where the pose leaves joints free.",
+        f"  branch b  of the other solutions, looked for from {len(tables.starts)} starts, the b-th to be reached from the",
+        f"            seed: it names a solution only within one call. {measured.mean_steps} steps on average,",
+        f"            {most.searched} at the very worst, {most.searched_free} where the pose leaves joints free.",
+        f"  Found: {found} of {measured.poses} random poses, against a dense search.",
+        bound,
+        f"  {options.prefix}_inverse_nearest looks no further than branch 0 where that is certainly the nearest.",
     )
 
 
@@ -158,7 +182,7 @@ def _numbers(arm: Arm, shape: ArmShape, real: RealType, bounded: bool) -> tuple[
     u = real.rounding
     solved = _SOLVED_UNITS[real] * _number(u) * (1 + shape.base_distance / shape.reach)
     least = min(_number(slowness(arm, joint)) * _unit(shape, joint) for joint in shape.free)
-    rows: list[tuple[str, object, str]] = [
+    rows: list[tuple[str, Real, str]] = [
         ("LENGTH_SCALE", shape.length_scale, "1/m, a residual length of half the reach counts as 1 rad"),
         ("DAMPING", Fraction(str(DAMPING)), "of the squared residual"),
         ("LEAST_DAMPING", u, "keeps steps at singular places within rounding"),
@@ -167,7 +191,8 @@ def _numbers(arm: Arm, shape: ArmShape, real: RealType, bounded: bool) -> tuple[
         ("SOLVED", solved, "a residual that rounding alone can explain"),
         ("LOST", _LOST, "a residual beyond all arms"),
         ("LOOSE", _LOOSE[real], "squared length of a column that seems to depend on others"),
-        ("PROBE", 1, "how far a free joint must be free to move"),
+        ("LONGEST_LEG", 1, "of a free joint on its way to its seed"),
+        ("LEAST_PART", Fraction(1, 8), "that it must take in the motion"),
         ("ASIDE", Fraction(str(ASIDE)), "between attempts from the seed"),
         ("SURELY_SAME", _SURELY_SAME[real], "two solutions as near as this are one"),
         ("PERHAPS_SAME", Fraction(1, 20), "as near as this they may be"),

@@ -5,17 +5,18 @@ from __future__ import annotations
 import random
 from collections.abc import Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 
 import numpy as np
 import numpy.typing as npt
 
 from codegen.exact import real
-from codegen.model import Arm, JointRow
+from codegen.model import Arm, JointKind, JointRow
 from codegen.tracking.batch import Batch
 from codegen.tracking.lanes import Flags, LanePoses, LaneVector
 from codegen.tracking.shape import ArmShape
 
-TURN_GRID = 40  # starts are multiples of 1/40 rad: half a turn is 126 of them, so a start fits a signed char
+TURN_STEP = Fraction(1, 40)  # rad, of the starts: half a turn is 126 of them, so a start fits a signed char
 LARGEST_START = 126
 SAME_SOLUTION = 1e-3  # rad, or slide units: solutions closer than this count as one
 _BLOCK = 6144  # lanes tracked at a time, so that they stay in the processor's cache
@@ -45,24 +46,21 @@ class Search:
         self.shape = shape
         self._batch = Batch(shape)
         self._random = random.Random(seed)
-        self._ranges = [_slide_range(row, float(shape.reach)) for row in arm.joints]
-        self.grid = tuple(TURN_GRID if shape.turning[i] else self._slide_grid(i) for i in shape.free)
+        self._ranges = [_range(row, float(shape.reach)) for row in arm.joints]
+        self.steps = tuple(TURN_STEP if shape.turning[i] else self._slide_step(i) for i in shape.free)
 
-    def _slide_grid(self, joint: int) -> int:
-        """The coarsest step 1/grid m that is no longer than a step of a turning joint would move the tool."""
-        lowest, highest = self._ranges[joint]
-        finest = int(LARGEST_START / max(abs(lowest), abs(highest)))
-        return max(1, min(finest, int(TURN_GRID / float(self.shape.slide_unit)) + 1))
+    def _slide_step(self, joint: int) -> Fraction:
+        """m: as fine as the steps of turning joints move the tool, but not so fine that a start is no signed char."""
+        least = float(self.shape.slide_unit) * float(TURN_STEP)
+        return round_step(max(least, max(abs(end) for end in self._ranges[joint]) / LARGEST_START))
 
     def starts(self, count: int) -> list[Start]:
         """Random starts on the grid, one whole number per free joint."""
         return [tuple(self._start(k, joint) for k, joint in enumerate(self.shape.free)) for _ in range(count)]
 
     def _start(self, k: int, joint: int) -> int:
-        if self.shape.turning[joint]:
-            return self._random.randrange(1 - LARGEST_START, LARGEST_START + 1)
         lowest, highest = self._ranges[joint]
-        return int(np.rint((lowest + (highest - lowest) * self._random.random()) * self.grid[k]))
+        return int(np.rint((lowest + (highest - lowest) * self._random.random()) / float(self.steps[k])))
 
     def run(self, poses: int, starts: Sequence[Start]) -> Searched:
         """Every start tracked to each of so many fresh poses."""
@@ -71,7 +69,7 @@ class Search:
         lanes = [np.repeat(values, count) for values in true_values]
         target = self._batch.poses(lanes)
         for k, joint in enumerate(self.shape.free):
-            lanes[joint] = np.tile(np.array([start[k] / self.grid[k] for start in starts]), poses)
+            lanes[joint] = np.tile(np.array([start[k] * float(self.steps[k]) for start in starts]), poses)
         ends, solved, steps = self._tracked(target, lanes)
         solved &= self._within(ends)
         found = [
@@ -120,11 +118,19 @@ class Search:
         return np.array(found, dtype=np.bool_).reshape(len(found), len(solved))
 
 
-def _slide_range(row: JointRow, reach: float) -> tuple[float, float]:
-    """Of the joint variable: a whole turn, or where the slide may go (m)."""
-    if row.kind.value == "revolute":
+def round_step(least: float) -> Fraction:
+    """The smallest of 1, 2 or 5 times a power of ten that is no less (m)."""
+    step = Fraction(1, 10**9)
+    while True:
+        for digit in (1, 2, 5):
+            if digit * step >= least:
+                return digit * step
+        step *= 10
+
+
+def _range(row: JointRow, reach: float) -> tuple[float, float]:
+    """Of the joint variable: a whole turn (rad), or where the slide may go (m)."""
+    if row.kind is JointKind.REVOLUTE:
         return -_TURN / 2, _TURN / 2
-    if row.limits is None:
-        return -reach, reach
-    lowest, highest = (float(real(limit)) for limit in row.limits if not hasattr(limit, "radians"))
-    return lowest, highest
+    lengths = [float(real(limit)) for limit in row.limits or () if isinstance(limit, Fraction)]
+    return (lengths[0], lengths[1]) if lengths else (-reach, reach)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from fractions import Fraction
 
 from codegen.exact import MP, Real, real
 from codegen.model import Arm, JointKind, JointRow, Task
@@ -88,7 +89,7 @@ def _travel(row: JointRow) -> Real:
     """The largest size of a limited slide (m); 0 for other joints."""
     if row.kind is JointKind.REVOLUTE or row.limits is None:
         return MP.mpf(0)
-    return max(abs(real(limit)) for limit in row.limits if not hasattr(limit, "radians"))
+    return max(abs(real(limit)) for limit in row.limits if isinstance(limit, Fraction))
 
 
 def _plane(arm: Arm, links: tuple[Matrix, ...], turning_free: list[int]) -> tuple[tuple[Real, Real, Real], ...]:

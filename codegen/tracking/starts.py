@@ -14,12 +14,12 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from fractions import Fraction
 
 import numpy as np
 import numpy.typing as npt
 
 from codegen.model import Arm, Task
-from codegen.tracking.batch import FINISHING_STEPS, SEARCH_STEPS
 from codegen.tracking.search import Search, Searched
 from codegen.tracking.shape import ArmShape, shape_of
 
@@ -66,8 +66,8 @@ class Measured:
 class TrackingTables:
     """Everything that is prepared for one arm.
 
-    starts      rows of whole numbers, one per free joint, base first; times `grid` a joint value
-    grid        per free joint, 1/grid rad or m is the step of the starts
+    starts      rows of whole numbers, one per free joint, base first; times its step a joint value
+    steps       per free joint, rad or m
     most_found  solutions of one pose, over all poses that were searched
     branches    the most solutions that one pose has, as far as is known
     proven      whether `branches` is a proven bound, or rests on the search
@@ -75,16 +75,11 @@ class TrackingTables:
 
     shape: ArmShape
     starts: tuple[tuple[int, ...], ...]
-    grid: tuple[int, ...]
+    steps: tuple[Fraction, ...]
     most_found: int
     branches: int
     proven: bool
     measured: Measured
-
-    @property
-    def most_steps(self) -> int:
-        """Steps of one search at the very worst, the seed being one more start."""
-        return (len(self.starts) + 1) * (SEARCH_STEPS + FINISHING_STEPS)
 
 
 def prepare_starts(arm: Arm, effort: Effort | None = None) -> TrackingTables:
@@ -103,7 +98,7 @@ def prepare_starts(arm: Arm, effort: Effort | None = None) -> TrackingTables:
     most_found = max(run.most for run in (chosen_on, decided_on, measured_on))
     branches, proven = most_solutions(shape, most_found)
     return TrackingTables(
-        shape, tuple(table), search.grid, most_found, branches, proven, _measured(measured_on, len(table))
+        shape, tuple(table), search.steps, most_found, branches, proven, _measured(measured_on, len(table))
     )
 
 
