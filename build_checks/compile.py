@@ -131,7 +131,7 @@ class Kinematics:
         self.real: np.dtype[Any] = np.dtype(np.float32 if library.options.real is RealType.FLOAT else np.float64)
         self._ffi: Any = cffi.FFI()
         self._ffi.cdef(_DECLARATIONS)
-        self._library: Any = self._ffi.dlopen(library.path)
+        self._library: Any = _opened(self._ffi, library.path)
         constants = np.zeros(11, dtype=np.intc)
         self._library.check_constants(self._pointer(constants))
         self.joints, self.branches = int(constants[0]), int(constants[1])
@@ -202,6 +202,14 @@ class Kinematics:
         angles = np.zeros(len(y), dtype=self.real)
         self._call("check_atan2", self.rounded(y), self.rounded(x), angles)
         return angles
+
+
+def _opened(ffi: Any, path: str) -> Any:
+    """Loading fails when the C calls what nobody defines."""
+    try:
+        return ffi.dlopen(path)
+    except OSError as error:
+        raise CheckFailedError(Fault("compiled C", f"cannot be loaded: {error}")) from None
 
 
 def _unwritten(*shape: int) -> npt.NDArray[np.intc]:

@@ -227,6 +227,12 @@ def test_c_that_does_not_compile_is_a_failed_check():
         agree(TURRET.arm, TURRET.files(fault=("#include <math.h>", "#include <maths.h>")), TURRET.options(), FEW)
 
 
+def test_c_that_calls_what_nobody_defines_is_a_failed_check():
+    fault = ("return (turret_real)atan2(", "double elsewhere(double, double);\n    return (turret_real)elsewhere(")
+    with pytest.raises(CheckFailedError, match="cannot be loaded"):
+        agree(TURRET.arm, TURRET.files(fault=fault), TURRET.options(), FEW)
+
+
 def test_no_compiler_is_said_with_the_remedy(monkeypatch):
     monkeypatch.setenv("CC", "no-such-compiler")
     with pytest.raises(NoCompilerError, match="set CC"):
