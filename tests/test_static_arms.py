@@ -6,9 +6,10 @@ from functools import cache
 from pathlib import Path
 
 import pytest
+from arms_random import PARTIAL_ARMS, POSE_ARMS, Structure, random_arm
 from required_tools import need_programs, need_target
 
-from build_checks.static_checks import CHECKS, StaticCheck
+from build_checks.static_checks import CHECKS, StaticCheck, static_report
 from build_checks.static_compilers import compiler_findings
 from build_checks.static_objects import object_findings, stack_figures
 from build_checks.targets import AVR, M0_PLUS, M4F, RV32, Target
@@ -54,6 +55,18 @@ def test_nothing_is_found(name: str, real: RealType, check: StaticCheck) -> None
 @pytest.mark.parametrize("name", MORE_ARMS)
 def test_nothing_is_found_in_the_other_arms(name: str, real: RealType, check: StaticCheck) -> None:
     assert findings(name, real, check) == []
+
+
+RANDOM = [(structure, list(RealType)[place % 2]) for place, structure in enumerate([*POSE_ARMS, *PARTIAL_ARMS][::20])]
+
+
+@pytest.mark.sweep
+@pytest.mark.parametrize(("structure", "real"), RANDOM, ids=[f"{row.name}-{real.c_name}" for row, real in RANDOM])
+def test_nothing_is_found_in_a_random_chain(structure: Structure, real: RealType) -> None:
+    files = generate(random_arm(structure, 1), Options(real=real))
+    for check in CHECKS:
+        need_programs(*check.programs)
+    assert [str(finding) for finding in static_report(files, "arm").findings] == []
 
 
 @each_case
