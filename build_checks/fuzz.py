@@ -23,6 +23,7 @@ from pathlib import Path
 import numpy as np
 
 from build_checks.agree_budget import budget_of
+from build_checks.compile import AnyArray
 from build_checks.reference import Reference
 from codegen.armfile import read_arm
 from codegen.errors import CheckFailedError, Fault
@@ -98,7 +99,7 @@ def seed_records(arm: Arm, real: RealType) -> list[bytes]:
     return [_record(arm, kind, numbers, shares, turn) for kind in kinds for turn in range(len(special))]
 
 
-def _record(arm: Arm, kinds: int, numbers: np.ndarray, shares: np.ndarray, turn: int) -> bytes:  # type: ignore[type-arg]
+def _record(arm: Arm, kinds: int, numbers: AnyArray, shares: AnyArray, turn: int) -> bytes:
     """One record; `turn` shifts which special number stands where."""
     count = len(arm.joints)
 
