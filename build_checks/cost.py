@@ -125,12 +125,19 @@ def measure_cost(
     """
     interface = read_interface(files, options.prefix)
     targets = [target_named(name) for name in target_names] or list(TARGETS)
-    missing = {target.name: why_not_measured(target) for target in targets}
+    missing = {target.name: _why_not(target, interface) for target in targets}
     here = [target for target in targets if missing[target.name] is None]
     calls = cost_calls(files, interface, poses, libm) if here else None
     costs = tuple(_measure(files, calls, target, libm) for target in here if calls)
     lines = tuple(line for line in missing.values() if line)
     return CostReport(options.prefix, interface.real, len(poses), costs, lines)
+
+
+def _why_not(target: Target, interface: Interface) -> str | None:
+    """One line when the target cannot be measured here, or has no such number type."""
+    if interface.real == "double" and target.double_bytes < 8:
+        return f"{target.title}: not measured: its compiler's double is a float; measure the float code there"
+    return why_not_measured(target)
 
 
 def _measure(files: Mapping[str, str], calls: CostCalls, target: Target, libm: bool) -> TargetCost:

@@ -71,6 +71,14 @@ def test_a_target_that_is_not_here_gets_one_line(monkeypatch: pytest.MonkeyPatch
     assert cost_table(report).count("not measured here") == len(TARGETS)
 
 
+def test_double_is_not_measured_where_there_is_none() -> None:
+    """GCC's AVR options: double has 32 bits (there was no other choice before version 10)."""
+    header = "#define ARM_JOINTS 1\n#define ARM_BRANCHES 1\ntypedef double arm_real;\n"
+    report = measure_cost({"arm_kin.h": header}, Options(), ["avr"], [[0.0]])
+    assert report.targets == ()
+    assert "its compiler's double is a float" in report.not_measured[0]
+
+
 def test_a_budget_names_every_excess() -> None:
     report = measured(M4F)
     (cost,) = report.targets
