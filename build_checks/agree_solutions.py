@@ -93,7 +93,7 @@ def _round_trip(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None
     ordinary = _ordinary(bench, flat.q, targets.position)
     origins = np.where(np.isnan(batch.origins[flat.rows]), flat.q, batch.origins[flat.rows])
     bench.tally.judge(
-        Check.ROUND_TRIP,
+        Check.ROUND_TRIP if batch.stretch == 1.0 else Check.EDGE_TRIP,
         failed,
         describe,
         position=worst(position[ordinary], origins[ordinary]),

@@ -23,6 +23,7 @@ class Check(Enum):
     JACOBIAN = "the Jacobian is the link table's"
     ATAN2 = "atan2 is right in every quadrant and special case"
     ROUND_TRIP = "every solution reaches its pose"
+    EDGE_TRIP = "so does every solution at singular and boundary poses"
     KNOWN = "the joint values a pose came from are among its solutions"
     CLOSED = "each solution, as a new start, gives the same set"
     DISTINCT = "no two branches give one solution"

@@ -59,20 +59,32 @@ def _shares(report: AgreeReport) -> str:
     return "\n".join(lines)
 
 
+_WORST = (  # rows of the table of worst errors: check, what it is called there, what its budgets are multiplied by
+    (Check.FORWARD, "forward kinematics", 1),
+    (Check.ROUND_TRIP, "solutions", 1),
+    (Check.EDGE_TRIP, "solutions at singular and boundary poses", 2),
+)
+
+
 def _worst_lines(report: AgreeReport) -> str:
-    """Worst errors with the joint values of their poses. Budgets are doubled at singular and boundary poses."""
-    run, lines = report.run, []
-    if position := report.worst_position:
-        share = position.error / run.reach
-        budget = f"allowed {run.position_budget:g}, twice that at singular and boundary poses"
-        lines += [f"worst position error {_length(run, position.error)}, {share:.2g} of the reach ({budget})"]
-        lines += [_paste(run, position)]
-    if angle := report.worst_angle:
-        lines += [
-            f"worst angle error {angle.error:.2g} rad (allowed {run.angle_budget:g}, likewise)",
-            _paste(run, angle),
-        ]
+    """Worst errors beside what is allowed, then the joint values of the poses that gave them."""
+    rows = [(report.result(check), name, factor) for check, name, factor in _WORST]
+    rows = [row for row in rows if row[0].position and row[0].angle]
+    if not rows:
+        return ""
+    head = f"{'worst errors':<42} {'position':>14} {'of reach':>9} {'allowed':>8} {'angle, rad':>11} {'allowed':>8}"
+    lines = [head, *(_worst_row(report.run, *row) for row in rows)]
+    for result, name, _ in rows:
+        for worst, what in ((result.position, "position"), (result.angle, "angle")):
+            lines += [f"{name}, worst {what} at", _paste(report.run, worst)] if worst else []
     return "\n".join(lines)
+
+
+def _worst_row(run: Run, result: CheckResult, name: str, factor: int) -> str:
+    position = result.position.error if result.position else 0.0
+    angle = result.angle.error if result.angle else 0.0
+    where = f"{name:<42} {_length(run, position):>14} {position / run.reach:>9.2g} {factor * run.position_budget:>8.1g}"
+    return f"{where} {angle:>11.2g} {factor * run.angle_budget:>8.1g}"
 
 
 def _paste(run: Run, worst: Worst) -> str:
