@@ -19,12 +19,13 @@ from codegen.commands.check import check
 from codegen.commands.console import show_faults
 from codegen.commands.cost import cost
 from codegen.commands.draw import draw
+from codegen.commands.explain import explain
 from codegen.commands.generate import generate
 from codegen.commands.schema import schema
 from codegen.commands.stale import stale
 from codegen.errors import LinkwrightError
 
-COMMANDS = (generate, agree, check, draw, cost, stale, adopt, schema)  # in the order of the help
+COMMANDS = (generate, agree, check, explain, draw, cost, stale, adopt, schema)  # in the order of the help
 
 app = typer.Typer(
     name="linkwright",

@@ -1,0 +1,281 @@
+"""What the generated functions cost, counted on the program's nodes and on the steps of the plan.
+
+Counted: the formulas as they stand, and what each solvable form adds to them (a pair brought to length 1, a root, the
+angle of a returned joint brought to the turn nearest its seed). Not counted: comparisons, changes of sign, products of
+constants, copies, and the check of the input. Subtractions count as additions. A form with four roots is counted at its
+worst: every search step taken, every root there.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, fields
+from typing import assert_never
+
+from codegen.emit.expression import Constants
+from codegen.emit.motion_text import MotionText
+from codegen.forward import jacobian_nodes, pose_nodes
+from codegen.inverse.plan import (
+    BalanceStep,
+    DirectionStep,
+    QuarticStep,
+    RefineStep,
+    SlideQuarticStep,
+    SlideRootsStep,
+    SlideStep,
+    Step,
+    Variable,
+)
+from codegen.inverse.tasks import Derivation
+from codegen.model import Arm
+from codegen.options import Options
+from codegen.program import Node, Op, reachable
+
+
+@dataclass(frozen=True, slots=True)
+class OperationCount:
+    """How often each operation is done; `sine_cosine_pairs` are sine and cosine of one angle, taken together."""
+
+    additions: int = 0
+    multiplications: int = 0
+    divisions: int = 0
+    roots: int = 0
+    arc_tangents: int = 0
+    sine_cosine_pairs: int = 0
+
+    def __add__(self, other: OperationCount) -> OperationCount:
+        return OperationCount(*(getattr(self, f.name) + getattr(other, f.name) for f in fields(self)))
+
+    def times(self, count: int) -> OperationCount:
+        return OperationCount(*(getattr(self, f.name) * count for f in fields(self)))
+
+
+@dataclass(frozen=True, slots=True)
+class InverseCount:
+    """one_branch: arm_inverse; all_branches: arm_inverse_all, where stages are shared; worst: it has a search in it."""
+
+    one_branch: OperationCount
+    all_branches: OperationCount
+    worst: bool
+
+
+_NOTHING = OperationCount()
+UNIT = OperationCount(additions=1, multiplications=4, divisions=1, roots=1)  # (x, y) brought to length 1
+SETTLE = OperationCount(additions=4, multiplications=3)  # an angle brought to the turn nearest its seed
+_GUARD = OperationCount(additions=1, multiplications=4)  # how far a square may be from what rounding explains
+_NEWTON = OperationCount(additions=4, multiplications=9, divisions=2)  # two equations in two unknowns
+_TURN_BY = OperationCount(additions=2, multiplications=2) + UNIT
+_SEARCH_STEPS = {24: 30, 53: 60}  # of one root of a polynomial, by the bits of the number type
+_MOST_CROSSINGS = 6  # that one polynomial of fourth degree can note, double ones included
+
+
+def counted(nodes: Iterable[Node]) -> OperationCount:
+    """The arithmetic of nodes, each done once."""
+    total = _NOTHING
+    for node in nodes:
+        match node.op:
+            case Op.SUM:
+                total += OperationCount(additions=len(node.args) - 1)
+            case Op.PRODUCT:
+                total += OperationCount(multiplications=1)
+            case Op.QUOTIENT:
+                total += OperationCount(divisions=1)
+            case Op.ROOT:
+                total += OperationCount(roots=1)
+            case Op.CONSTANT | Op.INPUT | Op.SIZE | Op.CHOICE:
+                pass
+            case _:
+                assert_never(node.op)
+    return total
+
+
+# -- functions that start from joint values ----------------------------------------------------------------------------
+def forward_count(arm: Arm, options: Options) -> OperationCount:
+    motion = MotionText(arm, options, Constants(options))
+    pose = pose_nodes(motion.carrier)
+    return motion_count(motion, [*pose.position, *(entry for row in pose.rotation for entry in row)])
+
+
+def jacobian_count(arm: Arm, options: Options) -> OperationCount:
+    motion = MotionText(arm, options, Constants(options))
+    _, columns = jacobian_nodes(motion.carrier)
+    return motion_count(motion, [entry for column in columns for vector in column for entry in vector])
+
+
+def motion_count(motion: MotionText, results: list[Node]) -> OperationCount:
+    """Results that start from joint values: each angle is summed and its pair taken once."""
+    used = reachable(results)
+    total = counted(used)
+    for heading, pair in motion.values.pairs.items():
+        if pair.cosine in used or pair.sine in used:
+            total += counted(reachable([motion.values.angle(heading)])) + OperationCount(sine_cosine_pairs=1)
+    return total
+
+
+# -- the inverse -------------------------------------------------------------------------------------------------------
+def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
+    """Of an ordinary solution: within the limits, no joint free."""
+    stages = stage_counts(derivation, options)
+    one = all_branches = _NOTHING
+    runs = 1
+    for count, roots in stages:
+        runs *= roots
+        one += count
+        all_branches += count.times(runs)
+    worst = any(step.roots == 4 for step in derivation.plan.steps)
+    if worst:
+        check = _reach_check(derivation)
+        one, all_branches = one + check, all_branches + check.times(runs)
+    return InverseCount(one, all_branches, worst)
+
+
+def stage_counts(derivation: Derivation, options: Options) -> list[tuple[OperationCount, int]]:
+    """Per stage (what no choice changes first): one run of it, and how many roots its choice has."""
+    choices = [step for step in derivation.plan.steps if step.roots > 1]
+    counts = [_held_count(derivation), *(_NOTHING for _ in choices)]
+    done: set[Node] = set()
+    number = 0
+    for step in derivation.plan.steps:
+        number += step.roots > 1
+        own, repeated = _nodes_of(step)
+        for node in _new(own, done):
+            counts[node.stage] += counted([node])
+        counts[number] += counted(_new(repeated, done)).times(_passes(step)) + _form_count(derivation, step)
+        if step.roots == 4:
+            counts[number - 1] += _search_count(step, options)
+    return list(zip(counts, [1, *(step.roots for step in choices)], strict=True))
+
+
+def _held_count(derivation: Derivation) -> OperationCount:
+    """Pairs and slides of held joints, from the seed."""
+    goal = derivation.goal
+    total = _NOTHING
+    for index in goal.arm.held_indices:
+        total += _offset_count(derivation, index) + OperationCount(sine_cosine_pairs=int(index in goal.held_pairs))
+    return total
+
+
+def _new(roots: list[Node], done: set[Node]) -> list[Node]:
+    found = [node for node in reachable(roots) if node not in done]
+    done.update(found)
+    return found
+
+
+def _passes(step: Step) -> int:
+    return step.passes if isinstance(step, RefineStep) else 1
+
+
+def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
+    """What a step reads once, and what it reads in every pass."""
+    match step:
+        case DirectionStep():
+            return [step.x, step.y], []
+        case BalanceStep():
+            return [*([step.size] if step.size else []), step.target, step.square, step.x, step.y], []
+        case SlideStep():
+            return [step.numerator, step.denominator], []
+        case SlideRootsStep():
+            return [step.middle, step.square], []
+        case QuarticStep() | SlideQuarticStep():
+            return list(step.coefficients), []
+        case RefineStep():
+            return [], [*step.residuals, *step.slopes[0], *step.slopes[1]]
+        case _:
+            assert_never(step)
+
+
+def _form_count(derivation: Derivation, step: Step) -> OperationCount:
+    """What the form adds to the formulas of its step."""
+    match step:
+        case DirectionStep():
+            return UNIT + _settled_turn(derivation, step.joint)
+        case BalanceStep():
+            guard = _GUARD if step.size else _NOTHING
+            return OperationCount(roots=1) + UNIT + guard + _settled_turn(derivation, step.joint)
+        case SlideStep():
+            return _division(step) + _settled_slide(derivation, step.joint)
+        case SlideRootsStep():
+            added = OperationCount(additions=int(not step.middle.is_exactly(0)), roots=1)
+            return added + _settled_slide(derivation, step.joint)
+        case QuarticStep() | SlideQuarticStep():
+            return _NOTHING
+        case RefineStep():
+            changes = _NOTHING
+            for variable in step.variables:
+                changes += OperationCount(additions=1) if isinstance(variable.during, Node) else _TURN_BY
+            total = (_NEWTON + changes).times(step.passes)
+            for variable in step.variables:
+                total += _settled_variable(derivation, variable)
+            return total
+        case _:
+            assert_never(step)
+
+
+def _division(step: SlideStep) -> OperationCount:
+    if not step.denominator.is_constant:
+        return OperationCount(divisions=1)
+    return OperationCount(multiplications=int(not step.denominator.structural))
+
+
+def _offset_count(derivation: Derivation, joint: int) -> OperationCount:
+    return OperationCount(additions=int(not derivation.goal.chain.joints[joint].offset.is_exactly(0)))
+
+
+def _settled_turn(derivation: Derivation, joint: int | None) -> OperationCount:
+    """The angle that is returned; a pair whose joint a later step settles, or that is no joint's, has none."""
+    if joint is None:
+        return _NOTHING
+    return OperationCount(arc_tangents=1) + _offset_count(derivation, joint) + SETTLE
+
+
+def _settled_slide(derivation: Derivation, joint: int | None) -> OperationCount:
+    return _NOTHING if joint is None else _offset_count(derivation, joint)
+
+
+def _settled_variable(derivation: Derivation, variable: Variable) -> OperationCount:
+    if variable.joint >= len(derivation.goal.chain.joints):
+        return _NOTHING
+    if isinstance(variable.after, Node):
+        return _settled_slide(derivation, variable.joint)
+    return _settled_turn(derivation, variable.joint)
+
+
+def _reach_check(derivation: Derivation) -> OperationCount:
+    """The pose reached against the pose wanted, where roots are approximate: their squares added up, by kind."""
+    misses = derivation.misses()
+    kinds = {kind for kind, _ in misses}
+    squares = OperationCount(additions=len(misses) - len(kinds), multiplications=len(misses))
+    return counted(reachable([node for _, node in misses])) + squares
+
+
+# -- at the worst: the search for four roots ---------------------------------------------------------------------------
+def _search_count(step: Step, options: Options) -> OperationCount:
+    """Both halves of the circle, or near and far slides: a quartic and its derivatives, each between the last one's."""
+    halves = 2
+    steps = _SEARCH_STEPS[options.real.bits]
+    quartic = OperationCount(additions=5)
+    for degree in range(1, 5):
+        quartic += OperationCount(multiplications=degree + 1) + _crossings_count(degree, steps)
+    quartic += _prepared(step) + _noted(step).times(_MOST_CROSSINGS)
+    scaling = OperationCount(multiplications=10) if isinstance(step, SlideQuarticStep) else _NOTHING
+    return quartic.times(halves) + scaling
+
+
+def _crossings_count(degree: int, steps: int) -> OperationCount:
+    """As many intervals as the degree; in each a value at its end, and at the worst one search."""
+    value = OperationCount(additions=degree, multiplications=degree)
+    newton = OperationCount(additions=2 * degree + 3, multiplications=2 * degree + 2, divisions=1)
+    search = value + OperationCount(additions=1, multiplications=1) + newton.times(steps)
+    return value + (value + search).times(degree)
+
+
+def _prepared(step: Step) -> OperationCount:
+    """The coefficients in the half angle's tangent."""
+    return OperationCount(additions=7, multiplications=7) if isinstance(step, QuarticStep) else _NOTHING
+
+
+def _noted(step: Step) -> OperationCount:
+    """One root turned into a pair or a slide, and compared with those already there."""
+    if isinstance(step, QuarticStep):
+        return OperationCount(additions=10, multiplications=10, divisions=1)
+    return OperationCount(additions=2, multiplications=1, divisions=1)
