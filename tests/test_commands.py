@@ -16,11 +16,14 @@ from command_line import CANNOT_REACH, PICKER, PLOTTER, call, names_in
 from codegen import VERSION
 from codegen.armfile import read_arm
 from codegen.emit.files import Source
+from codegen.main import COMMANDS
 from codegen.options import Mathematics, Options, RealType
 from codegen.pipeline import generate
 from codegen.places import ARMS
 
-COMMANDS = ["adopt", "agree", "check", "cost", "draw", "generate", "schema", "stale"]
+NAMES = [command.__name__ for command in COMMANDS]
+# Every command that users can rely on; those that do not work yet are not to be seen.
+PROMISED = ["generate", "agree", "compare", "explain", "draw", "cost", "adopt", "check", "stale", "report", "schema"]
 
 
 def listed_commands() -> list[str]:
@@ -29,10 +32,12 @@ def listed_commands() -> list[str]:
 
 
 def test_the_help_lists_every_command_that_works() -> None:
-    assert sorted(listed_commands()) == COMMANDS
+    assert listed_commands() == NAMES
+    assert set(NAMES) <= set(PROMISED)
+    assert len(NAMES) >= 8
 
 
-@pytest.mark.parametrize("command", COMMANDS)
+@pytest.mark.parametrize("command", NAMES)
 def test_the_help_of_a_command_holds_an_example_that_can_be_typed(command: str) -> None:
     done = call(command, "--help")
     assert done.status == 0
