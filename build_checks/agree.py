@@ -26,6 +26,7 @@ from build_checks.agree_limits import check_at_limits, check_beyond_limits
 from build_checks.agree_nearest import check_ties
 from build_checks.agree_random import check_far_turns, check_motion, check_random
 from build_checks.agree_search import check_search
+from build_checks.agree_steady import check_steady
 from build_checks.compile import Kinematics, Library, compiled
 from build_checks.reference import Reference
 from build_checks.report import AgreeReport, Check, CheckResult, Failure, Run, join_all
@@ -81,6 +82,7 @@ _WORK: dict[str, Work] = {
     "beyond limits": check_beyond_limits,
     "far turns": check_far_turns,
     "ties": check_ties,
+    "steady": check_steady,
     "motion": check_motion,
     "random": check_random,
     "search": check_search,
@@ -96,6 +98,7 @@ _FULL_SIZES = {
     "beyond limits": 4096,
     "far turns": 4096,
     "ties": 4096,
+    "steady": 4096,
 }
 
 

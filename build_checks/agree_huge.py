@@ -21,8 +21,8 @@ def check_huge(bench: Bench, rng: np.random.Generator, size: int) -> None:
     for exponent in _POSE_EXPONENTS:
         inspect(bench, _with_position(batch, rng, largest**exponent))
     inspect(bench, replace(_with_position(batch, rng, float(np.finfo(bench.c.real).tiny) / 4), kind="a tiny position"))
-    seeds = batch.seeds * np.asarray(largest**0.99, dtype=bench.c.real)
-    clipped = np.clip(seeds, -largest, largest)
+    seeds = batch.seeds * np.asarray(largest**0.9, dtype=bench.c.real)
+    clipped = np.clip(seeds, -(largest**0.9), largest**0.9)
     clipped[:, bench.reference.held] = batch.seeds[:, bench.reference.held]
     spread = replace(batch, seeds=clipped, kind="huge seeds")
     check_outputs(bench, spread, bench.c.inverse_all(spread.packed, spread.seeds))

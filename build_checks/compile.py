@@ -67,10 +67,15 @@ class NoCompilerError(LinkwrightError):
 
 @dataclass(frozen=True, slots=True)
 class Library:
-    """Where a compiled library lies and how it was generated: all that another process needs to open it."""
+    """Where a compiled library lies and how it was generated: all that another process needs to open it.
+
+    steady  every branch number stands for a posture; False where the C finds the roots of a quartic, whose numbers may
+            change between singularities (contract, section 2)
+    """
 
     path: str
     options: Options
+    steady: bool
 
 
 def find_compiler() -> str:
@@ -100,7 +105,8 @@ def compile_library(files: dict[str, str], options: Options, folder: Path, flags
     if done.returncode != 0:
         shown = "\n".join(done.stderr.splitlines()[:_SHOWN_LINES])
         raise CheckFailedError(Fault(f"{compiler}: {', '.join(sources)}", f"does not compile\n{shown}"))
-    return Library(str(folder / "checked.so"), options)
+    steady = not any(f"{options.prefix}_quartic" in text for text in files.values())
+    return Library(str(folder / "checked.so"), options, steady)
 
 
 def _definitions(options: Options) -> list[str]:
@@ -134,6 +140,7 @@ class Kinematics:
         self._library: Any = _opened(self._ffi, library.path)
         constants = np.zeros(11, dtype=np.intc)
         self._library.check_constants(self._pointer(constants))
+        self.steady = library.steady
         self.joints, self.branches = int(constants[0]), int(constants[1])
         self.numeric = bool(constants[10])
         self.faults = _interface_faults(constants, self.real.itemsize)

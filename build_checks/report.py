@@ -28,6 +28,7 @@ class Check(Enum):
     CLOSED = "each solution, as a new start, gives the same set"
     DISTINCT = "no two branches give one solution"
     BRANCH_OF = "branch_of and inverse give joint values back"
+    STEADY = "a branch number stands for one posture: it changes at singularities only"
     TURNS = "joints come back at the turn nearest to the seed within limits"
     LIMITS = "OVER_LIMIT exactly when a joint has no turn within limits"
     HELD = "held joints keep their seed"

@@ -118,6 +118,19 @@ def test_the_search_finds_what_a_missing_branch_lacks():
     assert agree(TURRET.arm, TURRET.files(fault=fault), TURRET.options(), thorough).result(Check.SEARCH).failed == 4
 
 
+def test_branch_numbers_that_change_places_are_seen():
+    """Forwards and backwards swapped on one side of the base, in inverse and branch_of alike.
+
+    Each still gives the other back, but a number is no posture any more.
+    """
+    files = TURRET.files(fault=("branch >= 2 ? -1.0 : 1.0", "(branch >= 2) != (pose->p[1] < 0) ? -1.0 : 1.0"))
+    own = "(out < 0.0 ? 2u : 0u)"
+    assert own in files["turret_kin.c"]
+    swapped = files["turret_kin.c"].replace(own, "((out < 0.0) != (sin((double)q[0]) * out < 0.0) ? 2u : 0u)")
+    report = agree(TURRET.arm, {**files, "turret_kin.c": swapped}, TURRET.options(), FEW)
+    assert [result.check for result in report.results if result.failed] == [Check.STEADY]
+
+
 def numeric(files: dict[str, str]) -> dict[str, str]:
     """The same C with a header that says that its inverse is numeric."""
     line = "#define TURRET_BRANCHES 4\n"
