@@ -66,6 +66,12 @@ class Link:
     theta: Angle
 
 
+def any_arm(structure: Structure, number: int) -> Arm:
+    """The arm of that number, whether it can do its task or not."""
+    rng = Random(f"{structure.name} {number}")
+    return _dressed(structure, _links(structure, rng), rng)
+
+
 def random_arm(structure: Structure, number: int) -> Arm:
     """The arm of that number; one that can do its task in almost every posture."""
     rng = Random(f"{structure.name} {number}")
