@@ -147,7 +147,7 @@ def _dressed(structure: Structure, links: list[Link], rng: Random) -> Arm:
         length_unit=rng.choice(("m", "mm")),
         angle_unit=rng.choice(("deg", "rad")),
     )
-    return _as_modified(arm) if rng.random() < 0.4 and _can_be_modified(arm) else arm
+    return as_modified(arm) if rng.random() < 0.4 and can_be_modified(arm) else arm
 
 
 def _joint(link: Link, number: int, rng: Random) -> JointRow:
@@ -194,12 +194,12 @@ def _tool(structure: Structure, rng: Random) -> Frame:
     return rng.choice((Frame(), Frame(any_point), Frame(any_point, (roll, pitch, yaw))))
 
 
-def _can_be_modified(arm: Arm) -> bool:
+def can_be_modified(arm: Arm) -> bool:
     """The last row's length and twist go into the tool; both a twist and a turned tool would need one odd frame."""
     return not arm.joints[-1].alpha or arm.tool == Frame()
 
 
-def _as_modified(arm: Arm) -> Arm:
+def as_modified(arm: Arm) -> Arm:
     """The same chain in a table of proximal frames: each length and twist moves one row on, the last into the tool."""
     lengths = [Fraction(0), *(row.a for row in arm.joints)]
     twists = [Angle(), *(row.alpha for row in arm.joints)]
