@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import shutil
+from importlib.util import find_spec
 
 import pytest
 
@@ -21,6 +22,13 @@ def need_programs(*programs: str) -> None:
     missing = [program for program in programs if shutil.which(program) is None]
     if missing:
         _without(f"not installed: {', '.join(missing)}")
+
+
+def need_packages(*packages: str) -> None:
+    """Python packages that exist for some systems only."""
+    missing = [package for package in packages if find_spec(package) is None]
+    if missing:
+        _without(f"no Python package {', '.join(missing)}")
 
 
 def _without(reason: str) -> None:
