@@ -15,6 +15,9 @@ from typing import Any
 from codegen.exact import MP, Real
 
 
+_NOISE = MP.mpf(10) ** -50
+
+
 class Op(Enum):
     CONSTANT = "constant"
     INPUT = "input"
@@ -158,6 +161,8 @@ class Builder:
         if len(measured) == 1 and not whole:
             return measured[0]
         total = sum((s * n.value for s, n in measured), MP.mpf(whole))
+        if abs(total) <= _NOISE * sum((abs(n.value) for _, n in measured), MP.mpf(abs(whole))):
+            return None  # an identity such as cos sin - sin cos: what is left is rounding of the 60 digits
         texts = [("-" if s < 0 else "+") + " " + _bracketed(n.label) for s, n in measured]
         if whole:
             texts.append(f"{'-' if whole < 0 else '+'} {abs(whole)}")
@@ -227,6 +232,10 @@ class Builder:
         if node.is_constant:
             return node if node.value >= 0 else self._negated_constant(node)
         return self._intern(("size", node.serial), op=Op.SIZE, args=(node,), stage=node.stage)
+
+    def sign(self, node: Node) -> Node:
+        """The sign of a constant: +1 or -1, but no part of the arm's structure."""
+        return self._derived(f"sign of {_bracketed(node.label)}", MP.mpf(1 if node.value >= 0 else -1))
 
     def choice(self, test: Node, above: Node, otherwise: Node) -> Node:
         """above where test > 0, else otherwise."""

@@ -116,7 +116,7 @@ class Scope:
             if all(re.fullmatch(r"[A-Za-z_][\w.]*", part) for part in parts):
                 return "_".join(part.replace(".", "_").lower() for part in parts)
         if node.op is Op.PRODUCT and node.args[0] is node.args[1] and node.args[0] in self.names:
-            return re.sub(r"work->|pose[.]|\W", "", self.names[node.args[0]]) + "_squared"
+            return re.sub(r"work->|\W", "", self.names[node.args[0]]) + "_squared"
         return self.builder.topics.get(node, "value")
 
     def value(self, node: Node) -> str:
@@ -162,6 +162,11 @@ class Scope:
             else:
                 parts.append(f"{'-' if sign < 0 else '+'} {text}")
         return " ".join(parts)
+
+    def factor(self, node: Node) -> str:
+        """The node as a factor of a product, everything it needs being named first."""
+        self.value(node)
+        return self._factor(node)
 
     def _factor(self, node: Node, tight: bool = False) -> str:
         text = self.text(node)

@@ -24,7 +24,7 @@ from codegen.places import TEMPLATES
 
 _HELPERS = (
     "abs", "sqrt", "sin_cos", "is_finite", "turn", "unit", "keep", "turns", "settle_turn", "settle_slide", "signed_root",
-    "turn_roots", "slide_roots", "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
+    "within", "all_usable", "tidy", "clean_rotation", "other_turn", "turn_roots", "slide_roots", "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
 )  # fmt: skip
 
 
@@ -118,6 +118,8 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
         "stages": [_stage_context(stage) for stage in stages],
         "fields": inverse.fields(),
         "reach": reach,
+        "reach_rotation": any(re.search(r"\br\[", line) for line in reach),
+        "reach_point": any(re.search(r"\bp\[", line) for line in reach),
         "branch_of": branch_of,
         "check": check.kind,
         "reads": check.reads,
@@ -138,6 +140,7 @@ def words(options: Options) -> dict[str, object]:
         "real": options.real,
         "zero": number(0),
         "half": number(0.5),
+        "one_and_half": number(1.5),
         "one": number(1),
         "two": number(2),
         "six": number(6),
@@ -162,6 +165,8 @@ def _stage_context(stage: StageText) -> dict[str, object]:
         "mask": f"0x{((1 << bits) - 1) << stage.shift:X}",
         "notes": stage.notes,
         "lines": stage.lines,
+        "reads_rotation": any(re.search(r"\br\[", line) for line in stage.lines),
+        "reads_point": any(re.search(r"\bp\[", line) for line in stage.lines),
     }
 
 

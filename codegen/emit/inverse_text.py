@@ -9,13 +9,14 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from codegen.emit.expression import Constants, Scope
+from codegen.emit.numbers import literal
 from codegen.emit.statements import Statements, step_roots
 from codegen.geometry import Pair
-from codegen.inverse.plan import BalanceStep, QuarticStep, SlideQuarticStep, Step
+from codegen.inverse.plan import BalanceStep, DirectionStep, Least, QuarticStep, SlideQuarticStep, Step
 from codegen.inverse.tasks import Derivation
 from codegen.names import joint_identifiers
 from codegen.options import Options
-from codegen.program import Node, Op
+from codegen.program import Node, Op, reachable
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,6 +59,7 @@ class InverseText:
         self.builder = self.goal.solver.builder
         self.stages = self._split()
         self.leaves = self._leaves()
+        self.unread = self._unread_pairs()
         self._find_carried()
 
     # -- the split into stages ---------------------------------------------------------------------------------------
@@ -82,6 +84,19 @@ class InverseText:
                     else:
                         found[value] = (value.name, number)
         return found
+
+    def _unread_pairs(self) -> frozenset[Pair]:
+        """Pairs of which no later step needs the cosine and sine: their angle is all that is wanted."""
+        steps = self.derivation.plan.steps
+        read = {node for step in steps for node in reachable(step_roots(step))}
+        return frozenset(
+            step.pair
+            for step in steps
+            if isinstance(step, DirectionStep)
+            and step.joint is not None
+            and step.least is Least.NOTHING
+            and not {step.pair.cosine, step.pair.sine} & read
+        )
 
     def _find_carried(self) -> None:
         """Values that one stage makes and a later one reads."""
@@ -130,9 +145,9 @@ class InverseText:
         for leaf, (name, made) in self.leaves.items():
             scope.names[leaf] = name if made == number else f"work->{name}"
         for i in range(3):
-            scope.names[self.goal.position[i]] = f"work->pose.p[{i}]"
+            scope.names[self.goal.position[i]] = f"p[{i}]"
             for j in range(3):
-                scope.names[self.goal.rotation[i][j]] = f"work->pose.r[{i}][{j}]"
+                scope.names[self.goal.rotation[i][j]] = f"r[{i}][{j}]"
         for index in self.goal.arm.held_indices:
             self._name_held(scope, index, number)
         for node, name in self.carried.items() if carried else ():
@@ -159,7 +174,7 @@ class InverseText:
         if prepared is not None:
             roots += _prepared_roots(prepared)
         scope = self.scope(number, roots + outgoing)
-        printer = Statements(scope, self.goal, self.options)
+        printer = Statements(scope, self.goal, self.options, self.unread)
         if number == 0:
             printer.held_joints()
         for step in steps:
@@ -211,6 +226,13 @@ class InverseText:
         misses = self.reach_misses()
         scope = self.scope(len(self.stages), [node for _, node in misses], carried=False)
         tests = []
+        for pair in sorted(self.unread, key=lambda pair: pair.cosine.name):
+            name = pair.cosine.name.removesuffix(".c")
+            if {pair.cosine, pair.sine} & set(reachable([node for _, node in misses])):
+                scope.put(f"{self.options.prefix}_pair {name};")
+                zero = literal(0, self.options.real)
+                scope.put(f"(void){self.options.prefix}_unit(work->{name}.c, work->{name}.s, {zero}, &{name});")
+                scope.names[pair.cosine], scope.names[pair.sine] = f"{name}.c", f"{name}.s"
         for measure, limit in (("length", "LEAST_MISS"), ("angle", "LEAST_TURN")):
             own = [node for kind, node in misses if kind == measure]
             for k, node in enumerate(own):

@@ -28,6 +28,8 @@ class JointValues:
     pairs: dict[Heading, Pair] = field(default_factory=dict)
 
     def pair(self, heading: Heading) -> Pair:
+        if len(heading) == 1 and heading[0][1] < 0:
+            return Space(self.builder).opposite(self.pair(((heading[0][0], 1),)))
         if len(heading) > 1 and not self.sums_well(heading):
             return cumulative_pair(Space(self.builder), lambda index: self.pair(((index, 1),)), heading)
         if heading not in self.pairs:

@@ -19,6 +19,8 @@ def rounded(value: Real | int | Fraction, real: RealType) -> float:
 def literal(value: Real | int | Fraction, real: RealType) -> str:
     """The shortest decimal that reads back to the rounded value, with the type's suffix."""
     nearest = rounded(value, real)
+    if real is RealType.FLOAT:
+        nearest = _as_float32(nearest)  # what is too small for the type is zero
     if real is RealType.DOUBLE:
         text = repr(nearest)
     else:

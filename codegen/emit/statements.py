@@ -25,6 +25,11 @@ from codegen.inverse.plan import (
 from codegen.options import Options
 from codegen.program import Node
 
+SQUARED = {  # the same for squares
+    Least.ANGLE: "LEAST_ANGLE * LEAST_ANGLE",
+    Least.LENGTH: "LEAST_LENGTH * LEAST_LENGTH",
+    Least.AREA: "LEAST_LENGTH * LEAST_LENGTH * REACH * REACH",
+}
 LEASTS = {
     Least.ANGLE: "LEAST_ANGLE",
     Least.ANGLE_SQUARED: "LEAST_ANGLE * LEAST_ANGLE",
@@ -41,7 +46,8 @@ def step_roots(step: Step) -> list[Node]:
             own = [step.x, step.y]
             return own if step.absorbed is None else [*own, step.absorbed.x, step.absorbed.y]
         case BalanceStep():
-            return [*([step.size] if step.size else []), step.target, step.square, step.x, step.y]
+            extra = [node for node in (step.size, step.flat) if node is not None]
+            return [*extra, step.target, step.square, step.x, step.y]
         case SlideStep():
             return [step.numerator, step.denominator]
         case SlideRootsStep():
@@ -59,6 +65,7 @@ class Statements:
     scope: Scope
     goal: Goal
     options: Options
+    unread: frozenset[Pair] = frozenset()
 
     def __post_init__(self) -> None:
         self.p = self.options.prefix
@@ -123,8 +130,13 @@ class Statements:
 
     def _direction(self, step: DirectionStep) -> None:
         x, y, name = self.scope.value(step.x), self.scope.value(step.y), self._name(step.pair)
-        self.put(f"{self.p}_pair {name};")
         least = LEASTS.get(step.least)
+        if least is None and step.pair in self.unread:
+            self.put(f"const {self.p}_pair {name} = {{{x}, {y}}};  /* not of length 1: only its angle is read */")
+            self._settle_turn(step.joint, name)
+            self._store(name)
+            return
+        self.put(f"{self.p}_pair {name};")
         if least is None:
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
             self._settle_turn(step.joint, name)
@@ -171,18 +183,24 @@ class Statements:
         name = self._name(step.pair)
         self.put(f"{self.p}_pair {name};")
         self.put(f"{self.p}_real {name}_root;")
-        target = self.scope.value(step.target)
-        square = self.scope.value(step.square)
+        target, square = self.scope.value(step.target), self.scope.value(step.square)
+        flat = self._flat(step)
         for side in (step.x, step.y):
             self._ready_without(side, step.root)
         if step.size is None:
-            self._root(name, square, "SLACK", self.zero if step.exact else "FLAT")
-            x, y = self.scope.text(step.x), self.scope.text(step.y)
-            self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
+            self._root(name, square, "SLACK", flat)
+            self.put(f"{name}.c = {self.scope.text(step.x)};")
+            self.put(f"{name}.s = {self.scope.text(step.y)};")
+            self.put(f"{self.p}_tidy(&{name});")
             self._settle_turn(step.joint, name)
         else:
-            self._balance_or_free(step, name, target, square)
+            self._balance_or_free(step, name, (target, square, flat))
         self._store(name)
+
+    def _flat(self, step: BalanceStep) -> str:
+        if step.flat is None:
+            return self.zero
+        return "FLAT" if step.flat.is_exactly(1) else f"FLAT * {self.scope.factor(step.flat)}"
 
     def _ready_without(self, node: Node, leaf: Node) -> None:
         """Name what the node needs apart from a leaf that is not known yet."""
@@ -194,15 +212,20 @@ class Statements:
             else:
                 self._ready_without(arg, leaf)
 
-    def _balance_or_free(self, step: BalanceStep, name: str, target: str, square: str) -> None:
+    def _balance_or_free(self, step: BalanceStep, name: str, values: tuple[str, str, str]) -> None:
         assert step.size is not None
-        size, least = self.scope.value(step.size), LEASTS[step.least]
-        self.put(f"if ({size} > {least}) {{")
+        target, square, flat = values
+        size, least, least_square = self.scope.value(step.size), LEASTS[step.least], SQUARED[step.least]
+        self.put(f"if ({size} > {least_square}) {{")
         self.scope.indent += "    "
-        flat = self.zero if step.exact else f"FLAT * {size} * {size}"
-        self._root(name, square, f"{size} * (SLACK * {size} + {least})", flat)
-        x, y = self.scope.text(step.x), self.scope.text(step.y)
-        self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
+        slack = f"SLACK * {size}"
+        if not step.target.is_exactly(0):
+            slack += f" + {least} * {self.p}_abs({target})"
+        self._root(name, square, slack, flat)
+        self.put(f"const {self.p}_real scale = {literal(1, self.options.real)} / {size};")
+        self.put(f"{name}.c = ({self.scope.text(step.x)}) * scale;")
+        self.put(f"{name}.s = ({self.scope.text(step.y)}) * scale;")
+        self.put(f"{self.p}_tidy(&{name});")
         self._settle_turn(step.joint, name)
         self.scope.indent = self.scope.indent[4:]
         if not step.target.is_exactly(0):
@@ -231,11 +254,8 @@ class Statements:
             self.put(f"    {name} = ({numerator}) / ({denominator});")
             if joint is not None:
                 self.put("    " + self._slide_text(joint, name))
-            self.put(f"}} else if ({self.p}_abs({numerator}) > LEAST_LENGTH) {{")
-            self.put("    work->marks |= MARK_OUT_OF_REACH;")
-            self.put("    return;")
-            self.put("} else {  /* the pose leaves it free: it keeps its seed */")
-            self.put("    work->marks |= MARK_FREE;")
+            self.put("} else {  /* it keeps its seed; whether the others make up for that is checked */")
+            self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
             if joint is not None:
                 offset = self.goal.chain.joints[joint].offset
                 self.put(f"    {name} = {self._with_offset(f'work->seed[{joint}]', offset)};")

@@ -14,8 +14,8 @@ from codegen.exact import MP, Angle
 from codegen.model import Arm, JointKind
 from codegen.options import Options
 
-FREE, FREE_TURN, SLACK, STEP, MISS, TURN, EXCESS = 16, 40, 4096, 8, 20, 40, 8
-FLAT = 8
+FREE, FREE_TURN, SLACK, STEP, EXCESS, FLAT = 16, 40, 4096, 8, 16, 8
+MISS = {24: (24, 48), 53: (120, 240)}  # by significand bits: of the reach, and of a rotation's entries
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
@@ -33,21 +33,24 @@ def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
     """(name, literal, comment)."""
     u, reach = options.real.rounding, reach_of(arm)
     high, low = _full_turn(options)
+    miss, turn = MISS[options.real.bits]
 
     def row(name: str, value: object, comment: str) -> tuple[str, str, str]:
         return name, literal(value, options.real), comment
 
     return [
+        row("LARGEST", Fraction(2) ** (120 if options.real.bits < 30 else 1016), "rad or m: a joint value beyond it is none"),
         row("REACH", reach, "m, all links end to end"),
         row("FAR", FAR * (reach + _base_distance(arm)), "m, farther than any pose worth trying"),
         row("LEAST_LENGTH", FREE * u * reach, "m, a distance from an axis below which it is zero"),
         row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
         row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
-        row("LEAST_MISS", MISS * u * reach, "m, a clamped solution may miss the point by this"),
-        row("LEAST_TURN", TURN * u, "and the rotation by this, all entries' squares added up"),
+        row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
+        row("LEAST_TURN", turn * u, "and the rotation by this, all entries' squares added up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
+        row("HALF_TURN", MP.pi, "pi"),
         row("TURNS_PER_RADIAN", 1 / (2 * MP.pi), "1 / (2 pi)"),
         row("FULL_TURN", high, "2 pi in two parts: this one is exact when multiplied"),
         row("FULL_TURN_REST", low, "and what is left of it"),

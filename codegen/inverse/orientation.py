@@ -66,7 +66,7 @@ def _height_equation(solver: Solver, problem: DirectionProblem) -> Balance:
     cosine_part = b.add(b.mul(a[0], n[0]), b.mul(a[1], n[1]))
     sine_part = b.sub(b.mul(a[1], n[0]), b.mul(a[0], n[1]))
     target = b.sub(v[2], b.mul(a[2], n[2]))
-    return Balance(cosine_part, sine_part, target, Least.ANGLE, square_by_radius(solver, a, n[2], v))
+    return Balance(cosine_part, sine_part, target, Least.ANGLE, square_by_radius(solver, a, n[2], v), exact=True)
 
 
 def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what: str) -> bool:
@@ -81,7 +81,7 @@ def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what:
         left = space.product(space.transposed(solver.motion(use).rotation), left)
         left = space.product(space.transposed(core.middle.rotation), left)
     solver.direction(
-        segment.uses[2], left[0][0], left[1][0], Least.ANGLE,
+        segment.uses[2], left[0][0], left[1][0], Least.NOTHING,
         f"{what}: {solver.label(segment.uses[2].joint.index)} makes up the turn that is left over",
     )  # fmt: skip
     return True
@@ -90,23 +90,31 @@ def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what:
 def solve_slides(
     solver: Solver, uses: tuple[Use, ...], axes: list[Vector], gap: Vector, what: str, normal: Vector | None
 ) -> bool:
-    """One, two or three slides along known directions that add up to `gap` (Cramer's rule).
+    """One, two or three slides along known directions that add up to `gap`.
+
+    Each takes the part of the gap that the others behind it cannot reach, along the direction across them; what is left
+    goes to the next (backward stable, and a slide that keeps its seed leaves its part to the others).
 
     normal  for two slides: the direction that neither needs to reach
     """
     space = solver.space
-    directions = list(axes)
-    if len(directions) == 2:
-        if normal is None:
-            return False
-        directions.append(normal)
-    if len(directions) == 1:
-        solver.slide(uses[0], space.dot(axes[0], gap), space.one, what)
-        return True
-    det = space.dot(directions[0], space.cross(directions[1], directions[2]))
-    if solver.oracle.vanishes(det):
+    across = _across(solver, axes, normal)
+    if across is None or any(solver.oracle.vanishes(space.dot(a, n)) for a, n in zip(axes, across, strict=True)):
         return False
-    for k, use in enumerate(uses):
-        others = (directions[(k + 1) % 3], directions[(k + 2) % 3])
-        solver.slide(use, space.dot(gap, space.cross(*others)), det, f"{what}: {solver.label(use.joint.index)}")
+    for use, axis, direction in zip(uses, axes, across, strict=True):
+        name = solver.label(use.joint.index)
+        space.named(gap, f"{name}_gap", f"{what}: still to go when {name} is solved; m")
+        value = solver.slide(use, space.dot(gap, direction), space.dot(axis, direction), f"{what}: {name}")
+        gap = space.minus(gap, space.scaled(axis, value))
     return True
+
+
+def _across(solver: Solver, axes: list[Vector], normal: Vector | None) -> list[Vector] | None:
+    """Per slide a direction that the slides behind it do not reach."""
+    space = solver.space
+    if len(axes) == 1:
+        return [axes[0]]
+    if len(axes) == 2:
+        return None if normal is None else [space.cross(axes[1], normal), axes[1]]
+    plane = space.cross(axes[1], axes[2])
+    return [plane, space.cross(axes[2], plane), axes[2]]

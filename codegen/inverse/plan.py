@@ -60,11 +60,12 @@ class DirectionStep:
 class BalanceStep:
     """c A + s B = C: two roots, by the sign of A s - B c (Paul 1981; Craig, "transcendental equations").
 
-    size    sqrt(A^2 + B^2); None where A and B are constants, scaled to 1: the joint is then never free
-    square  size^2 - C^2 in a form that keeps its digits; root is its signed square root, made known by the step
-    x, y    the direction of (c, s): (A C - B root, B C + A root)
+    size    A^2 + B^2; None where A and B are constants, scaled to 1: the joint is then never free
+    square  A^2 + B^2 - C^2 in a form that keeps its digits; root is its signed square root, made known by the step
+    x, y    size times (c, s): (A C - B root, B C + A root)
     side    A s - B c
-    exact   the square keeps its digits down to zero, where the axes of two joints line up
+    flat    times a few roundings: a square up to this is zero but for rounding, and taking it as zero costs no accuracy;
+            None where the square keeps its digits down to zero and every one of them counts
     """
 
     joint: int | None
@@ -81,7 +82,7 @@ class BalanceStep:
     side: Node
     meaning: str
     note: str
-    exact: bool = False
+    flat: Node | None = None
     roots: int = 2
 
 

@@ -30,7 +30,7 @@ def _last_turns(solver: Solver, group: Segment, goal: Rigid, what: str) -> bool:
         return False
     left = _left_over(solver, group.part(0, 2), group, goal)
     solver.direction(
-        group.uses[2], left.rotation[0][0], left.rotation[1][0], Least.ANGLE,
+        group.uses[2], left.rotation[0][0], left.rotation[1][0], Least.NOTHING,
         f"{what}: {solver.label(group.uses[2].joint.index)} makes up the turn that is left over",
     )  # fmt: skip
     return True
@@ -51,7 +51,7 @@ def _only_middle_turns(solver: Solver, group: Segment, goal: Rigid, what: str) -
     left, right = (core.whole(space) for core in group.cores)
     turn = space.product(space.transposed(left.rotation), goal.rotation)
     turn = space.product(turn, space.transposed(right.rotation))
-    solver.direction(group.uses[1], turn[0][0], turn[1][0], Least.ANGLE, f"{what}: the turn")
+    solver.direction(group.uses[1], turn[0][0], turn[1][0], Least.NOTHING, f"{what}: the turn")
     motion = space.compose(left, solver.motion(group.uses[1]), right)
     axes = [space.unit[2], space.column(motion.rotation, 2)]
     gap = space.minus(goal.shift, motion.shift)
@@ -115,7 +115,7 @@ def _turn_then_slides(solver: Solver, group: Segment, goal: Rigid, what: str) ->
         behind = space.compose(behind, core.whole(space))
     turn = space.product(space.transposed(before.rotation), goal.rotation)
     turn = space.product(turn, space.transposed(behind.rotation))
-    solver.direction(group.uses[k], turn[0][0], turn[1][0], Least.ANGLE, f"{what}: the turn")
+    solver.direction(group.uses[k], turn[0][0], turn[1][0], Least.NOTHING, f"{what}: the turn")
     axes, rest = axes_now(solver, group)
     slides = [i for i in range(4) if i != k]
     chosen = tuple(group.uses[i] for i in slides)

@@ -173,12 +173,37 @@ class SecondJoint:
 
 
     def _kept_balance(self, solver: Solver, equation: Equation) -> Balance:
-        """The equation; where the axes meet, with its discriminant in the form that is good near the first axis."""
+        """The equation, with its discriminant in the form that keeps its digits."""
         balance = _balance(solver, equation, self.u)
         _, p, core, first = _inner_data(solver, self.problem)
-        if first.turns and self.which == 0 and solver.oracle.vanishes(*core.middle.shift):
-            return replace(balance, square=square_by_radius(solver, equation.a, self.u[2], p))
+        if not first.turns:
+            return balance
+        if self.which == 0 and solver.oracle.vanishes(*core.middle.shift):
+            return replace(balance, square=square_by_radius(solver, equation.a, self.u[2], p), exact=True)
+        if self.which == 1 and _parallel_axes(core) and not balance.fixed:
+            return replace(balance, square=_triangle_square(solver, core.middle.shift, self.u, p))
         return balance
+
+
+def _parallel_axes(core: Core) -> bool:
+    row = core.middle.rotation[2]
+    return row[0].is_exactly(0) and row[1].is_exactly(0)
+
+
+def _triangle_square(solver: Solver, t: Vector, u: Vector, p: Vector) -> Node:
+    """A^2 + B^2 - C^2 of a triangle with sides a, b and the distance c, by its factors (Heron): it keeps its digits where
+    the triangle is flat."""
+    b = solver.builder
+    first = b.sqrt(_square_xy(solver, t))
+    second = b.sqrt(_square_xy(solver, u))
+    across = _square_xy(solver, p)
+    stretched = b.sub(b.square(b.add(first, second)), across)
+    folded = b.sub(across, b.square(b.sub(first, second)))
+    return b.mul(b.half(stretched), b.half(folded))
+
+
+def _square_xy(solver: Solver, v: Vector) -> Node:
+    return solver.builder.add(solver.builder.square(v[0]), solver.builder.square(v[1]))
 
 
 def _rhs(solver: Solver, equation: Equation) -> Node:
@@ -199,8 +224,18 @@ def _second_joint(solver: Solver, problem: PointProblem) -> SecondJoint | None:
     inner = problem.segment.uses[1]
     algebra = Algebra(solver.builder, inner.turns)
     one, two = point_equations(solver, first, core, algebra.constant(solver.space.dot(u, u)), p, algebra)
+    if first.turns and _parallel_axes(core):
+        two = _distance_across(solver, core, u, p, algebra)
     found = _turning_kind(solver, (one, two), u) if inner.turns else _sliding_kind(solver, (one, two))
     return None if found is None else SecondJoint(problem, u, (one, two), *found)
+
+
+def _distance_across(solver: Solver, core: Core, u: Vector, p: Vector, algebra: Algebra) -> Equation:
+    """Parallel axes: the distance from the first axis, without the heights, which are equal and would only cost digits."""
+    b, zero = solver.builder, solver.space.zero
+    back = solver.space.negative(solver.space.inverse(core.middle).shift)
+    known = b.sub(b.sub(_square_xy(solver, p), _square_xy(solver, core.middle.shift)), _square_xy(solver, u))
+    return Equation((back[0], back[1], zero), algebra.constant(b.half(known)), Least.AREA)
 
 
 def _turning_kind(solver: Solver, equations: tuple[Equation, Equation], u: Vector) -> tuple[str, int, int] | None:

@@ -35,6 +35,10 @@ class Balance:
     """The equation A c + B s = C of one turning joint, before it is solved.
 
     square  A^2 + B^2 - C^2 where a better form of it is known
+    exact   that form keeps its digits down to zero, where the axes of two joints line up
+
+    With lengths on both sides (AREA) a point is brought to a distance. Where C is negative the distance is the shortest
+    that there is, near zero when the two links are alike: there a square near zero must keep its digits.
     """
 
     cosine_part: Node
@@ -42,6 +46,7 @@ class Balance:
     target: Node
     least: Least
     square: Node | None = None
+    exact: bool = False
 
     @property
     def fixed(self) -> bool:
@@ -149,17 +154,19 @@ class Solver:
         if use.sign < 0:
             b_part = b.neg(b_part)
         size: Node | None = None
+        flat: Node = b.integer(1)
         if equation.fixed:
             scale = self._signed_size(a_part, b_part)
             a_part, b_part = self._scaled_part(a_part, scale), self._scaled_part(b_part, scale)
             target = b.div(target, scale)
             below, above = b.sub(b.integer(1), target), b.add(b.integer(1), target)
             square = b.mul(below, above) if equation.square is None else b.div(equation.square, b.square(scale))
+            if equation.least is Least.AREA:
+                flat = b.mul(target, b.sign(scale))
         else:
-            size = b.sqrt(b.add(b.square(a_part), b.square(b_part)))
-            square = equation.square
-            if square is None:
-                square = b.mul(b.sub(size, target), b.add(size, target))
+            size = b.add(b.square(a_part), b.square(b_part))
+            square = b.sub(size, b.square(target)) if equation.square is None else equation.square
+            flat = b.mul(target, b.size(target)) if equation.least is Least.AREA else size
         name = self.label(use.joint.index)
         b.named(target, f"{name}_target", "what the pair of the joint must add up to" if size is None else "")
         b.named(square, f"{name}_square")
@@ -185,7 +192,7 @@ class Solver:
                 side=b.sub(b.mul(a_part, pair.sine), b.mul(b_part, pair.cosine)),
                 meaning=self._side_meaning(use, a_part, b_part),
                 note=note,
-                exact=equation.square is not None,
+                flat=None if equation.exact else flat,
             )
         )
         self.pairs[use.joint.index] = pair
