@@ -11,6 +11,8 @@ import multiprocessing
 import os
 import zlib
 from collections.abc import Callable, Iterable, Iterator
+from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures.process import BrokenProcessPool
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
 
@@ -19,7 +21,7 @@ import numpy as np
 from build_checks.agree_atan2 import check_atan2
 from build_checks.agree_bench import Bench
 from build_checks.agree_budget import budget_of
-from build_checks.agree_edges import check_degenerate, check_right_angles, check_unreachable
+from build_checks.agree_edges import check_degenerate, check_right_angles, check_unreachable, check_unstated
 from build_checks.agree_huge import check_huge
 from build_checks.agree_inputs import check_inputs
 from build_checks.agree_limits import check_at_limits, check_beyond_limits
@@ -30,6 +32,7 @@ from build_checks.agree_steady import check_steady
 from build_checks.compile import Kinematics, Library, compiled
 from build_checks.reference import Reference
 from build_checks.report import AgreeReport, Check, CheckResult, Failure, Run, join_all
+from codegen.errors import CheckFailedError, Fault
 from codegen.model import Arm
 from codegen.options import Options
 
@@ -78,6 +81,7 @@ _WORK: dict[str, Work] = {
     "right angles": check_right_angles,
     "degenerate": check_degenerate,
     "unreachable": check_unreachable,
+    "unstated": check_unstated,
     "at limits": check_at_limits,
     "beyond limits": check_beyond_limits,
     "far turns": check_far_turns,
@@ -94,6 +98,7 @@ _FULL_SIZES = {
     "right angles": 4096,
     "degenerate": 2048,
     "unreachable": 2048,
+    "unstated": 1024,
     "at limits": 4096,
     "beyond limits": 4096,
     "far turns": 4096,
@@ -213,8 +218,13 @@ def _mapper(arm: Arm, library: Library, settings: Settings) -> Iterator[Mapped]:
         yield lambda work: map(_run_unit, work)
         return
     context = multiprocessing.get_context("spawn")
-    with context.Pool(processes, initializer=_open_bench, initargs=(arm, library)) as pool:
-        yield lambda work: pool.imap(_run_unit, work)
+    with ProcessPoolExecutor(processes, context, _open_bench, (arm, library)) as pool:
+        try:
+            yield lambda work: pool.map(_run_unit, work)
+        except BrokenProcessPool:
+            raise CheckFailedError(Fault("compiled C", "ended the process that called it", "a wild pointer?")) from None
+        finally:
+            pool.shutdown(cancel_futures=True)
 
 
 def _processors() -> int:
@@ -239,4 +249,5 @@ def _run_unit(job: tuple[int, Unit]) -> list[CheckResult]:
     rng = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(place, unit.index)))
     with np.errstate(all="ignore"):  # what comes out is judged, whatever the arithmetic met on the way
         _WORK[unit.work](bench, rng, unit.size)
+    bench.judge_overruns()
     return bench.tally.results

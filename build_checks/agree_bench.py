@@ -147,7 +147,13 @@ class Bench:
         """The same with nothing counted."""
         other = copy.copy(self)
         other.tally = Tally()
+        self.c.calls, self.c.overruns = 0, 0
         return other
+
+    def judge_overruns(self) -> None:
+        """Of all calls so far: whether one wrote past the end of an output."""
+        failure = Failure("an output's next row was written", {}) if self.c.overruns else None
+        self.tally.add(CheckResult(Check.OVERRUN, self.c.calls, self.c.overruns, failure=failure))
 
     def random_joints(self, rng: np.random.Generator, size: int) -> Array:
         """Joint vectors within the span that the C's number type holds exactly."""

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from build_checks.agree_bench import SOLVED, Bench, any_in_row, is_in
+from build_checks.agree_bench import SOLVED, Bench, any_in_row, flatten, is_in
 from build_checks.agree_poses import Degenerate, classify, degenerate, response, right_angles
 from build_checks.agree_sets import check_branch_of, check_known
 from build_checks.agree_solutions import inspect, named
@@ -15,6 +15,7 @@ from build_checks.compile import Status
 from build_checks.reference import Array, Poses
 from build_checks.reference_task import length
 from build_checks.report import Check, Failure
+from codegen.model import Task
 
 _STRETCH = 2.0  # the accuracy promise is doubled at singular and boundary poses
 _SEEDS = 3  # different seeds for every singular pose
@@ -133,6 +134,34 @@ def _across_folds(bench: Bench, rng: np.random.Generator, places: Degenerate) ->
     targets = bench.reading.moved(bench.reference.chain(q), steps[:, :3] * bench.reference.reach, steps[:, 3:])
     batch = bench.batch(q, _seeds(bench, rng, q), "moved across the edge of the reach", _STRETCH)
     inspect(bench, replace(batch, packed=bench.c.pack(targets)))
+
+
+def check_unstated(bench: Bench, rng: np.random.Generator, size: int) -> None:
+    """Poses whose tool axis stands square to where the task reads its angle: only the position is stated.
+
+    The contract does not say which status that is; a solution must be one.
+    """
+    q = bench.random_joints(rng, size)
+    chain = bench.reference.chain(q)
+    axis = {Task.POINT_PITCH: 2, Task.POINT_YAW: 0}.get(bench.reading.task)
+    if axis is None:
+        return
+    square = bench.reading.normals(chain) if axis == 2 else np.broadcast_to([0.0, 0.0, 1.0], (size, 3))
+    rotation = chain.tool.rotation.copy()
+    rotation[:, :, axis] = square * rng.choice([-1.0, 1.0], (size, 1))
+    batch = bench.batch(q, _seeds(bench, rng, q), "a pose that states no angle")
+    batch = replace(batch, packed=bench.c.pack(Poses(rotation, chain.tool.position)))
+    found = bench.c.inverse_all(batch.packed, batch.seeds)
+    flat = flatten(found)
+    position, _ = bench.reading.errors(batch.poses.take(flat.rows), bench.reference.chain(flat.q))
+    allowed, _ = bench.budgets(batch, flat.rows, flat.q)
+
+    def describe(index: int) -> Failure:
+        row = int(flat.rows[index])
+        what = f"branch {flat.branches[index]} misses the position by {position[index]:.3g} m"
+        return Failure(what, bench.details(batch, row, statuses=found.status[row], joints_found=flat.q[index]))
+
+    bench.tally.judge(Check.EDGE_TRIP, ~(position <= 2 * allowed), describe)
 
 
 def check_unreachable(bench: Bench, rng: np.random.Generator, size: int) -> None:

@@ -13,7 +13,7 @@ _HALVINGS = 24
 
 
 def check_steady(bench: Bench, rng: np.random.Generator, size: int) -> None:
-    """Finds where the branch changes on straight lines between random joint vectors, and looks at the Jacobian there."""
+    """Finds where the branch changes on lines between random joint vectors, and looks at the Jacobian there."""
     if bench.c.numeric or not bench.c.steady or bench.c.branches < 2:
         return
     start, end = bench.random_joints(rng, size), bench.random_joints(rng, size)

@@ -141,6 +141,7 @@ class Kinematics:
         constants = np.zeros(11, dtype=np.intc)
         self._library.check_constants(self._pointer(constants))
         self.steady = library.steady
+        self.calls, self.overruns = 0, 0  # batches called, and those that wrote past the end of an output
         self.joints, self.branches = int(constants[0]), int(constants[1])
         self.numeric = bool(constants[10])
         self.faults = _interface_faults(constants, self.real.itemsize)
@@ -148,9 +149,17 @@ class Kinematics:
     def _pointer(self, array: AnyArray) -> Any:
         return self._ffi.cast("void *", array.ctypes.data)
 
-    def _call(self, name: str, *arrays: AnyArray) -> None:
-        """One batch: as many items as the first array has rows; every array must be contiguous and of the C's type."""
-        getattr(self._library, name)(len(arrays[0]), *map(self._pointer, arrays))
+    def _call(self, name: str, inputs: tuple[AnyArray, ...], outputs: tuple[AnyArray, ...]) -> None:
+        """One batch: as many items as the first input has rows; every array must be contiguous and of the C's type.
+
+        The outputs are one row longer than the batch: that row must stay as it was.
+        """
+        guards = [output[-1:].copy() for output in outputs]
+        getattr(self._library, name)(len(inputs[0]), *map(self._pointer, (*inputs, *outputs)))
+        self.calls += 1
+        self.overruns += any(
+            output[-1:].tobytes() != guard.tobytes() for output, guard in zip(outputs, guards, strict=True)
+        )
 
     def rounded(self, values: Array) -> AnyArray:
         """Contiguous and in the C's number type."""
@@ -165,50 +174,50 @@ class Kinematics:
         wide = packed.astype(np.float64)
         return Poses(wide[:, :9].reshape(-1, 3, 3), wide[:, 9:])
 
-    def _canaries(self, *shape: int) -> AnyArray:
-        return np.full(shape, CANARY, dtype=self.real)
+    def _canaries(self, count: int, *shape: int) -> AnyArray:
+        return np.full((count + 1, *shape), CANARY, dtype=self.real)
 
     def forward(self, q: AnyArray) -> tuple[AnyArray, Integers]:
         """Packed poses [N, 12] and statuses [N]."""
         poses, statuses = self._canaries(len(q), 12), _unwritten(len(q))
-        self._call("check_forward", self.rounded(q), poses, statuses)
-        return poses, statuses.astype(np.int64)
+        self._call("check_forward", (self.rounded(q),), (poses, statuses))
+        return poses[:-1], _wide(statuses)
 
     def jacobian(self, q: AnyArray) -> tuple[AnyArray, Integers]:
         """Jacobians [N, 6, n] and statuses [N]."""
         matrices, statuses = self._canaries(len(q), 6, self.joints), _unwritten(len(q))
-        self._call("check_jacobian", self.rounded(q), matrices, statuses)
-        return matrices, statuses.astype(np.int64)
+        self._call("check_jacobian", (self.rounded(q),), (matrices, statuses))
+        return matrices[:-1], _wide(statuses)
 
     def inverse(self, poses: AnyArray, branches: Integers, seeds: AnyArray) -> tuple[AnyArray, Integers]:
         """Joint values [N, n] and statuses [N] of one branch of each packed pose."""
         q, statuses = self._canaries(len(poses), self.joints), _unwritten(len(poses))
         numbers = np.ascontiguousarray(branches, dtype=np.uintc)
-        self._call("check_inverse", self.rounded(poses), numbers, self.rounded(seeds), q, statuses)
-        return q, statuses.astype(np.int64)
+        self._call("check_inverse", (self.rounded(poses), numbers, self.rounded(seeds)), (q, statuses))
+        return q[:-1], _wide(statuses)
 
     def inverse_all(self, poses: AnyArray, seeds: AnyArray) -> Branches:
         q, statuses = self._canaries(len(poses), self.branches, self.joints), _unwritten(len(poses), self.branches)
-        solved = np.zeros(len(poses), dtype=np.uintc)
-        self._call("check_inverse_all", self.rounded(poses), self.rounded(seeds), q, statuses, solved)
-        return Branches(q, statuses.astype(np.int64), solved.astype(np.int64))
+        solved = np.full(len(poses) + 1, CANARY_BRANCH, dtype=np.uintc)
+        self._call("check_inverse_all", (self.rounded(poses), self.rounded(seeds)), (q, statuses, solved))
+        return Branches(q[:-1], _wide(statuses), _wide(solved))
 
     def inverse_nearest(self, poses: AnyArray, seeds: AnyArray) -> tuple[AnyArray, Integers, Integers]:
         """Joint values [N, n], branches [N] and statuses [N]."""
         q, statuses = self._canaries(len(poses), self.joints), _unwritten(len(poses))
-        branches = np.full(len(poses), CANARY_BRANCH, dtype=np.uintc)
-        self._call("check_inverse_nearest", self.rounded(poses), self.rounded(seeds), q, branches, statuses)
-        return q, branches.astype(np.int64), statuses.astype(np.int64)
+        branches = np.full(len(poses) + 1, CANARY_BRANCH, dtype=np.uintc)
+        self._call("check_inverse_nearest", (self.rounded(poses), self.rounded(seeds)), (q, branches, statuses))
+        return q[:-1], _wide(branches), _wide(statuses)
 
     def branch_of(self, q: AnyArray) -> Integers:
-        branches = np.full(len(q), CANARY_BRANCH, dtype=np.uintc)
-        self._call("check_branch_of", self.rounded(q), branches)
-        return branches.astype(np.int64)
+        branches = np.full(len(q) + 1, CANARY_BRANCH, dtype=np.uintc)
+        self._call("check_branch_of", (self.rounded(q),), (branches,))
+        return _wide(branches)
 
     def atan2(self, y: AnyArray, x: AnyArray) -> AnyArray:
-        angles = np.zeros(len(y), dtype=self.real)
-        self._call("check_atan2", self.rounded(y), self.rounded(x), angles)
-        return angles
+        angles = self._canaries(len(y))
+        self._call("check_atan2", (self.rounded(y), self.rounded(x)), (angles,))
+        return angles[:-1]
 
 
 def _opened(ffi: Any, path: str) -> Any:
@@ -219,8 +228,13 @@ def _opened(ffi: Any, path: str) -> Any:
         raise CheckFailedError(Fault("compiled C", f"cannot be loaded: {error}")) from None
 
 
-def _unwritten(*shape: int) -> npt.NDArray[np.intc]:
-    return np.full(shape, UNWRITTEN, dtype=np.intc)
+def _unwritten(count: int, *shape: int) -> npt.NDArray[np.intc]:
+    return np.full((count + 1, *shape), UNWRITTEN, dtype=np.intc)
+
+
+def _wide(values: AnyArray) -> Integers:
+    """Without the row that guards the end."""
+    return values[:-1].astype(np.int64)
 
 
 def _interface_faults(constants: AnyArray, size: int) -> tuple[str, ...]:

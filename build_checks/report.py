@@ -36,6 +36,7 @@ class Check(Enum):
     NEAREST = "inverse_nearest takes the solution soonest reached"
     UNTOUCHED = "a status without a solution leaves the outputs alone"
     FINITE = "no NaN, no infinity and no unknown status comes out"
+    OVERRUN = "no function writes past the end of its outputs"
     FREE_JOINT = "a pose that leaves a joint free gives SINGULAR"
     NOT_FREE = "SINGULAR only where a joint is free, and it keeps its seed"
     EDGE = "poses at singularities and at the edge of the reach are solved"

@@ -66,6 +66,11 @@ TURRET_FAULTS = [
     ("within ? fmin(highest, fmax(lowest, nearest)) : nearest", "nearest", Check.TURNS),
     ("within ? fmin(highest, fmax(lowest, nearest)) : nearest", "0.0", Check.TURNS),
     ("fmax(lowest, nearest)) : nearest", "fmax(lowest, nearest)) : 0.0", Check.TURNS),
+    (
+        "for (int i = 0; i < 3; ++i) {\n                q[i]",
+        "for (int i = 0; i < 4; ++i) {\n                q[i]",
+        Check.OVERRUN,
+    ),
     ("branch >= TURRET_BRANCHES", "branch > TURRET_BRANCHES", Check.BAD_BRANCH),
     ("status[branch] == TURRET_SINGULAR;", "status[branch] == TURRET_OVER_LIMIT;", Check.ALL),
     ("{0.0, -c1, -c1}", "{0.0, c1, -c1}", Check.JACOBIAN),
@@ -244,6 +249,15 @@ def test_c_that_calls_what_nobody_defines_is_a_failed_check():
     fault = ("return (turret_real)atan2(", "double elsewhere(double, double);\n    return (turret_real)elsewhere(")
     with pytest.raises(CheckFailedError, match="cannot be loaded"):
         agree(TURRET.arm, TURRET.files(fault=fault), TURRET.options(), FEW)
+
+
+def test_c_that_crashes_is_a_failed_check():
+    """In a process of its own; the run neither hangs nor dies."""
+    crash = "    if (branch == 3) {\n        *(volatile int *)0 = 1;\n    }\n"
+    place = "    const double radius = hypot(x, y);\n"
+    settings = Settings(samples=20_000, processes=2)
+    with pytest.raises(CheckFailedError, match="ended the process"):
+        agree(TURRET.arm, TURRET.files(fault=(place, crash + place)), TURRET.options(), settings)
 
 
 def test_no_compiler_is_said_with_the_remedy(monkeypatch):
