@@ -139,7 +139,7 @@ def pose_columns(carrier: Carrier, columns: tuple[int, ...]) -> tuple[dict[int, 
 def pose_nodes(carrier: Carrier) -> PoseNodes:
     """The tool pose in the fewest operations: all three columns carried, or two and their cross product."""
     space = carrier.space
-    candidates = []
+    candidates: list[tuple[int, int, PoseNodes]] = []
     for kept in ((0, 1, 2), (0, 1), (1, 2), (0, 2)):
         columns, point = pose_columns(carrier, kept)
         for missing in {0, 1, 2} - set(kept):

@@ -46,6 +46,7 @@ class Task(Enum):
         self.matches = matches
 
 
+_NO_LENGTH, _NO_ANGLE = Fraction(0), Angle()
 Quantity = Fraction | Angle  # a length (m) or an angle, by the kind of its joint
 
 
@@ -61,10 +62,10 @@ class JointRow:
 
     name: str
     kind: JointKind
-    a: Fraction = Fraction(0)
-    alpha: Angle = Angle()
-    d: Fraction = Fraction(0)
-    theta: Angle = Angle()
+    a: Fraction = _NO_LENGTH
+    alpha: Angle = _NO_ANGLE
+    d: Fraction = _NO_LENGTH
+    theta: Angle = _NO_ANGLE
     limits: tuple[Quantity, Quantity] | None = None
     max_speed: Quantity | None = None
 

@@ -14,7 +14,6 @@ from typing import Any
 
 from codegen.exact import MP, Real
 
-
 _NOISE = MP.mpf(10) ** -50
 
 

@@ -91,7 +91,7 @@ class MotionText:
     def _function(self, targets: list[tuple[str, Node]]) -> list[str]:
         scope = Scope(self.builder, self.constants, self.options, taken=set(self.reserved))
         scope.plan_uses([node for _, node in targets])
-        used = {node for node in scope.uses}
+        used = set(scope.uses)
         for heading, pair in self.values.pairs.items():
             if pair.cosine in used or pair.sine in used:
                 self._declare_pair(scope, heading)

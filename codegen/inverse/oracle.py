@@ -48,7 +48,7 @@ class Oracle:
 
     def _vanishes(self, node: Node) -> bool:
         if node.is_constant:
-            return abs(node.value) < _NOTHING
+            return bool(abs(node.value) < _NOTHING)
         return all(abs(self._value(node, values)) < _NOTHING for values in self._values)
 
     def sample(self, node: Node) -> Real:

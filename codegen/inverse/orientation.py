@@ -9,7 +9,6 @@ from codegen.inverse.elimination import square_by_radius
 from codegen.inverse.plan import Least
 from codegen.inverse.segment import Segment, Use
 from codegen.inverse.solver import Balance, Solver
-from codegen.program import Node
 
 
 @dataclass(frozen=True, slots=True)

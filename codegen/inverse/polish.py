@@ -25,10 +25,8 @@ def slope_at(solver: Solver, poly: Poly, where: Pair | Node) -> Node:
     b = solver.builder
     terms = []
     for (i, j), k in poly.terms:
-        if isinstance(where, Pair):
-            lowered = [((i - 1, j + 1), -i), ((i + 1, j - 1), j)]
-        else:
-            lowered = [((i - 1, j), i)]
+        angle_terms = [((i - 1, j + 1), -i), ((i + 1, j - 1), j)]
+        lowered = angle_terms if isinstance(where, Pair) else [((i - 1, j), i)]
         for monomial, factor in lowered:
             if factor:
                 terms.append(b.mul(b.mul(b.integer(factor), k), _monomial(solver, monomial, where)))
