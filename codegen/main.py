@@ -16,6 +16,7 @@ from codegen import VERSION
 from codegen.commands.adopt import adopt
 from codegen.commands.agree import agree
 from codegen.commands.check import check
+from codegen.commands.compare import compare
 from codegen.commands.console import show_faults
 from codegen.commands.cost import cost
 from codegen.commands.draw import draw
@@ -25,7 +26,7 @@ from codegen.commands.schema import schema
 from codegen.commands.stale import stale
 from codegen.errors import LinkwrightError
 
-COMMANDS = (generate, agree, check, explain, draw, cost, stale, adopt, schema)  # in the order of the help
+COMMANDS = (generate, agree, check, explain, compare, draw, cost, stale, adopt, schema)  # in the order of the help
 
 app = typer.Typer(
     name="linkwright",

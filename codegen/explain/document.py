@@ -29,8 +29,8 @@ Lengths are in metres and angles in radians, whatever the file uses. `p[0..2]` i
 `A2`, `ALPHA2`, `D2`, `THETA2` are row 2 of the table (rows count from 1), `COS_` and `SIN_` their cosine and sine;
 `TOOL_X` and `BASE_X` belong to those frames. Right angles and zeros are exact and so do not show. For a joint that
 turns, `name.c` and `name.s` are the cosine and the sine of its variable plus theta, or of its variable alone where
-theta is a whole number of right angles; for one that slides, `name_slide` is its variable plus d. `^` is a power, `+-` a
-choice, and `atan2(y, x)` has y first. Every value is defined above the line that uses it.""".replace("\n", " ")
+theta is a whole number of right angles; for one that slides, `name_slide` is its variable plus d. `^` is a power, `+-`
+a choice, and `atan2(y, x)` has y first. Every value is defined above the line that uses it.""".replace("\n", " ")
 
 
 @dataclass(frozen=True, slots=True)
