@@ -9,14 +9,14 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from codegen.geometry import Rigid
+from codegen.geometry import Matrix, Pair, Rigid
 from codegen.inverse.commuting import orders
 from codegen.inverse.groups import common_normal, kept_plane, moved_plane, planar_normal, spherical
 from codegen.inverse.orientation import DirectionProblem, solve_direction2, solve_orientation3, solve_slides
 from codegen.inverse.planar import axes_now, solve_parallel4, solve_planar3
 from codegen.inverse.plane import PlaneProblem, solve_plane3
 from codegen.inverse.point import PointProblem, solve_point3
-from codegen.inverse.segment import Segment, core_of
+from codegen.inverse.segment import Core, Segment, Use, core_of
 from codegen.inverse.solver import Solver
 
 
@@ -49,12 +49,41 @@ def names_of(solver: Solver, group: Segment) -> str:
     return ", ".join(sorted(solver.label(use.joint.index) for use in group.uses))
 
 
-def outside_motion(solver: Solver, segment: Segment, count: int) -> Rigid:
-    """The motion of the first `count` known joints with the cores behind each."""
-    space, motion = solver.space, solver.space.identity
-    for use, core in zip(segment.uses[:count], segment.cores, strict=False):
-        motion = space.compose(motion, solver.motion(use), core.whole(space))
-    return motion
+def left_rotation(solver: Solver, segment: Segment, count: int, rotation: Matrix) -> Matrix:
+    """The rotation that is left for the joints behind the first `count`, which are known.
+
+    The known turns are taken off one after the other, column by column, which costs less than their product; neighbours
+    with parallel axes are one turn by the sum of their angles.
+    """
+    space = solver.space
+    k = 0
+    while k < count:
+        last = k
+        pair = solver.own_pair(segment.uses[k]) if segment.uses[k].turns else None
+        cores = segment.cores[k].middle.rotation
+        while last + 1 < count and _keeps_axis(segment.cores[last]):
+            last += 1
+            pair = _added(solver, pair, segment.uses[last], cores)
+            cores = space.product(cores, segment.cores[last].middle.rotation)
+        if pair is not None:
+            rotation = space.product(space.transposed(space.about_z(pair)), rotation)
+        rotation = space.product(space.transposed(cores), rotation)
+        k = last + 1
+    return rotation
+
+
+def _keeps_axis(core: Core) -> bool:
+    z = core.middle.rotation[2][2]
+    return z.structural and z.value in (1, -1)
+
+
+def _added(solver: Solver, pair: Pair | None, use: Use, cores: Matrix) -> Pair | None:
+    """The pair of a run's angle with one more joint; cores that turn the axis round change its sense."""
+    if not use.turns:
+        return pair
+    own = solver.own_pair(use)
+    own = own if int(cores[2][2].value) > 0 else solver.space.opposite(own)
+    return own if pair is None else solver.space.sum_of(pair, own)
 
 
 def spherical_at_end(solver: Solver, problem: PoseProblem) -> bool:
@@ -71,9 +100,7 @@ def spherical_at_end(solver: Solver, problem: PoseProblem) -> bool:
     space.named(p, "centre", "point where the three axes meet, seen from the other joints; m")
     if not solve_point3(solver, PointProblem(segment.part(0, 3), w, p), "meeting point"):
         return False
-    rotation = space.product(
-        space.transposed(outside_motion(solver, segment, 3).rotation), problem.goal.rotation
-    )
+    rotation = left_rotation(solver, segment, 3, problem.goal.rotation)
     return solve_orientation3(solver, group, rotation, "orientation")
 
 
