@@ -97,14 +97,16 @@ class Statements:
             label = self.goal.solver.labels[index]
             joint = self.goal.chain.joints[index]
             variable = self._with_offset(f"work->seed[{index}]", joint.offset)
-            kind = "turn" if joint.turns else "slide"
             if joint.turns:
                 self.put(f"const {self.p}_pair {label} = {self.p}_turn({variable});  /* held: from the seed */")
                 self.put(f"work->{label} = {label};")
             else:
                 self.put(f"const {self.p}_real {label}_slide = {variable};  /* held: from the seed */")
+                self.put(f"if (!{self.p}_within({label}_slide, FAR)) {{")
+                self.put("    work->marks = MARK_OUT_OF_REACH;")
+                self.put("    return;")
+                self.put("}")
                 self.put(f"work->{label}_slide = {label}_slide;")
-            del kind
             self.put(f"{self.p}_keep(work, {index}u);")
 
     def _with_offset(self, text: str, offset: Node, sign: str = "+") -> str:
