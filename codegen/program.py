@@ -126,7 +126,7 @@ class Builder:
 
     def signed_sum(self, *terms: tuple[int, Node]) -> Node:
         """The sum of signed terms; constants are folded into one, which stands last."""
-        flat = _cancelled(_flattened(terms))
+        flat = self._merged(_cancelled(_flattened(terms)))
         constants = [term for term in flat if term[1].is_constant]
         rest = [term for term in flat if not term[1].is_constant]
         folded = self._folded(constants)
@@ -143,6 +143,26 @@ class Builder:
         args, signs = tuple(t[1] for t in rest), tuple(t[0] for t in rest)
         key = ("sum", tuple(sorted((a.serial, s) for a, s in zip(args, signs, strict=True))))
         return self._intern(key, op=Op.SUM, args=args, signs=signs, stage=_stage(args))
+
+    def _merged(self, terms: list[tuple[int, Node]]) -> list[tuple[int, Node]]:
+        """Terms that are a constant times the same value, as one."""
+        by_value: dict[Node, list[tuple[int, Node]]] = {}
+        for term in terms:
+            value = _scaled_value(term[1])
+            if value is not None:
+                by_value.setdefault(value, []).append(term)
+        if all(len(alike) == 1 for alike in by_value.values()):
+            return terms
+        merged: list[tuple[int, Node]] = []
+        for term in terms:
+            value = _scaled_value(term[1])
+            alike = by_value.get(value, [term]) if value is not None else [term]
+            if len(alike) == 1:
+                merged.append(term)
+            elif term is alike[0] and value is not None:
+                factor = self.signed_sum(*((sign, _constant_factor(node)) for sign, node in alike))
+                merged.append((1, self.mul(factor, value)))
+        return [term for term in merged if not term[1].is_exactly(0)]
 
     def _negated_constant(self, node: Node) -> Node:
         if node.structural:
@@ -284,15 +304,27 @@ def _flattened(terms: tuple[tuple[int, Node], ...]) -> list[tuple[int, Node]]:
 
 
 def _opened_where_cancelling(terms: list[tuple[int, Node]]) -> list[tuple[int, Node]]:
-    """Open an inner sum that holds a term which another term takes away again."""
+    """Open an inner sum that holds a term which another term takes away again, or can be joined with."""
     flat: list[tuple[int, Node]] = []
     for sign, node in terms:
         inner = [(sign * s, a) for s, a in zip(node.signs, node.args, strict=False)]  # only a sum has signs
-        if any((-s, a) in terms for s, a in inner):
+        values = {_scaled_value(other) for _, other in terms if other is not node} - {None}
+        if any((-s, a) in terms or _scaled_value(a) in values for s, a in inner):
             flat.extend(inner)
         else:
             flat.append((sign, node))
     return flat
+
+
+def _scaled_value(node: Node) -> Node | None:
+    """x of a product constant * x."""
+    if node.op is Op.PRODUCT and node.args[0].is_constant != node.args[1].is_constant:
+        return node.args[1] if node.args[0].is_constant else node.args[0]
+    return None
+
+
+def _constant_factor(node: Node) -> Node:
+    return node.args[0] if node.args[0].is_constant else node.args[1]
 
 
 def _holds_constant(node: Node) -> bool:

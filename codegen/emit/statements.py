@@ -142,6 +142,13 @@ class Statements:
         if least is None:
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
             self._settle_turn(step.joint, name)
+        elif step.joint is None:
+            self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{  /* the pose leaves it free: by the seed */")
+            self.put(f"    {name} = {self._seed_pair(step.seed)};")
+            self.put("    work->marks |= MARK_FREE;")
+            if step.absorbed is not None:
+                self._absorb(step.absorbed)
+            self.put("}")
         else:
             self.put(f"if ({self.p}_unit({x}, {y}, {least}, &{name})) {{")
             self._settle_turn(step.joint, name, deeper=True)

@@ -130,12 +130,16 @@ def _without_last(solver: Solver, problem: PointProblem) -> PointProblem:
     space, segment = solver.space, problem.segment
     w = space.moved(solver.motion(segment.uses[-1]), problem.w)
     w = space.moved(segment.cores[-1].whole(space), w)
+    space.named(w, f"point_past_{solver.label(segment.uses[-1].joint.index)}")
     return PointProblem(segment.part(0, 2), w, problem.p)
 
 
 def solve_point2(solver: Solver, problem: PointProblem, what: str) -> bool:
     """Two joints: one of them alone from what the other cannot change, then the other."""
     solver.heading(what)
+    space = solver.space
+    solver.builder.named(space.dot(problem.p, problem.p), "distance_squared")
+    solver.builder.named(space.dot(problem.w, problem.w), "length_squared")
     ways = [_second_joint(solver, problem), _second_joint(solver, problem.reversed(solver))]
     found = [way for way in ways if way is not None]
     if not found:

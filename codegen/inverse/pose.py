@@ -68,8 +68,14 @@ def left_rotation(solver: Solver, segment: Segment, count: int, rotation: Matrix
         if pair is not None:
             rotation = space.product(space.transposed(space.about_z(pair)), rotation)
         rotation = space.product(space.transposed(cores), rotation)
+        _name_columns(solver, rotation, f"past_{solver.label(segment.uses[last].joint.index)}")
         k = last + 1
     return rotation
+
+
+def _name_columns(solver: Solver, rotation: Matrix, where: str) -> None:
+    for k, axis in enumerate("xyz"):
+        solver.space.named(solver.space.column(rotation, k), f"{axis}_axis_{where}")
 
 
 def _keeps_axis(core: Core) -> bool:
@@ -83,7 +89,12 @@ def _added(solver: Solver, pair: Pair | None, use: Use, cores: Matrix) -> Pair |
         return pair
     own = solver.own_pair(use)
     own = own if int(cores[2][2].value) > 0 else solver.space.opposite(own)
-    return own if pair is None else solver.space.sum_of(pair, own)
+    if pair is None:
+        return own
+    total = solver.space.sum_of(pair, own)
+    solver.builder.named(total.cosine, f"cosine_to_{solver.label(use.joint.index)}", "angles of parallel axes added")
+    solver.builder.named(total.sine, f"sine_to_{solver.label(use.joint.index)}")
+    return total
 
 
 def spherical_at_end(solver: Solver, problem: PoseProblem) -> bool:

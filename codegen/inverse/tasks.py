@@ -158,7 +158,11 @@ def _pose_problem(goal: Goal) -> PoseProblem:
     space = goal.space
     before, segment, behind = goal.segment()
     wanted = Rigid(goal.rotation, goal.position)
-    return PoseProblem(segment, space.compose(space.inverse(before), wanted, space.inverse(behind)))
+    last = space.compose(space.inverse(before), wanted, space.inverse(behind))
+    for k, axis in enumerate("xyz"):
+        space.named(space.column(last.rotation, k), f"last_{axis}_axis", f"{axis} axis of the last link frame")
+    space.named(last.shift, "last_point", "origin of the last link frame, seen from the base; m")
+    return PoseProblem(segment, last)
 
 
 def _axis_problem(goal: Goal) -> PoseProblem:
