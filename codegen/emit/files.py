@@ -108,6 +108,7 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
             "branch_text": _branch_text(stages, derivation.plan.branches),
         },
         "command": command_line(source, options),
+        "digest": source.digest,
         "version": VERSION,
         "numeric": False,
         "branches": derivation.plan.branches,
