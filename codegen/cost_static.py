@@ -1,9 +1,9 @@
 """What the generated functions cost, counted on the program's nodes and on the steps of the plan.
 
-Counted: the formulas as they stand, and what each solvable form adds to them (a pair brought to length 1, a root, the
-angle of a returned joint brought to the turn nearest its seed). Not counted: comparisons, changes of sign, products of
-constants, copies, and the check of the input. Subtractions count as additions. A form with four roots is counted at its
-worst: every search step taken, every root there.
+Counted: the formulas as they stand, and what each solvable form adds to them (a root, a pair brought to length 1, the
+angle of a returned joint held against its seed). Not counted: comparisons, changes of sign, products of constants,
+copies, the check of the input, and the seldom case of an angle that whole turns bring to its seed. Subtractions count as
+additions. A form with four roots is counted at its worst: every search step taken, every root there.
 """
 
 from __future__ import annotations
@@ -13,8 +13,10 @@ from dataclasses import dataclass, fields
 from typing import assert_never
 
 from codegen.emit.expression import Constants
+from codegen.emit.inverse_text import InverseText
 from codegen.emit.motion_text import MotionText
 from codegen.forward import jacobian_nodes, pose_nodes
+from codegen.geometry import Pair
 from codegen.inverse.plan import (
     BalanceStep,
     DirectionStep,
@@ -61,8 +63,8 @@ class InverseCount:
 
 _NOTHING = OperationCount()
 UNIT = OperationCount(additions=1, multiplications=4, divisions=1, roots=1)  # (x, y) brought to length 1
-SETTLE = OperationCount(additions=4, multiplications=3)  # an angle brought to the turn nearest its seed
-_GUARD = OperationCount(additions=1, multiplications=4)  # how far a square may be from what rounding explains
+SETTLE = OperationCount(additions=1)  # how far a returned angle is from its seed
+TIDY = OperationCount(additions=2, multiplications=5)  # a pair of almost length 1 brought to length 1
 _NEWTON = OperationCount(additions=4, multiplications=9, divisions=2)  # two equations in two unknowns
 _TURN_BY = OperationCount(additions=2, multiplications=2) + UNIT
 _SEARCH_STEPS = {24: 30, 53: 60}  # of one root of a polynomial, by the bits of the number type
@@ -124,13 +126,14 @@ def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
         all_branches += count.times(runs)
     worst = any(step.roots == 4 for step in derivation.plan.steps)
     if worst:
-        check = _reach_check(derivation)
+        check = _reach_check(derivation, options)
         one, all_branches = one + check, all_branches + check.times(runs)
     return InverseCount(one, all_branches, worst)
 
 
 def stage_counts(derivation: Derivation, options: Options) -> list[tuple[OperationCount, int]]:
     """Per stage (what no choice changes first): one run of it, and how many roots its choice has."""
+    unread = InverseText(derivation, options, Constants(options)).unread
     choices = [step for step in derivation.plan.steps if step.roots > 1]
     counts = [_held_count(derivation), *(_NOTHING for _ in choices)]
     done: set[Node] = set()
@@ -138,9 +141,11 @@ def stage_counts(derivation: Derivation, options: Options) -> list[tuple[Operati
     for step in derivation.plan.steps:
         number += step.roots > 1
         own, repeated = _nodes_of(step)
-        for node in _new(own, done):
+        for node in _new([*own, *_carried_for_a_free_joint(step, number)], done):
             counts[node.stage] += counted([node])
-        counts[number] += counted(_new(repeated, done)).times(_passes(step)) + _form_count(derivation, step)
+        for node in _new(repeated, done):
+            counts[node.stage] += counted([node]).times(_passes(step) if node.stage == number else 1)
+        counts[number] += _form_count(derivation, step, unread)
         if step.roots == 4:
             counts[number - 1] += _search_count(step, options)
     return list(zip(counts, [1, *(step.roots for step in choices)], strict=True))
@@ -171,7 +176,7 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
         case DirectionStep():
             return [step.x, step.y], []
         case BalanceStep():
-            return [*([step.size] if step.size else []), step.target, step.square, step.x, step.y], []
+            return [node for node in (step.size, step.flat) if node] + [step.target, step.square, step.x, step.y], []
         case SlideStep():
             return [step.numerator, step.denominator], []
         case SlideRootsStep():
@@ -184,14 +189,20 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
             assert_never(step)
 
 
-def _form_count(derivation: Derivation, step: Step) -> OperationCount:
+def _carried_for_a_free_joint(step: Step, number: int) -> list[Node]:
+    """Values that only a joint left free reads, but that an earlier stage prepares every time."""
+    absorbed = step.absorbed if isinstance(step, DirectionStep) else None
+    return [] if absorbed is None else [n for n in reachable([absorbed.x, absorbed.y]) if n.stage < number]
+
+
+def _form_count(derivation: Derivation, step: Step, unread: frozenset[Pair]) -> OperationCount:
     """What the form adds to the formulas of its step."""
     match step:
         case DirectionStep():
-            return UNIT + _settled_turn(derivation, step.joint)
+            unit = _NOTHING if step.pair in unread else UNIT
+            return unit + _settled_turn(derivation, step.joint)
         case BalanceStep():
-            guard = _GUARD if step.size else _NOTHING
-            return OperationCount(roots=1) + UNIT + guard + _settled_turn(derivation, step.joint)
+            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint)
         case SlideStep():
             return _division(step) + _settled_slide(derivation, step.joint)
         case SlideRootsStep():
@@ -209,6 +220,17 @@ def _form_count(derivation: Derivation, step: Step) -> OperationCount:
             return total
         case _:
             assert_never(step)
+
+
+def _balance_count(step: BalanceStep) -> OperationCount:
+    """How far the square may be from what rounding explains, and (c, s) where A and B are no constants."""
+    count = OperationCount(multiplications=int(step.flat is not None and not step.flat.is_constant))
+    if step.size is None:
+        return count
+    count += OperationCount(multiplications=3, divisions=1)
+    if not step.target.is_exactly(0):
+        count += OperationCount(additions=1, multiplications=int(not step.target.is_constant))
+    return count
 
 
 def _division(step: SlideStep) -> OperationCount:
@@ -240,12 +262,15 @@ def _settled_variable(derivation: Derivation, variable: Variable) -> OperationCo
     return _settled_turn(derivation, variable.joint)
 
 
-def _reach_check(derivation: Derivation) -> OperationCount:
+def _reach_check(derivation: Derivation, options: Options) -> OperationCount:
     """The pose reached against the pose wanted, where roots are approximate: their squares added up, by kind."""
     misses = derivation.misses()
+    unread = InverseText(derivation, options, Constants(options)).unread
     kinds = {kind for kind, _ in misses}
     squares = OperationCount(additions=len(misses) - len(kinds), multiplications=len(misses))
-    return counted(reachable([node for _, node in misses])) + squares
+    used = reachable([node for _, node in misses])
+    units = UNIT.times(sum(bool({pair.cosine, pair.sine} & set(used)) for pair in unread))
+    return counted(used) + squares + units
 
 
 # -- at the worst: the search for four roots ---------------------------------------------------------------------------

@@ -26,5 +26,5 @@ def inverse_rows(count: InverseCount) -> list[tuple[str, OperationCount]]:
 
 REMARK = (
     "Counted on the formulas, with what each solvable form adds to them. Not counted: comparisons, changes of sign, "
-    "products of constants, the check of the input."
+    "products of constants, the check of the input, and whole turns that bring an angle to its seed."
 )
