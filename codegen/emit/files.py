@@ -25,7 +25,7 @@ from codegen.places import TEMPLATES
 _HELPERS = (
     "abs", "sqrt", "sin_cos", "is_finite", "turn", "unit", "keep", "turns", "settle_turn", "settle_slide",
     "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn", "turn_roots", "slide_roots",
-    "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
+    "keep_free", "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
 )  # fmt: skip
 
 

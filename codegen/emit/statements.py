@@ -145,7 +145,7 @@ class Statements:
         elif step.joint is None:
             self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{  /* the pose leaves it free: by the seed */")
             self.put(f"    {name} = {self._seed_pair(step.seed)};")
-            self.put("    work->marks |= MARK_FREE;")
+            self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
             if step.absorbed is not None:
                 self._absorb(step.absorbed)
             self.put("}")
@@ -165,9 +165,9 @@ class Statements:
     def _keep_else(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
         self.put("} else {  /* the pose leaves it free: it keeps its seed */")
         self.put(f"    {name} = {self._seed_pair(seed)};")
-        self.put("    work->marks |= MARK_FREE;")
+        self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
         if joint is not None:
-            self.put(f"    {self.p}_keep(work, {joint}u);")
+            self.put(f"    {self.p}_keep_free(work, {joint}u);")
         if absorbed is not None:
             self._absorb(absorbed)
         self.put("}")

@@ -185,13 +185,18 @@ def solved_for_z(solver: Solver, equations: tuple[Equation, Equation], left: Nod
     return b.mul(z_x, det), b.mul(z_y, det)
 
 
-def square_by_radius(solver: Solver, a: Vector, height: Node, goal: Vector) -> Node:
-    """A^2 + B^2 - C^2 of  a . R u = goal_z, where the two axes meet, so that |u| = |goal|; height is u_z.
+def square_by_radius(solver: Solver, a: Vector, u: Vector, goal: Vector) -> Node:
+    """A^2 + B^2 - C^2 of  a . R u = goal_z, where the two axes meet, so that |u| = |goal|.
 
-    With x the angle between the axes it is (sin(x) |goal_xy|)^2 - (u_z - cos(x) goal_z)^2. Near the first axis, where
-    A^2 + B^2 and C^2 are nearly equal, this form keeps its digits: both its terms are small there.
+    With x the angle between the axes it is also (sin(x) |goal_xy|)^2 - (u_z - cos(x) goal_z)^2. Near the first axis the
+    terms of this form are small, near the second axis those of A^2 + B^2 - C^2: the smaller ones keep their digits.
     """
     b = solver.builder
-    across = b.add(b.square(goal[0]), b.square(goal[1]))
     sine_squared = b.add(b.square(a[0]), b.square(a[1]))
-    return b.sub(b.mul(sine_squared, across), b.square(b.sub(height, b.mul(a[2], goal[2]))))
+    first = b.mul(sine_squared, b.add(b.square(goal[0]), b.square(goal[1])))
+    by_first = b.sub(first, b.square(b.sub(u[2], b.mul(a[2], goal[2]))))
+    second = b.mul(sine_squared, b.add(b.square(u[0]), b.square(u[1])))
+    if second.is_constant:
+        return by_first
+    by_second = b.sub(second, b.square(b.sub(goal[2], b.mul(a[2], u[2]))))
+    return b.choice(b.sub(second, first), by_first, by_second)

@@ -66,7 +66,7 @@ def _height_equation(solver: Solver, problem: DirectionProblem) -> Balance:
     sine_part = b.sub(b.mul(a[1], n[0]), b.mul(a[0], n[1]))
     target = b.sub(v[2], b.mul(a[2], n[2]))
     lines_up = solver.oracle.vanishes(b.sub(b.square(a[2]), b.square(n[2])))  # the goal can lie along the first axis
-    return Balance(cosine_part, sine_part, target, Least.ANGLE, square_by_radius(solver, a, n[2], v), exact=lines_up)
+    return Balance(cosine_part, sine_part, target, Least.ANGLE, square_by_radius(solver, a, n, v), exact=lines_up)
 
 
 def solve_orientation3(solver: Solver, segment: Segment, rotation: Matrix, what: str) -> bool:

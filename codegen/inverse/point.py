@@ -183,7 +183,7 @@ class SecondJoint:
         if not first.turns:
             return balance
         if self.which == 0 and solver.oracle.vanishes(*core.middle.shift):
-            return replace(balance, square=square_by_radius(solver, equation.a, self.u[2], p), exact=True)
+            return replace(balance, square=square_by_radius(solver, equation.a, self.u, p), exact=True)
         if self.which == 1 and _parallel_axes(core) and not balance.fixed:
             return replace(balance, square=_triangle_square(solver, core.middle.shift, self.u, p))
         return balance
