@@ -179,9 +179,12 @@ class Bench:
     def allowed(self, q: Array, position: Array, stretch: float = 1.0) -> tuple[Array, Array]:
         """Position (m) and angle (rad) errors allowed where joint values q [M, n] meet positions [M, 3]."""
         beyond_a_turn = np.maximum(0.0, np.abs(q) - 2 * np.pi)[:, self.reference.revolute].sum(axis=1)
-        coarse = 2 * self.budget.unit * beyond_a_turn
+        return self.promised(position, 2 * self.budget.unit * beyond_a_turn, stretch)
+
+    def promised(self, position: Array, coarse: Array | float = 0.0, stretch: float = 1.0) -> tuple[Array, Array]:
+        """The same where joint values add a rounding of `coarse` radians."""
         far = np.maximum(0.0, length(position) - self.reference.reach)
-        angle = stretch * self.budget.angle + coarse
+        angle = np.broadcast_to(stretch * self.budget.angle + coarse, far.shape)
         return (stretch * self.budget.share + coarse) * self.reference.reach + angle * far, angle
 
     def apart(self, first: Array, second: Array) -> Array:

@@ -78,6 +78,8 @@ def _free_joints(bench: Bench, rng: np.random.Generator, places: Degenerate, kin
         return  # from another seed its first solution is another one
     many = np.repeat(q, _SEEDS, axis=0)
     _says_singular(bench, many, _seeds(bench, rng, many), kind, False)
+    turned = _seeds(bench, rng, q) + np.where(bench.reference.revolute, rng.choice([-7.0, 7.0], q.shape), 0.0)
+    inspect(bench, bench.batch(q, turned, f"{kind}, seeds past the limits", _STRETCH))
 
 
 def _says_singular(bench: Bench, q: Array, seeds: Array, kind: str, from_itself: bool) -> None:

@@ -11,8 +11,8 @@ from build_checks.agree_solutions import efforts, inspect
 from build_checks.compile import AnyArray
 from build_checks.reference import Array, Integers
 
-_HALVINGS = 24
-_BESIDE = 1e-4  # of the way between the two seeds, to either side of the tie
+_HALVINGS = 54
+_BESIDE = (64.0, 4096.0)  # units of the number type: how far beside the tie, of the way between the two seeds
 
 
 def check_ties(bench: Bench, rng: np.random.Generator, size: int) -> None:
@@ -30,8 +30,10 @@ def check_ties(bench: Bench, rng: np.random.Generator, size: int) -> None:
         return
     batch = replace(batch, packed=batch.packed[rows], seeds=first[rows], origins=batch.origins[rows])
     tie = _tie(bench, batch, second[rows], ends[0][rows])
-    for side in (-_BESIDE, _BESIDE):
-        inspect(bench, replace(batch, seeds=_between(bench, batch, second[rows], tie + side)))
+    for units in _BESIDE:
+        for side in (-units, units):
+            share = tie + side * bench.budget.unit
+            inspect(bench, replace(batch, seeds=_between(bench, batch, second[rows], share)))
 
 
 def _between(bench: Bench, batch: Batch, other: AnyArray, share: Array) -> AnyArray:

@@ -12,6 +12,7 @@ from build_checks.reference import Array
 from build_checks.reference_task import length, rotation_vector
 from build_checks.report import Check, Failure
 
+_MOST_DECADES = 4.0  # of turns, of a joint without limits
 FAR_TURNS = 5.0  # seeds and joint values of the far poses reach this many turns to either side
 
 
@@ -30,24 +31,36 @@ def check_random(bench: Bench, rng: np.random.Generator, size: int) -> None:
 
 
 def check_far_turns(bench: Bench, rng: np.random.Generator, size: int) -> None:
-    """Joint values and seeds several turns away: the same poses, another turn of each joint."""
+    """Joint values and seeds many turns away: the same poses, another turn of each joint."""
     q = bench.random_joints(rng, size)
-    check_forward(bench, bench.exact(_far(bench, rng, q)))
+    check_forward(bench, bench.exact(_far(bench, rng, q)), summed=True)
+    check_forward(bench, bench.exact(_farthest(bench, rng, q)))
     batch = bench.batch(q, _far(bench, rng, bench.random_joints(rng, size)), "seeds several turns away")
     inspect(bench, batch)
+
+
+def _farthest(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
+    """Joints without limits at any number of turns up to ten thousand."""
+    unlimited = bench.reference.revolute & np.isinf(bench.reference.lower) & np.isinf(bench.reference.upper)
+    turns = 10.0 ** rng.uniform(0.0, _MOST_DECADES, q.shape) * rng.choice([-1.0, 1.0], q.shape)
+    return np.where(unlimited, q + 2 * np.pi * turns, q)
 
 
 def _far(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
     return np.where(bench.reference.revolute, q + 2 * np.pi * FAR_TURNS * rng.uniform(-1.0, 1.0, q.shape), q)
 
 
-def check_forward(bench: Bench, q: Array) -> None:
-    """Poses of joint vectors q that the C's number type holds exactly."""
+def check_forward(bench: Bench, q: Array, *, summed: bool = False) -> None:
+    """Poses of joint vectors q that the C's number type holds exactly.
+
+    `summed`: turns beyond the limits, where the sum of two parallel joints' angles may be rounded.
+    """
     packed, status = bench.c.forward(bench.c.rounded(q))
     actual, wanted = Kinematics.unpack(packed), bench.reference.forward(q)
     position = length(actual.position - wanted.position)
     angle = _rotation_error(actual.rotation, wanted.rotation)
-    position_budget, angle_budget = bench.allowed(q, wanted.position)
+    budgets = bench.allowed(q, wanted.position) if summed else bench.promised(wanted.position)
+    position_budget, angle_budget = budgets
     failed = ~((position <= position_budget) & (angle <= angle_budget)) | (status != Status.OK)
     ordinary = ~(np.abs(q[:, bench.reference.revolute]).max(axis=1, initial=0.0) > 2 * np.pi)
 

@@ -21,7 +21,7 @@ from build_checks.agree_bench import (
 )
 from build_checks.compile import CANARY, CANARY_BRANCH, AnyArray, Branches, Status
 from build_checks.reference import Array, Flags, Integers
-from build_checks.reference_task import length
+from build_checks.reference_task import length, wrap
 from build_checks.report import Check, Failure
 
 _ROUNDING = 10.0  # units of the number type, relative: how near a limit either answer is right
@@ -186,8 +186,9 @@ def _singular_claims(bench: Bench, batch: Batch, found: Branches, flat: Flat) ->
     chosen = np.flatnonzero(flat.status == Status.SINGULAR)
     q, seeds = flat.q[chosen], batch.seeds.astype(np.float64)[flat.rows[chosen]]
     singular = bench.reading.smallest_singular(q)
-    near = np.abs(q - seeds) <= 4 * bench.budget.unit * np.maximum(1.0, np.abs(seeds))
-    kept = near[:, bench.reference.free].any(axis=1)
+    turned = np.where(bench.reference.revolute, wrap(q - seeds), q - seeds)  # the limits may ask for another turn of it
+    near = np.abs(turned) <= 4 * bench.budget.unit * np.maximum(1.0, np.abs(seeds))
+    kept = any_in_row(near[:, bench.reference.free])
     not_free = ~(singular <= _SINGULAR_WITHIN * bench.budget.angle)
 
     def describe(index: int) -> Failure:
