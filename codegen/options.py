@@ -30,6 +30,13 @@ class Mathematics(Enum):
     LIBM = "libm"
 
 
+class Arithmetic(Enum):
+    """What the own sine, cosine and atan2 compute in: the number type, or whole numbers where that is quicker."""
+
+    REAL = "real"
+    INTEGER = "integer"
+
+
 @dataclass(frozen=True, slots=True)
 class Options:
     """The options of `linkwright generate`."""
@@ -38,3 +45,4 @@ class Options:
     mathematics: Mathematics = Mathematics.OWN
     prefix: str = "arm"
     angle_error: int = 2  # largest error of the own sine, cosine and arc tangent, in ulp
+    angles: Arithmetic = Arithmetic.REAL  # what those compute in; INTEGER suits float where there is no float unit

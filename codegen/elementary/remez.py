@@ -5,8 +5,8 @@ Method: the exchange algorithm of E. Ya. Remez (1934), as told by E. W. Cheney, 
 alternating sign at n + 1 points, move the points to the extrema of that error, and repeat until no error on the grid is
 larger. All in mpmath with many digits, so the result does not depend on the machine.
 
-The coefficients that leave here are rounded to the number type one after the other, the lowest power first: each
-rounded one is held while the rest are fitted again, so that the later ones absorb the roundings of the earlier.
+The coefficients that leave here are rounded one after the other: each rounded one is held while the rest are fitted
+again, so that the later ones absorb the roundings of the earlier.
 """
 
 from __future__ import annotations
@@ -35,10 +35,10 @@ class Samples:
     weights: tuple[Real, ...]
     columns: tuple[tuple[Real, ...], ...]
 
-    def less(self, coefficient: Real) -> Samples:
-        """What is left to approximate once the first column's coefficient is held."""
-        rest = tuple(v - coefficient * c for v, c in zip(self.values, self.columns[0], strict=True))
-        return Samples(rest, self.weights, self.columns[1:])
+    def less(self, coefficient: Real, place: int) -> Samples:
+        """What is left to approximate once the coefficient of one column is held."""
+        rest = tuple(v - coefficient * c for v, c in zip(self.values, self.columns[place], strict=True))
+        return Samples(rest, self.weights, self.columns[:place] + self.columns[place + 1 :])
 
     def errors(self, coefficients: Sequence[Real]) -> list[Real]:
         """The weighted error at every point of the grid."""
@@ -81,13 +81,16 @@ def minimax(samples: Samples) -> Fit:
     return Fit(tuple(coefficients), max(map(abs, errors)))
 
 
-def rounded_minimax(samples: Samples, rounding: Function) -> Fit:
-    """As `minimax`, with coefficients that `rounding` leaves as they are; the error is that of the rounded ones."""
-    rest, held = samples, []
-    while rest.columns:
-        held.append(rounding(minimax(rest).coefficients[0]))
-        rest = rest.less(held[-1])
-    return Fit(tuple(held), max(map(abs, rest.errors(()))))
+def rounded_minimax(samples: Samples, roundings: Sequence[Function], order: Sequence[int]) -> Fit:
+    """As `minimax`, each coefficient rounded by its own rounding, in that order; the error is that of the rounded."""
+    rest, free = samples, list(range(len(samples.columns)))
+    held: dict[int, Real] = {}
+    for column in order:
+        place = free.index(column)
+        held[column] = roundings[column](minimax(rest).coefficients[place])
+        rest = rest.less(held[column], place)
+        free.remove(column)
+    return Fit(tuple(held[column] for column in sorted(held)), max(map(abs, rest.errors(()))))
 
 
 def _levelled(samples: Samples, places: Sequence[int]) -> tuple[list[Real], Real]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from codegen.options import RealType
+from codegen.options import Arithmetic, RealType
 
 BUDGETS = (2, 16, 256, 4096)  # ulp: largest error of sine, cosine and arc tangent that a row may have
 
@@ -26,6 +26,21 @@ class Row:
 
 
 @dataclass(frozen=True, slots=True)
+class IntegerRow:
+    """Fitted coefficients of float for whole numbers of 32 bits, lowest power first; z is a Q30 (arc: Q31) square.
+
+    sine    sin r / r - 1 = z (s1 + z (s2 + ...)), z = (r / (pi/4))^2; s1 is Q34, s2 Q36, ...
+    cosine  cos r - 1     = z (c1 + z (c2 + ...)), likewise; c1 is Q32, c2 Q34, ...
+    arc     arctan q / q - 1 = z (a1 + z (a2 + ...)), z = q^2, q <= 1; a1 is Q30, a2 Q31, ...
+    """
+
+    budget: int
+    sine: tuple[int, ...]
+    cosine: tuple[int, ...]
+    arc: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Worst:
     """The largest error found, and what reaches it.
 
@@ -39,7 +54,7 @@ class Worst:
 
 @dataclass(frozen=True, slots=True)
 class Figures:
-    """Measured errors of the generated C with one row.
+    """Measured errors of the generated C with one row; `arithmetic` is what it computes angles in.
 
     sine, cosine  every number with |angle| <= pi/4 (double: a dense sample)
     sine_cosine   both functions, every number up to 1e4 turns (double: a sample)
@@ -48,6 +63,7 @@ class Figures:
     """
 
     real: RealType
+    arithmetic: Arithmetic
     budget: int
     sine: Worst
     cosine: Worst

@@ -20,7 +20,7 @@ class Layout:
     everyday, everyday_span   the words of normal numbers whose doubles do not overflow: the first, and how many
     root_first_bit  the first digit of a root, doubled
     root_bias       what makes twice the exponent of a root from the exponent of its square
-    most            the largest number
+    last_word       the word of the largest number, and that number: `most`
     """
 
     word: str
@@ -36,6 +36,7 @@ class Layout:
     everyday_span: str
     root_bias: str
     root_first_bit: str
+    last_word: str
     most: str
 
 
@@ -53,6 +54,7 @@ _FLOAT = Layout(
     everyday_span="0x7E800000u",
     root_bias="125u",
     root_first_bit="0x01000000u",
+    last_word="0x7F7FFFFFu",
     most="FLT_MAX",
 )
 _DOUBLE = Layout(
@@ -69,6 +71,7 @@ _DOUBLE = Layout(
     everyday_span="0x7FD0000000000000u",
     root_bias="1021u",
     root_first_bit="0x0020000000000000u",
+    last_word="0x7FEFFFFFFFFFFFFFu",
     most="DBL_MAX",
 )
 
