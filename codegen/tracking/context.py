@@ -21,6 +21,7 @@ ASIDE = 0.2
 CLOSEST = 2.8  # the nearest second solution, in units of `solitude`, over the cases below: measured on nine arms
 CLOSEST_CASES = 16000
 _LOST = 10**15
+_LARGEST_JOINT = {RealType.FLOAT: 2**120, RealType.DOUBLE: 2**1016}  # no sum of some overflows
 _SOLVED_UNITS = {RealType.FLOAT: 32, RealType.DOUBLE: 64}  # measured: residuals end below 25 units
 _LOOSE = {RealType.FLOAT: Fraction(1, 10**6), RealType.DOUBLE: Fraction(1, 10**12)}
 _SURELY_SAME = {RealType.FLOAT: Fraction(1, 10**4), RealType.DOUBLE: Fraction(1, 10**8)}
@@ -84,6 +85,7 @@ class TrackingContext:
     closest: float
     closest_cases: int
     reads: tuple[str, ...]
+    largest_joint: str
     branches: int
     branch_text: tuple[str, ...]
 
@@ -118,6 +120,7 @@ def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> Trac
         closest=CLOSEST,
         closest_cases=CLOSEST_CASES,
         reads=("p[0]", "p[1]", "p[2]", *_READS.get(arm.task, ())),
+        largest_joint=literal(_LARGEST_JOINT[real], real),
         branches=tables.branches,
         branch_text=branch_text(tables, options),
     )
@@ -154,13 +157,13 @@ def branch_text(tables: TrackingTables, options: Options) -> tuple[str, ...]:
     bound = (
         f"  {branches} is a proven bound; the most solutions seen at one pose were {tables.most_found}."
         if tables.proven
-        else f"  The most solutions seen at one pose were {tables.most_found}; {branches} has room for {HELD_BACK} more."
+        else f"  The most solutions seen at one pose were {tables.most_found}; {branches} allows for {HELD_BACK} more."
     )
     return (
         "Inverse: numeric, for no closed form is known for this arm. Damped Newton steps with the exact Jacobian.",
-        "  branch 0  the solution tracked from the seed: the one for a control loop. From a near seed 3 to 5 steps,",
+        "  branch 0  the solution tracked from the seed: the one for a control loop. A few steps from a near seed,",
         f"            {most.tracked} at the very worst, {most.tracked_free} where the pose leaves joints free.",
-        f"  branch b  of the other solutions, looked for from {len(tables.starts)} starts, the b-th to be reached from the",
+        f"  branch b  of the others, looked for from {len(tables.starts)} starts, the b-th to be reached from the",
         f"            seed: it names a solution only within one call. {measured.mean_steps} steps on average,",
         f"            {most.searched} at the very worst, {most.searched_free} where the pose leaves joints free.",
         f"  Found: {found} of {measured.poses} random poses, against a dense search.",
@@ -197,8 +200,8 @@ def _numbers(arm: Arm, shape: ArmShape, real: RealType, bounded: bool) -> tuple[
         ("SURELY_SAME", _SURELY_SAME[real], "two solutions as near as this are one"),
         ("PERHAPS_SAME", Fraction(1, 20), "as near as this they may be"),
         ("LEAST_SLOWNESS", least, "s, the least time that one unit of an unknown takes"),
-        ("HALF_TURN", MP.pi, "rad"),
-        ("WHOLE_TURN", 2 * MP.pi, "rad"),
+        ("STRAIGHT", MP.pi, "rad, half a turn"),
+        ("ONE_TURN", 2 * MP.pi, "rad"),
     ]
     if bounded:
         rows += [

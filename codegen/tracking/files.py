@@ -11,13 +11,11 @@ from codegen.emit.expression import Constants
 from codegen.emit.motion_text import MotionText
 from codegen.emit.tolerances import tolerance_rows
 from codegen.forward import jacobian_nodes, pose_nodes
-from codegen.model import Arm, Task
+from codegen.model import Arm
 from codegen.options import Options
 from codegen.tracking.context import tracking_context
 from codegen.tracking.links import small_chain
 from codegen.tracking.starts import TrackingTables, prepare_starts
-
-_CHECKS = {Task.POSE: "rotation", Task.POINT_AXIS: "axis", Task.POINT_PITCH: "axis", Task.POINT_YAW: "heading"}
 
 
 class TrackedMotion(MotionText):
@@ -73,6 +71,7 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
             "branch_text": tracking.branch_text,
         },
         "command": emit.command_line(source, options),
+        "digest": source.digest,
         "version": VERSION,
         "numeric": True,
         "branches": tracking.branches,
@@ -81,8 +80,5 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
         "tolerances": tolerance_rows(arm, options),
         "forward": forward,
         "core": core,
-        "check": _CHECKS.get(arm.task, "none"),
-        "reads": tracking.reads,
-        "plane_lines": (),
         "t": tracking,
     }

@@ -98,10 +98,8 @@ def _plane(arm: Arm, links: tuple[Matrix, ...], turning_free: list[int]) -> tupl
     for link in links[:-1]:
         total = total * link
         axes.append(tuple(total[k, 2] for k in range(3)))
-    if turning_free:
-        normal = axes[turning_free[-1]]
-    else:
-        normal = _unit(_cross(axes[arm.free_indices[0]], axes[arm.free_indices[-1]]))
+    across = (axes[arm.free_indices[0]], axes[arm.free_indices[-1]])
+    normal = axes[turning_free[-1]] if turning_free else _unit(_cross(*across))
     smallest = min(range(3), key=lambda k: (abs(normal[k]), k))
     first = _unit(_cross(tuple(MP.mpf(int(k == smallest)) for k in range(3)), normal))
     return first, _cross(normal, first), normal
