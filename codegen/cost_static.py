@@ -3,7 +3,8 @@
 Counted: the formulas as they stand, and what each solvable form adds to them (a root, a pair brought to length 1, the
 angle of a returned joint held against its seed). Not counted: comparisons, changes of sign, products of constants,
 copies, the check of the input, and the seldom case of an angle that whole turns bring to its seed. Subtractions count as
-additions. A form with four roots is counted at its worst: every search step taken, every root there.
+additions; both sides of a choice are counted. A form with four roots is counted at its worst: every search step taken,
+every root there.
 """
 
 from __future__ import annotations

@@ -61,7 +61,10 @@ def _is_group(step: DirectionStep) -> bool:
 def _consequence(step: Freeing) -> str:
     if isinstance(step, DirectionStep) and step.joint is None:
         return "Every angle then serves: the seed's is taken, and the status is SINGULAR."
-    return f"{step.angle} then keeps its seed, and the status is SINGULAR."
+    return (
+        f"{step.angle} then keeps its seed: the status is SINGULAR, or OUT_OF_REACH where the other joints cannot make up "
+        "for it."
+    )
 
 
 def merging_text(step: BalanceStep | SlideRootsStep) -> list[str]:
