@@ -9,6 +9,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from command_line import PLOTTER, call
 from required_tools import need_programs, need_target
 
 from build_checks.emulate import Call, Output, run
@@ -205,3 +206,18 @@ def test_the_files_are_the_same_each_time_and_say_their_command() -> None:
     assert "#define ARM_SELFTEST_VECTORS 3u" in first["arm_kin_selftest.h"]
     assert all("linkwright generate plotter.toml" in text and "--self-test-size 3" in text for text in first.values())
     assert read_interface(files_of("plotter", RealType.FLOAT), "arm").joints == 2
+
+
+def test_the_command_writes_the_self_test_beside_the_c(tmp_path: Path) -> None:
+    assert call("generate", PLOTTER, "--out", tmp_path, "--self-test", "--self-test-size", "3").status == 0
+    names = {"arm_kin.c", "arm_kin.h", "arm_kin_selftest.c", "arm_kin_selftest.h"}
+    assert {path.name for path in tmp_path.iterdir()} == names
+    assert "#define ARM_SELFTEST_VECTORS 3u" in (tmp_path / "arm_kin_selftest.h").read_text()
+
+
+@pytest.mark.parametrize("options", [["--self-test-size", "3"], ["--self-test", "--self-test-size", "0"]])
+def test_a_size_that_makes_no_sense_is_refused(options: list[str], tmp_path: Path) -> None:
+    done = call("generate", PLOTTER, "--out", tmp_path / "new", *options)
+    assert done.status == 2
+    assert "error: --self-test-size" in done.err
+    assert not (tmp_path / "new").exists()

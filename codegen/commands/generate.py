@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from codegen.commands.arguments import AngleError, ArmPath, Math, OutFolder, Prefix, Real, wanted
+from codegen.commands.beside import EvidenceWanted, SelfTest, SelfTestSize, check_size, evidence_of, self_test_of
 from codegen.commands.console import say
 from codegen.writing import write_files
 
@@ -14,6 +15,9 @@ def generate(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    self_test: SelfTest = False,
+    self_test_size: SelfTestSize = None,
+    evidence: EvidenceWanted = False,
 ) -> None:
     """Derive the kinematics of an arm and write them as C.
 
@@ -23,6 +27,12 @@ def generate(
     Example:
       linkwright generate arms/vial_picker.toml --out firmware/src --real float
     """
-    files = wanted(arm, real, math, prefix, angle_error).generated()
+    check_size(self_test, self_test_size)
+    what = wanted(arm, real, math, prefix, angle_error)
+    files = what.generated()
+    if self_test:
+        files |= self_test_of(what, files, self_test_size)
+    if evidence:
+        files |= evidence_of(what, files)
     write_files(out, files)
     say(f"wrote {', '.join(str(out / name) for name in sorted(files))}")
