@@ -80,7 +80,7 @@ def test_rounded_coefficients_err_hardly_more() -> None:
         assert best.error <= rounded.error < best.error * mp.mpf("1.1")
 
 
-@pytest.mark.parametrize("budget", (BUDGETS[0], BUDGETS[-1]))
+@pytest.mark.parametrize("budget", [BUDGETS[0], BUDGETS[-1]])
 def test_the_table_for_float_is_what_the_fit_gives(budget: int) -> None:
     assert fitted_row(RealType.FLOAT, budget) == row_for(RealType.FLOAT, budget)
     assert fitted_integer_row(budget) == integer_row_for(budget)
