@@ -12,8 +12,11 @@ import numpy as np
 import pytest
 from command_line import CANNOT_REACH, Done, call, names_in
 
+from codegen.armfile import read_arm
 from codegen.compare.branches import Numbering, branch_numbers
 from codegen.compare.code_diff import code_diff
+from codegen.compare.joints import match_joints
+from codegen.compare.table import Change, table_changes
 from codegen.places import ARMS
 
 # Two links that turn in a plane (Craig, Introduction to Robotics, the planar arm): 180 and 150 mm.
@@ -107,8 +110,10 @@ TABLE = [
 def test_what_changed_in_the_table_is_told_in_the_file_s_units(
     tmp_path: Path, change: tuple[str, str], where: str, what: str, old: str, new: str
 ) -> None:
-    found = content(tmp_path, edited(change), "--samples", "50")
-    assert found["table"] == [{"where": where, "what": what, "old": old, "new": new}]
+    (tmp_path / "old.toml").write_text(TWO_LINKS, encoding="utf-8")
+    (tmp_path / "new.toml").write_text(edited(change), encoding="utf-8")
+    before, after = (read_arm(tmp_path / name).arm for name in ("old.toml", "new.toml"))
+    assert table_changes(before, after, match_joints(before, after)) == (Change(where, what, old, new),)
 
 
 # -- motion ------------------------------------------------------------------------------------------------------------

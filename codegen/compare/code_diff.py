@@ -1,4 +1,4 @@
-"""The difference of two C files without what does not matter: comments, empty lines, bounds on rounding."""
+"""The difference of two C files without what does not matter: comments, empty lines, declarations that say nothing."""
 
 from __future__ import annotations
 
@@ -12,7 +12,7 @@ _AROUND = 1  # lines of context
 def code_diff(old: dict[str, str], new: dict[str, str], left_out: frozenset[str] = frozenset()) -> tuple[str, ...]:
     """Unified, file by file; lines that differ in comments only count as equal.
 
-    left_out  constants whose declarations do not matter: what follows from the arm's size
+    left_out  constants and macros whose declarations do not matter
     """
     lines: list[str] = []
     for name in sorted({*old, *new}):
@@ -28,8 +28,8 @@ def _code_lines(text: str, left_out: frozenset[str]) -> list[str]:
 
 
 def _declared(line: str) -> str:
-    """The constant that a line declares."""
-    found = re.match(r"static const \w+ (\w+) = ", line)
+    """The constant or macro that a line declares."""
+    found = re.match(r"(?:static const \w+|#define) (\w+)", line)
     return found[1] if found else ""
 
 

@@ -111,13 +111,14 @@ def compare(
         stages(lambda: None if given is None else verdicts(old, new, joints, given, kept)),
         _costs(old, new, options),
         stages(lambda: (accuracy(old, drawn.old), accuracy(new, drawn.new))),
-        code_diff(old.code, new.code, _bounds(old, options) | _bounds(new, options)),
+        code_diff(old.code, new.code, _saying_nothing(old, options) | _saying_nothing(new, options)),
     )
 
 
-def _bounds(side: Side, options: Options) -> frozenset[str]:
-    """Constants of the C that only say what rounding can explain."""
-    return frozenset(name for name, _, _ in tolerance_rows(side.arm, options))
+def _saying_nothing(side: Side, options: Options) -> frozenset[str]:
+    """What the C declares that only says what rounding can explain, or which file it came from."""
+    bounds = (name for name, _, _ in tolerance_rows(side.arm, options))
+    return frozenset({*bounds, f"{options.prefix.upper()}_SOURCE_SHA256"})
 
 
 class _Stages:

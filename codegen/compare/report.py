@@ -185,6 +185,8 @@ def _reach(found: Comparison) -> list[Item]:
     items: list[Item] = []
     if old.task is not new.task:
         items.append(f"Each arm takes a pose as its own task reads it: {old.task.matches}; now {new.task.matches}.")
+    if found.old.derivation is None or found.new.derivation is None:
+        items.append("Fewer poses than asked for: a numeric inverse takes its time.")
     items.append(f"Lost: {_of(lost)} random poses of the old arm.")
     items += _examples(old, lost.examples, "Joint values of the old arm, why the new one fails, the poses:")
     if lost.off_branch:
@@ -249,7 +251,10 @@ def _verdict_row(verdict: Verdict) -> tuple[str, ...]:
 
 def _costs(costs: Sequence[Cost]) -> list[Item]:
     rows = tuple((cost.function, *_cost_cells(cost.old, cost.new)) for cost in costs)
-    return [Grid(HEAD, rows, right=tuple(range(1, len(HEAD))))]
+    items: list[Item] = [Grid(HEAD, rows, right=tuple(range(1, len(HEAD))))]
+    if any(cost.old is None or cost.new is None for cost in costs):
+        items.append("?: a numeric inverse takes as many steps as it needs; its header tells the most.")
+    return items
 
 
 def _cost_cells(old: OperationCount | None, new: OperationCount | None) -> list[str]:
