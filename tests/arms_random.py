@@ -217,6 +217,8 @@ def _fits(structure: Structure, arm: Arm) -> bool:
     axes = reference.chain(q).axes
     if structure.planar and not _is_planar(axes[:, [int(k) - 1 for k in structure.planar]], structure):
         return False
+    if structure.planar and structure.kinds == "PP" and np.abs(np.cross(axes[:, 0], axes[:, 1])).max() < _PARALLEL:
+        return False
     turning = axes[:, reference.revolute]
     if structure.upright and np.abs(turning[..., :2]).max(initial=0.0) > _PARALLEL:
         return False
