@@ -79,7 +79,7 @@ def test_damped_least_squares():
     damping = np.array([1.0, 1e-3, 1e-6, 0.3])
     found = np.array(least_squares_step([list(row) for row in rows], list(residual), damping))
     for lane in range(4):
-        below = np.sqrt(damping[lane]) * np.eye(5)
+        below = damping[lane] * np.eye(5)
         wanted, *_ = np.linalg.lstsq(
             np.vstack((rows[:, :, lane], below)), np.concatenate((residual[:, lane], np.zeros(5))), rcond=None
         )

@@ -1,7 +1,7 @@
 """The steps of the generated C on many lanes at once: one start for one pose in each lane.
 
 Every step solves the task's residuals to first order by damped least squares (Levenberg 1944, here with a damping in
-proportion to the squared residual, so that it fades as the solution is neared and the steps become Newton's). The
+proportion to the residual, so that it fades as the solution is neared and the steps become Newton's). The
 arithmetic is that of `lanes`, so a prepared table is the same on every machine.
 """
 
@@ -27,8 +27,8 @@ from codegen.tracking.lanes import (
 from codegen.tracking.shape import ArmShape
 from codegen.tracking.turns import Turn, axis_turn, heading_turn, no_turn, pitch_turn, plane_turn, rotation_turn
 
-DAMPING = 0.02  # of the squared residual; measured: 0.003 to 0.05 need the same number of starts
-LEAST_DAMPING = 1e-16
+DAMPING = 0.14  # of the residual; measured: 0.05 to 0.2 need the same number of starts
+LEAST_DAMPING = 1e-8
 LARGEST_MOVE = 2.0  # rad, or slide units, of one joint in one step
 SEARCH_STEPS = 16  # of one start; measured: 12 loses a third of the starts, 20 costs more than it finds
 NEAR = 1e-2  # residual from which on a start may finish
@@ -76,7 +76,7 @@ class Batch:
             steps[active] += 1
             rows = [[entry[lasting] for entry in row] for row in rows]
             residual = [entry[lasting] for entry in residual]
-            self._moved(q, active, least_squares_step(rows, residual, DAMPING * size * size + LEAST_DAMPING))
+            self._moved(q, active, least_squares_step(rows, residual, DAMPING * size + LEAST_DAMPING))
         return q, solved, steps
 
     def _moved(self, q: LaneVector, active: npt.NDArray[np.intp], move: LaneVector) -> None:

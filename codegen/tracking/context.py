@@ -187,8 +187,8 @@ def _numbers(arm: Arm, shape: ArmShape, real: RealType, bounded: bool) -> tuple[
     least = min(_number(slowness(arm, joint)) * _unit(shape, joint) for joint in shape.free)
     rows: list[tuple[str, Real, str]] = [
         ("LENGTH_SCALE", shape.length_scale, "1/m, a residual length of half the reach counts as 1 rad"),
-        ("DAMPING", Fraction(str(DAMPING)), "of the squared residual"),
-        ("LEAST_DAMPING", u, "keeps steps at singular places within rounding"),
+        ("DAMPING", Fraction(str(DAMPING)), "of the residual"),
+        ("LEAST_DAMPING", MP.sqrt(_number(u)), "keeps steps at singular places within rounding"),
         ("LARGEST_MOVE", Fraction(str(LARGEST_MOVE)), "of an unknown in one step"),
         ("CAUGHT", Fraction(str(NEAR)), "a residual from which a start may finish"),
         ("SOLVED", solved, "a residual that rounding alone can explain"),

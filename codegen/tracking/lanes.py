@@ -75,7 +75,7 @@ def combined(weights: list[float], vectors: list[LaneVector]) -> LaneVector:
 
 
 def least_squares_step(rows: list[LaneVector], residual: LaneVector, damping: Lane) -> LaneVector:
-    """The x that makes |rows x - residual|^2 + damping |x|^2 least, by the normal equations.
+    """The x that makes |rows x - residual|^2 + |damping x|^2 least, by the normal equations.
 
     rows[i][j] and residual[i] are lanes. Levenberg, "A method for the solution of certain non-linear problems in least
     squares", Quart. Appl. Math. 2 (1944). Factored as L D L' without pivoting: the matrix is positive definite.
@@ -88,7 +88,7 @@ def least_squares_step(rows: list[LaneVector], residual: LaneVector, damping: La
     inverse: list[Lane] = []
     for i in range(count):
         lower: list[Lane] = []
-        pivot = matrix[i][i] + damping
+        pivot = matrix[i][i] + damping * damping
         for j in range(i):
             entry = matrix[i][j]
             for k in range(j):
