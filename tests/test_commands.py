@@ -204,6 +204,17 @@ def test_c_that_was_just_generated_is_not_stale(generated: Path) -> None:
     assert (done.status, done.out) == (0, "")
 
 
+def test_the_files_beside_the_c_can_be_stale_too(generated: Path) -> None:
+    done = call("stale", PLOTTER, "--out", generated, "--self-test")
+    assert done.status == 1
+    assert done.out == "".join(
+        f"{generated / name}: missing\n" for name in ("arm_kin_selftest.c", "arm_kin_selftest.h")
+    )
+    assert call("generate", PLOTTER, "--out", generated, "--self-test").status == 0
+    assert call("stale", PLOTTER, "--out", generated, "--self-test").status == 0
+    assert call("stale", PLOTTER, "--out", generated, "--self-test", "--self-test-size", "3").status == 1
+
+
 def test_a_change_by_hand_is_shown_with_its_lines(generated: Path) -> None:
     header = generated / "arm_kin.h"
     text = header.read_text(encoding="utf-8")

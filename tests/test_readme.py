@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import shutil
 import subprocess
 import tomllib
 from pathlib import Path
@@ -39,19 +38,28 @@ def test_the_piece_of_c_comes_out(generated: Path) -> None:
     assert blocks("c")[0] in (generated / "arm_kin.c").read_text(encoding="utf-8")
 
 
-def test_the_control_loop_compiles_and_links_with_nothing_else(generated: Path) -> None:
+STRICT = ["-std=c99", "-O2", "-ffp-contract=off", "-Wall", "-Wextra", "-Wpedantic", "-Wconversion", "-Wshadow", "-Werror"]
+
+
+def compiled(folder: Path, block: str, *others: str) -> None:
+    """Compiles a block with the generated files and links it to a program, with nothing else."""
     need_programs("gcc")
-    caller = "int main(void)\n{\n    return 0;\n}\n"
-    (generated / "loop.c").write_text(re.sub(r"^arm_status", "static arm_status", blocks("c")[1], flags=re.M), "utf-8")
-    flags = ["-std=c99", "-O2", "-ffp-contract=off", "-Wall", "-Wextra", "-Wpedantic", "-Wconversion", "-Werror"]
-    unused = ["-Wno-unused-function"]
-    command = [shutil.which("gcc") or "gcc", *flags, *unused, "-c", "loop.c", "arm_kin.c"]
-    done = subprocess.run(command, cwd=generated, capture_output=True, text=True, check=False)
+    # The first declaration stands for the prototype that a project has in a header of its own.
+    prototypes = re.sub(r"^((?:arm_status|bool) \w+\([^)]*\))$", r"\1;\n\1", block, flags=re.MULTILINE)
+    text = f"#include <stdbool.h>\n{prototypes}\nint main(void)\n{{\n    return 0;\n}}\n"
+    (folder / "example.c").write_text(text, encoding="utf-8")
+    command = ["gcc", *STRICT, "-o", "program", "example.c", "arm_kin.c", *others]
+    done = subprocess.run(command, cwd=folder, capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr
-    (generated / "main.c").write_text(caller, encoding="utf-8")
-    command = ["gcc", "-o", "program", "main.c", "loop.o", "arm_kin.o"]
-    done = subprocess.run(command, cwd=generated, capture_output=True, text=True, check=False)
-    assert done.returncode == 0, done.stderr
+
+
+def test_the_control_loop_compiles_and_links_with_nothing_else(generated: Path) -> None:
+    compiled(generated, blocks("c")[1])
+
+
+def test_the_power_up_test_compiles_and_links(generated: Path) -> None:
+    assert call("generate", generated / "plotter.toml", "--out", generated, "--self-test").status == 0
+    compiled(generated, blocks("c")[2], "arm_kin_selftest.c")
 
 
 def test_every_command_has_its_row_and_every_row_its_command() -> None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from codegen.commands.arguments import AngleError, ArmPath, Math, OutFolder, Prefix, Real, wanted
+from codegen.commands.arguments import AngleError, ArmPath, Math, OutFolder, Prefix, Real, Wanted, wanted
 from codegen.commands.beside import EvidenceWanted, SelfTest, SelfTestSize, check_size, evidence_of, self_test_of
 from codegen.commands.console import say
 from codegen.writing import write_files
@@ -28,11 +28,16 @@ def generate(
       linkwright generate arms/vial_picker.toml --out firmware/src --real float
     """
     check_size(self_test, self_test_size)
-    what = wanted(arm, real, math, prefix, angle_error)
+    files = all_files(wanted(arm, real, math, prefix, angle_error), self_test, self_test_size, evidence)
+    write_files(out, files)
+    say(f"wrote {', '.join(str(out / name) for name in sorted(files))}")
+
+
+def all_files(what: Wanted, self_test: bool, self_test_size: int | None, evidence: bool) -> dict[str, str]:
+    """The C and what is asked for beside it."""
     files = what.generated()
     if self_test:
         files |= self_test_of(what, files, self_test_size)
     if evidence:
         files |= evidence_of(what, files)
-    write_files(out, files)
-    say(f"wrote {', '.join(str(out / name) for name in sorted(files))}")
+    return files

@@ -8,7 +8,9 @@ from typing import Annotated
 import typer
 
 from codegen.commands.arguments import AngleError, ArmPath, Math, Prefix, Real, wanted
+from codegen.commands.beside import EvidenceWanted, SelfTest, SelfTestSize, check_size
 from codegen.commands.console import say, show_data
+from codegen.commands.generate import all_files
 
 _MOST_LINES = 24  # of a difference
 
@@ -22,6 +24,9 @@ def stale(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    self_test: SelfTest = False,
+    self_test_size: SelfTestSize = None,
+    evidence: EvidenceWanted = False,
 ) -> None:
     """Tell whether the C in a folder is out of date.
 
@@ -32,7 +37,8 @@ def stale(
     Example, a step of continuous integration:
       linkwright stale arms/vial_picker.toml --out firmware/src
     """
-    files = wanted(arm, real, math, prefix, angle_error).generated()
+    check_size(self_test, self_test_size)
+    files = all_files(wanted(arm, real, math, prefix, angle_error), self_test, self_test_size, evidence)
     differences = [text for name in sorted(files) if (text := _difference(out / name, files[name]))]
     if not differences:
         say(f"{', '.join(str(out / name) for name in sorted(files))}: up to date with {arm}")
