@@ -272,6 +272,18 @@ def test_stretched_seed_finds_its_way_in():
     assert reference.forward(q.astype(float)).position[0] == pytest.approx([0.5, 0, 0], abs=1e-6)
 
 
+def test_half_a_turn_is_not_taken_for_none():
+    """At a seed whose tool is turned by half a turn from the target, axis times sine is zero: no solution stands there."""
+    c, reference = kinematics(OFFSET_WRIST), Reference(OFFSET_WRIST)
+    q = np.random.default_rng(14).uniform(-3, 3, (100, 6))
+    pose = reference.forward(q)
+    turned = Poses(pose.rotation * np.array([1.0, -1.0, -1.0]), pose.position)
+    found, status = c.inverse(c.pack(turned), np.zeros(100, dtype=int), q)
+    solved = status == Status.OK
+    assert solved.any()
+    assert np.abs(reference.forward(found[solved]).rotation - turned.rotation[solved]).max() < 1e-13
+
+
 def _small(arm: Arm, real: RealType):
     """Compiled from a table that was prepared with little effort, whether or not the arm has a closed form."""
     options = Options(real)
