@@ -291,6 +291,19 @@ SLIDE_AND_PARALLEL = [
     Structure("slide among parallel 2-3-4-5", Task.POSE, "RRPRRR", parallel="2345"),
     Structure("slide among parallel 1-2-3-4", Task.POSE, "RRRPRR", parallel="1234"),
 ]
+PAIR_AND_SLIDES = [
+    Structure("pair 1-2, slides", Task.POSE, "RRRRPP", parallel="12"),
+    Structure("pair 2-3, slides", Task.POSE, "RRRPRP", parallel="23"),
+    Structure("pair 3-4, slides", Task.POSE, "PPRRRR", parallel="34"),
+    Structure("pair 4-5, slides", Task.POSE, "PRPRRR", parallel="45"),
+    Structure("pair 5-6, slides", Task.POSE, "RPPRRR", parallel="56"),
+    Structure("pair 1-2, slides, apart", Task.POSE, "RRPRPR", parallel="12"),
+    Structure("two pairs, slide", Task.POSE, "RRRRRP", parallel="12 34"),
+    Structure("two pairs, slide within", Task.POSE, "RRPRRR", parallel="12 45"),
+    Structure("axis, pair 1-2, slides", Task.POINT_AXIS, "RRRPP", parallel="12"),
+    Structure("axis, pair 3-4, slides", Task.POINT_AXIS, "PPRRR", parallel="34"),
+    Structure("axis, pair 2-3, slides", Task.POINT_AXIS, "PRRPR", parallel="23"),
+]
 POSE_ARMS = [*SPHERICAL, *PARALLEL, *UNDER_A_WRIST, *BEHIND_A_SHOULDER, *AROUND_2_3_4, *AROUND_3_4_5]
 POSE_ARMS += [*THREE_SLIDES, *SLIDE_AND_PARALLEL]
 
