@@ -233,7 +233,8 @@ class Builder:
                 return left
             if right.is_exactly(-1):
                 return self.neg(left)
-            return self.mul(left, self._derived(f"1/{_bracketed(right.label)}", 1 / MP.mpf(right.value)))
+            divisor = f"({right.label})" if set("*/ ") & set(right.label) else _bracketed(right.label)
+            return self.mul(left, self._derived(f"1/{divisor}", 1 / MP.mpf(right.value)))
         if left.is_exactly(0):
             return left
         return self._intern(

@@ -207,7 +207,7 @@ class Statements:
         self._store(name)
 
     def _flat(self, step: BalanceStep) -> str:
-        if step.flat is None:
+        if step.flat is None or step.flat.is_exactly(0):
             return self.zero
         return "FLAT" if step.flat.is_exactly(1) else f"FLAT * {self.scope.factor(step.flat)}"
 

@@ -13,7 +13,7 @@ dependent, the outer joint comes from an equation of the first degree instead.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from codegen.geometry import Vector
 from codegen.inverse.plan import Least
@@ -40,6 +40,7 @@ class Outer:
     least: Least
     score: int
     kind: str
+    distance: bool = False  # the equation is the distance from a point that the joints before it cannot change
 
 
 def point_equations(
@@ -95,7 +96,8 @@ def _outer_under_turn(solver: Solver, equations: list[Equation], u: PolyVector, 
     if empty[0]:
         return _graded(solver, left, first.least, algebra)
     if empty[1]:
-        return _graded(solver, right, second.least, algebra)
+        found = _graded(solver, right, second.least, algebra)
+        return found and replace(found, distance=second.least is Least.AREA)
     det = b.sub(b.mul(first.a[0], second.a[1]), b.mul(first.a[1], second.a[0]))
     if oracle.vanishes(det):
         k = 0 if not oracle.vanishes(first.a[0]) else 1
@@ -149,8 +151,8 @@ def _graded(solver: Solver, poly: Poly, least: Least, algebra: Algebra) -> Outer
     return Outer(poly, least, 22, "quartic") if poly.degree <= 4 else None
 
 
-def solve_outer(solver: Solver, use: Use, outer: Outer, note: str) -> None:
-    """Solve the equation of the outer joint alone."""
+def solve_outer(solver: Solver, use: Use, outer: Outer, note: str, square: Node | None = None) -> None:
+    """Solve the equation of the outer joint alone; `square` is its discriminant where a better form of it is known."""
     b, zero, poly = solver.builder, solver.space.zero, outer.poly
     # The polynomial was made with the motion's own sign folded in, so it speaks of the joint itself.
     own = Use(use.joint)
@@ -161,6 +163,8 @@ def solve_outer(solver: Solver, use: Use, outer: Outer, note: str) -> None:
             b.neg(poly.coefficient((0, 0), zero)),
             outer.least,
         )
+        if square is not None and not equation.fixed:
+            equation = replace(equation, square=square)
         solver.balance(own, equation, note)
     elif outer.kind == "slide":
         solver.slide(own, b.neg(poly.coefficient((0, 0), zero)), poly.coefficient((1, 0), zero), note)

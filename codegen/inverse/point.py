@@ -40,9 +40,20 @@ class Elimination:
     """One way to solve a three-joint point problem: joint 1 eliminated, joint 3 first, then 2, then 1."""
 
     problem: PointProblem
-    u: PolyVector
+    source: Carried
+    p: Vector
     equations: list[Equation]
     outer: Outer
+
+    def square(self, solver: Solver) -> Node | None:
+        """The discriminant of a distance equation as that of a triangle, which keeps its digits where it is flat."""
+        if not self.outer.distance:
+            return None
+        b, space = solver.builder, solver.space
+        first, second = self.source.sides
+        rise = b.add(first[2], second[2])
+        across = b.sub(space.dot(self.p, self.p), b.square(rise))
+        return _flat_triangle(solver, _square_xy(solver, first), _square_xy(solver, second), across)
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,6 +63,7 @@ class Carried:
     u: PolyVector
     square: Poly
     algebra: Algebra
+    sides: tuple[Vector, Vector]  # seen along axis 3: from the axis to joint 2's point, and to the point carried
 
 
 def carried(solver: Solver, segment: Segment, w: Vector) -> Carried:
@@ -72,7 +84,7 @@ def carried(solver: Solver, segment: Segment, w: Vector) -> Carried:
         x_square = algebra.add(*(algebra.mul(entry, entry) for entry in x))
     doubled = algebra.scale(algebra.dot(back, x), b.integer(2))
     square = algebra.add(x_square, doubled, algebra.constant(space.dot(back, back)))
-    return Carried(u, square, algebra)
+    return Carried(u, square, algebra, (back, start))
 
 
 def eliminations(solver: Solver, problem: PointProblem) -> list[Elimination]:
@@ -86,7 +98,7 @@ def eliminations(solver: Solver, problem: PointProblem) -> list[Elimination]:
         equations = point_equations(solver, first, core, source.square, p, algebra)
         outer = outer_equation(solver, equations, u, algebra, way.segment.uses[1])
         if outer is not None:
-            ways.append(Elimination(way, u, equations, outer))
+            ways.append(Elimination(way, source, p, equations, outer))
     return sorted(ways, key=lambda way: way.outer.score)
 
 
@@ -112,9 +124,9 @@ def solve_point3(solver: Solver, problem: PointProblem, what: str) -> bool:
     segment = way.problem.segment
     outer_use = segment.uses[2]
     note = f"{what}: {_what_is_left(solver, segment)}"
-    solve_outer(solver, outer_use, way.outer, note)
+    solve_outer(solver, outer_use, way.outer, note, way.square(solver))
     if way.outer.kind == "quartic":
-        polish(solver, segment.uses[1], outer_use, way.equations, way.u, what)
+        polish(solver, segment.uses[1], outer_use, way.equations, way.source.u, what)
         _last_joint(solver, _without_last(solver, way.problem), what)
         return True
     return solve_point2(solver, _without_last(solver, way.problem), what)
@@ -195,14 +207,17 @@ def _parallel_axes(core: Core) -> bool:
 
 
 def _triangle_square(solver: Solver, t: Vector, u: Vector, p: Vector) -> Node:
-    """A^2 + B^2 - C^2 of a triangle with sides a, b and the distance c, by its factors (Heron): it keeps its digits where
-    the triangle is flat."""
+    """A^2 + B^2 - C^2 of parallel axes: the two links and the distance, seen along the axes."""
+    return _flat_triangle(solver, _square_xy(solver, t), _square_xy(solver, u), _square_xy(solver, p))
+
+
+def _flat_triangle(solver: Solver, first: Node, second: Node, across: Node) -> Node:
+    """(a b)^2 - C^2 of a triangle with the squares of its sides a, b and c, by its factors (Heron): it keeps its digits
+    where the triangle is flat."""
     b = solver.builder
-    first = b.sqrt(_square_xy(solver, t))
-    second = b.sqrt(_square_xy(solver, u))
-    across = _square_xy(solver, p)
-    stretched = b.sub(b.square(b.add(first, second)), across)
-    folded = b.sub(across, b.square(b.sub(first, second)))
+    a_side, b_side = b.sqrt(first), b.sqrt(second)
+    stretched = b.sub(b.square(b.add(a_side, b_side)), across)
+    folded = b.sub(across, b.square(b.sub(a_side, b_side)))
     return b.mul(b.half(stretched), b.half(folded))
 
 
