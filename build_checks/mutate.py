@@ -2,8 +2,10 @@
 
     python -m build_checks.mutate arms/bench_six.toml
 
-A fault that no check notices is either no fault (the same machine code, or a reason in `mutate_known`) or a hole in the
-checks. Every mutant is compiled and judged in a process of its own, since some of them crash or never end.
+A fault that no check notices is either no fault or a hole in the checks. It is none where the compiler makes the same
+machine code of it, where its results are the original's on many other inputs (`mutate_triage`) or differ by less than
+the promised accuracy, and where `mutate_known` has the reason. Every mutant is compiled and judged in a process of its
+own, since some of them crash or never end.
 """
 
 from __future__ import annotations
@@ -21,15 +23,20 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
+from functools import cache
 from itertools import islice
 from multiprocessing.connection import Connection
 from pathlib import Path
 
+import numpy as np
+
 from build_checks.agree import Settings, agree
-from build_checks.compile import FLAGS, find_compiler
+from build_checks.agree_bench import Bench
+from build_checks.compile import FLAGS, Kinematics, compiled, find_compiler
 from build_checks.mutate_kinds import Kind, Mutant, mutants
 from build_checks.mutate_known import why_equivalent
 from build_checks.mutate_tokens import compiled_lines, read_source
+from build_checks.mutate_triage import Difference, difference, make_inputs, results
 from codegen.armfile import read_arm
 from codegen.errors import CheckFailedError, Fault
 from codegen.model import Arm
@@ -39,6 +46,7 @@ from codegen.pipeline import generate
 FAST, SLOW = 1000, 16_000  # samples: of every mutant, and once more of those that survive
 _SECONDS = 30  # of the processor, for one mutant
 _NOT_COMPILED, _CRASHED = "does not compile", "crashes or never ends"
+_HARMLESS = (Difference.NONE.value, Difference.ROUNDING.value)
 PORTABLE = ("-U__GNUC__", "-U__SSE2__")  # the C that other compilers see
 
 
@@ -48,11 +56,13 @@ class Outcome:
 
     caught_by   names of the checks that failed, or what happened instead; empty: it survived
     equivalent  why a survivor behaves as the original; "" when that is not known
+    difference  of a survivor from the original
     """
 
     mutant: Mutant
     caught_by: tuple[str, ...]
     equivalent: str = ""
+    difference: str = ""
 
     @property
     def counts(self) -> bool:
@@ -134,8 +144,14 @@ def _outcome(original: Original, code: str, judge_: _Judge, mutant: Mutant) -> O
         return Outcome(mutant, caught)
     if _machine_code(original, files) == code:
         return Outcome(mutant, (), "the compiler makes the same machine code of it")
-    reason = why_equivalent(mutant, read_source(files[original.file]).line(mutant.line))
-    return Outcome(mutant, () if reason else judge_.failures(files, SLOW), reason)
+    line = original.files[original.file].split("\n")[mutant.line - 1]
+    reason = why_equivalent(mutant, line)
+    if reason:
+        return Outcome(mutant, (), reason)
+    difference = judge_.difference(files)
+    if difference in _HARMLESS:
+        return Outcome(mutant, (), difference)
+    return Outcome(mutant, judge_.failures(files, SLOW), "", difference)
 
 
 def _machine_code(original: Original, files: dict[str, str]) -> str:
@@ -180,13 +196,20 @@ class _Judge:
     def _start(self) -> None:
         context = multiprocessing.get_context("spawn")
         self._here, there = context.Pipe()
-        arguments = (there, self._original.arm, self._original.options)
+        arguments = (there, self._original)
         self._process = context.Process(target=_serve, args=arguments, daemon=True)
         self._process.start()
         there.close()
 
     def failures(self, files: dict[str, str], samples: int) -> tuple[str, ...]:
         """Names of the checks that fail, or what else is wrong; empty when all agrees."""
+        return self._ask(files, samples)
+
+    def difference(self, files: dict[str, str]) -> str:
+        """How its results differ from the original's."""
+        return self._ask(files, 0)[0]
+
+    def _ask(self, files: dict[str, str], samples: int) -> tuple[str, ...]:
         try:
             self._here.send((files, samples))
             found: tuple[str, ...] = self._here.recv()
@@ -208,14 +231,33 @@ class _Judge:
         self._end()
 
 
-def _serve(there: Connection, arm: Arm, options: Options) -> None:
+def _serve(there: Connection, original: Original) -> None:
+    """Answers requests (files, samples): what `agree` finds, or with 0 samples the difference from the original."""
+    compare = cache(lambda: _Comparison(original))
     while True:
         try:
             files, samples = there.recv()
         except EOFError:
             return
         _allow(_SECONDS)
-        there.send(_failures(arm, files, options, samples))
+        failures = _failures(original.arm, files, original.options, samples) if samples else compare().of(files)
+        there.send(failures)
+
+
+class _Comparison:
+    """The original's results, kept to be compared with many others."""
+
+    def __init__(self, original: Original) -> None:
+        self._original = original
+        with compiled(dict(original.files), original.options) as library, np.errstate(all="ignore"):
+            self._bench = Bench(original.arm, library)
+            self._inputs = make_inputs(self._bench)
+            self._right = results(self._bench.c, self._inputs)
+
+    def of(self, files: dict[str, str]) -> tuple[str]:
+        with compiled(files, self._original.options) as library, np.errstate(all="ignore"):
+            other = results(Kinematics(library), self._inputs)
+            return (difference(self._bench, self._inputs, self._right, other).value,)
 
 
 def _allow(seconds: int) -> None:
@@ -259,7 +301,7 @@ def _reasons(outcomes: Sequence[Outcome]) -> list[str]:
 
 
 def _survivors(outcomes: Sequence[Outcome]) -> list[str]:
-    return ["", "survived:", *(f"  {row.mutant}" for row in survivors(outcomes))]
+    return ["", "survived:", *(f"  {row.mutant} ({row.difference})" for row in survivors(outcomes))]
 
 
 def survivors(outcomes: Sequence[Outcome]) -> list[Outcome]:

@@ -95,7 +95,7 @@ def _inside(source: Source) -> Iterator[tuple[int, Token]]:
 
 
 def _text(source: Source, index: int) -> str:
-    return source.tokens[index].text if 0 <= index < len(source.tokens) else ""
+    return source.tokens[index].text
 
 
 def _ends_value(source: Source, index: int) -> bool:
@@ -158,10 +158,6 @@ def _signs(source: Source) -> Found:
             yield i, i, ""
         elif token.text in ("+=", "-="):
             yield i, i, "-=" if token.text == "+=" else "+="
-    yield from _signs_of_constants(source)
-
-
-def _signs_of_constants(source: Source) -> Found:
     for i, token in enumerate(source.tokens):
         if not token.function and token.text == "-" and source.tokens[i + 1].kind == "number":
             yield i, i, ""

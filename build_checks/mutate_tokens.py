@@ -50,9 +50,6 @@ class Source:
         """The text from token `first` to token `last`, both included; "" when there are none."""
         return self.text[self.tokens[first].start : self.tokens[last].end] if first <= last else ""
 
-    def line(self, number: int) -> str:
-        return self.text.split("\n")[number - 1].strip()
-
 
 def read_source(text: str) -> Source:
     plain = [(match.lastgroup or "", match[0], match.start()) for match in _PARTS.finditer(text)]
