@@ -44,7 +44,6 @@ from codegen.options import Mathematics, Options, RealType
 from codegen.pipeline import generate
 
 FAST, SLOW = 1000, 16_000  # samples: of every mutant, and once more of those that survive
-_SECONDS = 30  # of the processor, for one mutant
 _NOT_COMPILED, _CRASHED = "does not compile", "crashes or never ends"
 _HARMLESS = (Difference.NONE.value, Difference.ROUNDING.value)
 PORTABLE = ("-U__GNUC__", "-U__SSE2__")  # the C that other compilers see
@@ -72,12 +71,14 @@ class Outcome:
 
 @dataclass(frozen=True, slots=True)
 class Original:
-    """The C that faults are planted in, with compiler flags that choose its variant."""
+    """The C that faults are planted in, with compiler flags that choose its variant; seconds of the processor that one
+    mutant may take."""
 
     arm: Arm
     files: Mapping[str, str]
     options: Options
     flags: tuple[str, ...] = ()
+    seconds: int = 30
 
     @property
     def file(self) -> str:
@@ -239,7 +240,7 @@ def _serve(there: Connection, original: Original) -> None:
             files, samples = there.recv()
         except EOFError:
             return
-        _allow(_SECONDS)
+        _allow(original.seconds)
         failures = _failures(original.arm, files, original.options, samples) if samples else compare().of(files)
         there.send(failures)
 
