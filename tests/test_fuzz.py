@@ -9,7 +9,8 @@ import pytest
 from required_tools import need_packages, need_programs
 
 from build_checks.fuzz import RECORD, FuzzResult, fuzz, random_records, seed_records
-from build_checks.fuzz_armfile import check_outcome, fuzz_reader
+from build_checks.fuzz_armfile import fuzz_reader
+from build_checks.fuzz_armfile_target import check_outcome
 from codegen.armfile import read_arm
 from codegen.options import Options, RealType
 from codegen.pipeline import generate
@@ -82,11 +83,12 @@ def test_records_are_the_same_each_time_and_of_one_length() -> None:
     assert records == [*seed_records(arm, RealType.DOUBLE), *random_records(arm, 50, SEED)]
 
 
-def test_any_bytes_give_an_arm_or_a_refusal() -> None:
+def test_any_bytes_give_an_arm_or_a_refusal(tmp_path: Path) -> None:
     need_packages("atheris")
-    found = fuzz_reader(EXAMPLES, READER_RUNS, seed=SEED)
+    found = fuzz_reader(EXAMPLES, READER_RUNS, seed=SEED, corpus=tmp_path)
     assert found.failure == ""
     assert found.executions >= READER_RUNS
+    assert len(list(tmp_path.iterdir())) > len(EXAMPLES)  # paths through the reader are told apart
 
 
 def test_a_reader_that_breaks_its_promise_is_found(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
