@@ -7,6 +7,7 @@
 #include <math.h>
 #include <stddef.h>
 
+#define TINY ((own_real)1 / ((uint64_t)1 << (OWN_DIGITS / 2 + 1)))
 #define SMALL ((wide)1 / ((wide)1024 * 1024))
 
 typedef struct worst {
@@ -75,12 +76,15 @@ void scan_near(uint64_t first, uint64_t last, uint64_t stride, worst *sine, wors
 {
     for (uint64_t word = first; word <= last; word += stride) {
         const own_real angle = number(word);
-        const wide sine_of_angle = true_sine((wide)angle);
-        const wide cosine_of_angle = true_cosine((wide)angle);
         own_real s;
         own_real c;
 
         own_sin_cos(angle, &s, &c);
+        if ((angle < TINY) && (s == angle) && (c == 1)) {
+            continue;  /* within angle^2 / 6 of the result, less than a tenth of an ulp */
+        }
+        const wide sine_of_angle = true_sine((wide)angle);
+        const wide cosine_of_angle = true_cosine((wide)angle);
         take(sine, ((wide)s - sine_of_angle) / spacing(sine_of_angle), angle, 0);
         take(cosine, ((wide)c - cosine_of_angle) / spacing(cosine_of_angle), angle, 0);
     }
@@ -113,7 +117,11 @@ static void take_atan2(worst *most, own_real y, own_real x)
 void scan_arc(uint64_t first, uint64_t last, uint64_t stride, worst *most)
 {
     for (uint64_t word = first; word <= last; word += stride) {
-        take_atan2(most, number(word), 1);
+        const own_real ratio = number(word);
+
+        if ((ratio >= TINY) || (own_atan2(ratio, 1) != ratio)) {  /* else within ratio^2 / 3 of the result */
+            take_atan2(most, ratio, 1);
+        }
     }
 }
 
@@ -150,3 +158,29 @@ uint64_t scan_roots(uint64_t first, uint64_t last, uint64_t stride)
     }
     return wrong;
 }
+
+#if defined(OWN_SOFTWARE_FLOAT)
+/* How many quotients and conversions made without a float unit differ from this machine's, whose bits they must have. */
+uint64_t scan_software(uint64_t seed, uint64_t count)
+{
+    uint64_t state = seed;
+    uint64_t wrong = 0;
+
+    for (uint64_t turn = 0; turn < count; ++turn) {
+        own_bits small;
+        own_bits large;
+        int32_t whole;
+
+        state = state * 6364136223846793005u + 1442695040888963407u;  /* D. E. Knuth, MMIX, as in TAOCP 2, 3.3.4 */
+        small.word = 0x3F800000u | ((uint32_t)(state >> 41) & 0x007FFFFFu);
+        large.word = 0x40000000u | ((uint32_t)(state >> 18) & 0x007FFFFFu);
+        if ((turn & 1u) != 0u) {  /* neighbours: quotients next to 1 */
+            large.word = small.word + ((uint32_t)(state >> 60));
+        }
+        wrong += (own_quotient(small, large) != small.real / large.real);
+        whole = (int32_t)(uint32_t)(state >> 32) >> (turn % 31u);
+        wrong += (own_real_of(whole, 127u) != (own_real)whole / 1073741824.0f);
+    }
+    return wrong;
+}
+#endif

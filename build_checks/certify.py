@@ -37,6 +37,7 @@ void scan_far(uint64_t, uint64_t, uint64_t, worst *);
 void scan_arc(uint64_t, uint64_t, uint64_t, worst *);
 void scan_pairs(uint64_t, uint64_t, worst *);
 uint64_t scan_roots(uint64_t, uint64_t, uint64_t);
+uint64_t scan_software(uint64_t, uint64_t);
 """
 
 
@@ -97,8 +98,10 @@ def functions_text(options: Options, portable_root: bool = False) -> str:
 
 
 @contextmanager
-def measuring(options: Options, portable_root: bool = False) -> Iterator[tuple[Any, cffi.FFI]]:
-    """The compiled functions with the harness behind them."""
+def measuring(
+    options: Options, portable_root: bool = False, defined: tuple[str, ...] = ()
+) -> Iterator[tuple[Any, cffi.FFI]]:
+    """The compiled functions with the harness behind them; `defined`: macros as another processor would have them."""
     scan = SCANS[options.real]
     text = functions_text(replace(options, prefix=_PREFIX), portable_root)
     ffi = cffi.FFI()
@@ -107,6 +110,7 @@ def measuring(options: Options, portable_root: bool = False) -> Iterator[tuple[A
         source, library = Path(folder) / "own.c", Path(folder) / "own.so"
         source.write_text("#include <float.h>\n" + text + scan.definitions + HARNESS.read_text())
         flags = ["-std=c99", "-O2", "-ffp-contract=off", "-fno-builtin", "-fPIC", "-shared"]
+        flags += [f"-D{macro}" for macro in defined]
         command = [find_compiler(), *flags, str(source), "-o", str(library), "-lm"]
         run = subprocess.run(command, capture_output=True, text=True, check=False)
         if run.returncode != 0:
@@ -176,6 +180,13 @@ def wrong_roots(real: RealType, portable: bool, sparser: int = 1) -> int:
     last = scan.word(float("inf")) - 1
     with measuring(Options(real=real), portable) as (library, _):
         return int(library.scan_roots(1, last, scan.stride * sparser))
+
+
+def wrong_without_float_unit(count: int) -> int:
+    """How many quotients and conversions differ that are made in whole numbers where a processor has no float unit."""
+    options = Options(angles=Arithmetic.INTEGER)
+    with measuring(options, defined=(f"{_PREFIX.upper()}_SOFTWARE_FLOAT",)) as (library, _):
+        return int(library.scan_software(1, count))
 
 
 def figures_text(rows: list[Figures]) -> str:

@@ -12,14 +12,14 @@ from codegen.options import RealType
 
 @dataclass(frozen=True, slots=True)
 class WorstTexts:
-    """For example "0.55 ulp, at 0.78539f"."""
+    """For example "0.55 ulp, at 0.78539f"; `over` says over which numbers."""
 
     sine: str
     cosine: str
     sine_cosine: str
     arc: str
     atan2: str
-    every: str
+    over: str
 
 
 def worst_texts(figures: Figures, real: RealType) -> WorstTexts:
@@ -30,7 +30,7 @@ def worst_texts(figures: Figures, real: RealType) -> WorstTexts:
         sine_cosine=_text(figures.sine_cosine, real),
         arc=_text(figures.arc, real),
         atan2=_text(figures.atan2, real),
-        every="every" if real is RealType.FLOAT else "a dense sample of every",
+        over="every number" if real is RealType.FLOAT else "a dense sample of numbers",
     )
 
 
