@@ -437,6 +437,7 @@ static void damage(source *from)
         asked.true_pose = 0;
     } else {
         asked.wanted.p[place % 3] = value;
+        asked.true_pose = asked.true_pose && isfinite(value);
     }
 }
 
