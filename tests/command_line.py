@@ -39,6 +39,12 @@ def call(*arguments: str | Path) -> Done:
     return Done(int(str(status or 0)), out.getvalue(), err.getvalue())
 
 
+def without_progress(err: str) -> str:
+    """Standard error without the lines that a command shows when it takes over a second, on a busy machine say."""
+    lines = err.splitlines(keepends=True)
+    return "".join(line for line in lines if not line.startswith(("deriving the inverse kinematics", "checking: ")))
+
+
 def names_in(folder: Path) -> list[str]:
     """Everything that lies in a folder, hidden files too."""
     return sorted(path.name for path in folder.iterdir())

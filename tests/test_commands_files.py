@@ -12,7 +12,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from command_line import PICKER, call, names_in
+from command_line import PICKER, call, names_in, without_progress
 
 from codegen.errors import CallError
 from codegen.writing import write_file, write_files
@@ -145,7 +145,7 @@ def test_a_file_that_the_system_cuts_short_leaves_nothing(tmp_path: Path) -> Non
         preexec_fn=lambda: resource.setrlimit(resource.RLIMIT_FSIZE, (8192, 8192)),
     )  # fmt: skip
     assert done.returncode == 2
-    assert done.stderr == f"error: {tmp_path / 'out'}: cannot be written: File too large\n"
+    assert without_progress(done.stderr) == f"error: {tmp_path / 'out'}: cannot be written: File too large\n"
     assert names_in(tmp_path) == []
 
 
