@@ -215,10 +215,18 @@ class _Judge:
             self._here.send((files, samples))
             found: tuple[str, ...] = self._here.recv()
         except (EOFError, ConnectionError):
-            self._end()
-            self._start()
-            return (_CRASHED,)
+            found = self._ended()
         return found
+
+    def _ended(self) -> tuple[str, ...]:
+        """The system ended the process for what the mutant did; that it stopped by itself would be our own fault."""
+        self._process.join()
+        code = self._process.exitcode
+        if code is None or code >= 0:
+            raise RuntimeError(f"the process that judges mutants stopped with exit status {code}")
+        self._end()
+        self._start()
+        return (_CRASHED,)
 
     def _end(self) -> None:
         self._here.close()
