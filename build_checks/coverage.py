@@ -68,8 +68,8 @@ def coverage(arm_file: Path, options: Options, samples: int = SAMPLES, seed: int
         files = json.loads(done.stdout)["files"]
         file = f"{options.prefix}_kin.c"
         lines = next(row["lines"] for row in files if Path(row["file"]).name == file)
-        text = generate(read_arm(arm_file).arm, options)[file].splitlines()
-    return _summary(lines, text)
+    arm = read_arm(arm_file).arm
+    return _summary(lines, _Text(arm.name, generate(arm, options)[file].splitlines()))
 
 
 def _data(folder: Path) -> list[str]:
@@ -104,7 +104,15 @@ agree(arm, generate(arm, options), options, Settings(int(samples), int(seed), pr
 """
 
 
-def _summary(lines: list[dict[str, object]], text: Sequence[str]) -> Coverage:
+@dataclass(frozen=True, slots=True)
+class _Text:
+    """The generated C of an arm."""
+
+    arm: str
+    lines: Sequence[str]
+
+
+def _summary(lines: list[dict[str, object]], text: _Text) -> Coverage:
     rows = [_Line(row, text) for row in lines]
     branches = [taken for row in rows for taken in row.branches]
     return Coverage(
@@ -119,12 +127,13 @@ def _summary(lines: list[dict[str, object]], text: Sequence[str]) -> Coverage:
 class _Line:
     """One line of gcov's report; a line that never ran is reported once, not for each of its branches."""
 
-    def __init__(self, row: dict[str, object], text: Sequence[str]) -> None:
+    def __init__(self, row: dict[str, object], text: _Text) -> None:
+        self.arm = text.arm
         self.number, self.runs = int(str(row["line_number"])), int(str(row["count"]))
         self.function = str(row.get("function_name", ""))
         found = row["branches"]
         self.branches = [int(branch["count"]) for branch in found] if isinstance(found, list) else []
-        self.code = text[self.number - 1].strip()
+        self.code = text.lines[self.number - 1].strip()
 
     def unreached(self) -> Iterator[Unreached]:
         if self.runs == 0:
@@ -133,7 +142,7 @@ class _Line:
             yield from (self._row(way) for way, taken in enumerate(self.branches, start=1) if taken == 0)
 
     def _row(self, way: int) -> Unreached:
-        reason = why_unreached(self.function, self.code, way)
+        reason = why_unreached(self.arm, self.function, self.code)
         return Unreached(self.function, self.number, self.code, way, len(self.branches), reason)
 
 
