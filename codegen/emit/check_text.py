@@ -69,6 +69,14 @@ def _plane_lines(
         for j, entry in enumerate(row):
             scope.names[entry] = f"pose->r[{i}][{j}]"
     scope.plan_uses(list(values.values()))
+    for index, pair in sorted(derivation.goal.held_pairs.items()):
+        if pair.cosine in scope.uses or pair.sine in scope.uses:
+            joint, p = derivation.goal.chain.joints[index], options.prefix
+            name = derivation.goal.solver.labels[index]
+            offset = "" if joint.offset.is_exactly(0) else f" + {constants.text(joint.offset)}"
+            scope.put(f"const {p}_pair {name} = {p}_turn(work->seed[{index}]{offset});  /* held: from the seed */")
+            scope.names[pair.cosine], scope.names[pair.sine] = f"{name}.c", f"{name}.s"
+            scope.taken.add(name)
     for name, node in values.items():
         scope.put(f"const {options.prefix}_real {name} = {scope.value(node)};")
     return tuple(scope.lines)
