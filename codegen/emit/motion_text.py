@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 
 from codegen.chain import Chain, chain_of
 from codegen.emit.expression import Constants, Scope
-from codegen.exact import Angle
+from codegen.exact import MP, Angle
 from codegen.forward import Carrier, Heading, cumulative_pair, jacobian_nodes, pose_nodes
 from codegen.geometry import Pair, Space
 from codegen.model import Arm
@@ -30,8 +30,25 @@ class JointValues:
     def pair(self, heading: Heading) -> Pair:
         if len(heading) == 1 and heading[0][1] < 0:
             return Space(self.builder).opposite(self.pair(((heading[0][0], 1),)))
+        if len(heading) == 1 and self.offset_apart(heading):
+            joint = self.chain.joints[heading[0][0]]
+            number, angle = joint.index + 1, joint.offset.value
+            turned = Pair(
+                self.builder.constant(f"COS_THETA{number}", MP.cos(angle), f"cosine of theta of row {number}"),
+                self.builder.constant(f"SIN_THETA{number}", MP.sin(angle), f"sine of theta of row {number}"),
+            )
+            return Space(self.builder).sum_of(self.leaf(heading), turned)
         if len(heading) > 1 and not self.sums_well(heading):
             return cumulative_pair(Space(self.builder), lambda index: self.pair(((index, 1),)), heading)
+        return self.leaf(heading)
+
+    def offset_apart(self, heading: Heading) -> bool:
+        """Whether a joint that may turn far has an offset: added to a large angle it would lose its digits."""
+        joint = self.chain.joints[heading[0][0]]
+        return joint.turns and not joint.offset.is_exactly(0) and not self.sums_well(heading)
+
+    def leaf(self, heading: Heading) -> Pair:
+        """The pair that the C takes of an angle."""
         if heading not in self.pairs:
             name = "_".join(self.labels[index] for index, _ in heading)
             self.pairs[heading] = Pair(self.builder.input(f"{name}.c"), self.builder.input(f"{name}.s"))
@@ -54,6 +71,8 @@ class JointValues:
         return self.builder.add(self.builder.input(f"q[{index}]"), self.chain.joints[index].offset)
 
     def angle(self, heading: Heading) -> Node:
+        if len(heading) == 1 and self.offset_apart(heading):
+            return self.builder.input(f"q[{heading[0][0]}]")
         return self.builder.signed_sum(*((sign, self.variable(index)) for index, sign in heading))
 
 
