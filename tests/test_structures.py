@@ -31,6 +31,7 @@ from generated import compiled_arm, farthest, searched, solutions
 
 from build_checks.agree import Settings, agree
 from build_checks.reference import Poses, Reference
+from build_checks.reference_task import TaskReading
 from build_checks.report_text import to_text
 from codegen.inverse.tasks import derive
 from codegen.model import Arm
@@ -160,3 +161,41 @@ def test_number_of_branches(name: str):
         derivation = derive(random_arm(structure, number))
         assert derivation is not None
         assert derivation.plan.branches == MOST_SOLUTIONS[name]
+
+
+# name, number, joint values to start from or None for random ones, what once went wrong
+PAST_FAULTS = [
+    ("wrist under PRPRRR", 1, None, "a sum that is zero but for 1e-63 had no float literal"),
+    ("scara PRRR", 0, None, "a joint whose axis is turned round was declared twice"),
+    ("point RRR", 0, None, "the roots of a quartic were declared before their type"),
+    (
+        "parallel 2-3-4, seven, 1 held",
+        0,
+        (-1.27272190, 0.15964562, -1.94737689, 1.91974465, -2.74728969, 1.43176150, -0.86406768),
+        "every branch out of reach: good roots were thrown away by too tight a check of the pose",
+    ),
+    (
+        "three slides PPRPRR",
+        0,
+        (2.96856658, 0.04175121, 1.18461737, 0.48047978, -0.26823941, -1.60493861),
+        "three slides kept their seeds where they are dependent, and the pose was missed by metres",
+    ),
+]
+
+
+@pytest.mark.parametrize(("name", "number", "joints", "fault"), PAST_FAULTS, ids=lambda value: str(value)[:40])
+def test_past_faults(name: str, number: int, joints: tuple[float, ...] | None, fault: str):
+    """Compiles for both number types, and whatever comes back from another seed reaches the pose."""
+    arm = random_arm(next(structure for structure in ALL if structure.name == name), number)
+    reference = Reference(arm)
+    q = reference.random_joints(np.random.default_rng(2), 1) if joints is None else np.array([joints])
+    pose = reference.forward(q)
+    seed = q[0] + 0.3
+    seed[reference.held] = q[0, reference.held]
+    for real, budget in ((RealType.FLOAT, 1e-5), (RealType.DOUBLE, 1e-12)):
+        with compiled_arm(arm, Options(real=real)) as c:
+            found = solutions(c, arm, pose, seed)
+            assert len(found), fault
+            misses = TaskReading(reference).misses(pose, reference.chain(found))
+            assert np.abs(misses.linear).max() < budget * reference.reach, fault
+            assert np.abs(misses.angular).max(initial=0.0) < budget, fault
