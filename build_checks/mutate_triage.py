@@ -253,7 +253,8 @@ class _Pairs:
         bench = self._bench
         open_case = _rounding_decides(bench, self._right) | _rounding_decides(bench, self._other)
         limit = self._at_a_limit()
-        lost = self._reached(self._right, _SLACK) & ~self._reached(self._other, 2 * _SLACK)
+        coarse = open_case & (np.abs(self._inputs.seeds[self._rows]).max(axis=1, initial=0.0) > _FAR)  # a free joint is
+        lost = self._reached(self._right, _SLACK) & ~self._reached(self._other, 2 * _SLACK) & ~coarse
         moved = ~self._near() & ~open_case & ~self._is_other_turn(limit)
         decided = (status != other_status) & ~open_case & ~limit
         same: Flags = ~(lost | moved | decided)
