@@ -251,7 +251,7 @@ class _Pairs:
 
     def same(self, status: AnyArray, other_status: AnyArray) -> Flags:
         bench = self._bench
-        open_case = _rounding_decides(bench, self._right) | _rounding_decides(bench, self._other)
+        open_case = _rounding_decides(bench, self._right)
         limit = self._at_a_limit()
         coarse = open_case & (np.abs(self._inputs.seeds[self._rows]).max(axis=1, initial=0.0) > _FAR)  # a free joint is
         lost = self._reached(self._right, _SLACK) & ~self._reached(self._other, 2 * _SLACK) & ~coarse
