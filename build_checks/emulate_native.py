@@ -60,9 +60,11 @@ def avr_library() -> CDLL:
     return library
 
 
-@cache
 def simavr_is_here() -> bool:
-    """Whether the simavr library and its headers are installed, found by compiling against them."""
+    """Whether the simavr library and its headers are installed, found by compiling against them.
+
+    Only success is remembered (in `avr_library`): what is missing now may be installed, or on the path, at the next call.
+    """
     try:
         avr_library()
     except (CheckFailedError, OSError):
