@@ -201,7 +201,7 @@ def test_an_interrupt_ends_a_run_without_a_traceback_of_the_command(tmp_path: Pa
         "agree",
         str(PLOTTER),
         "--samples",
-        "19000",
+        "1000000",
         "--report",
         str(report),
     ]

@@ -118,13 +118,14 @@ class Statements:
     def _name(self, pair: Pair) -> str:
         return pair.cosine.name.removesuffix(".c")
 
-    def _seed_pair(self, seed: SeedAngle) -> str:
-        """The pair that a free angle takes from the seed."""
+    def _seed_pair(self, seed: SeedAngle, settled: int | None = None) -> str:
+        """The pair that a free angle takes from the seed; the joint `settled` has its value in q by now."""
         if not seed:
             return f"{self.p}_turn({self.zero})"
         terms = []
         for index, sign in seed:
-            text = self._with_offset(f"work->seed[{index}]", self.goal.chain.joints[index].offset)
+            text = f"work->{'q' if index == settled else 'seed'}[{index}]"
+            text = self._with_offset(text, self.goal.chain.joints[index].offset)
             text = f"({text})" if " " in text and sign < 0 else text
             terms.append(("-" if sign < 0 else "+", text))
         first = ("-" if terms[0][0] == "-" else "") + terms[0][1]
@@ -164,10 +165,10 @@ class Statements:
 
     def _keep_else(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
         self.put("} else {  /* the pose leaves it free: it keeps its seed */")
-        self.put(f"    {name} = {self._seed_pair(seed)};")
         self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
         if joint is not None:
             self.put(f"    {self.p}_keep_free(work, {joint}u);")
+        self.put(f"    {name} = {self._seed_pair(seed, joint)};")
         if absorbed is not None:
             self._absorb(absorbed)
         self.put("}")
