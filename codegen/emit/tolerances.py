@@ -15,7 +15,7 @@ from codegen.model import Arm, JointKind
 from codegen.options import Options
 
 FREE, FREE_TURN, SLACK, STEP, EXCESS, FLAT = 16, 40, 4096, 8, 16, 8
-MISS = {24: (30, 80), 53: (160, 400)}  # by significand bits: of the reach, and of a rotation's entries
+MISS = {24: (16, 64), 53: (86, 330)}  # by significand bits: of the reach, and of a rotation's entries; within the promise
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
