@@ -12,8 +12,9 @@ import numpy as np
 from build_checks.agree_bench import SOLVED, WITHIN_LIMITS, Batch, Bench, Flat, is_in
 from build_checks.agree_solutions import named, turns
 from build_checks.compile import Branches
-from build_checks.reference import Array, Flags, Integers
+from build_checks.reference import Array, Flags, Integers, Poses
 from build_checks.report import Check, Failure
+from codegen.model import Task
 
 _PART = 16384  # solutions fed back at a time: their sets stay small enough for the processor's cache
 
@@ -88,7 +89,10 @@ def _closed(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
 
 def _closed_part(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
     """Solves the pose of each solution again: the two sets must be one."""
-    packed = bench.c.pack(bench.reference.forward(flat.q))
+    poses = bench.reference.forward(flat.q)
+    alike = _read_alike(bench, found, flat, poses)
+    poses, flat = poses.take(alike), Flat(flat.rows[alike], flat.branches[alike], flat.q[alike], flat.status[alike])
+    packed = bench.c.pack(poses)
     again = bench.c.inverse_all(packed, batch.seeds[flat.rows])
     first = Branches(found.q[flat.rows], found.status[flat.rows], found.solved[flat.rows])
     lost, lost_undecided = _lacking(bench, first, again)
@@ -103,6 +107,24 @@ def _closed_part(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> Non
 
     undecided = ~lost & ~gained & (lost_undecided | gained_undecided)
     bench.tally.judge(Check.CLOSED, lost | gained, describe, undecided=undecided)
+
+
+def _read_alike(bench: Bench, found: Branches, flat: Flat, poses: Poses) -> Flags:
+    """[M] whether each solution's own pose asks of the other solutions what the first pose asked.
+
+    The pitch of `point_pitch` is read in the arm's own plane. Where two solutions have planes that are not parallel, the
+    tool axis of one has another angle in the plane of the other: their sets differ by what the task is.
+    """
+    alike = np.ones(len(flat), dtype=bool)
+    if bench.reading.task is not Task.POINT_PITCH:
+        return alike
+    for branch in range(bench.c.branches):
+        rows = np.flatnonzero(is_in(found.status[flat.rows, branch], SOLVED))
+        chain = bench.reference.chain(found.q[flat.rows[rows], branch].astype(np.float64))
+        targets = poses.take(rows)
+        sharp = np.maximum(bench.reading.sharpness(targets, chain), 1e-300)
+        alike[rows] &= bench.reading.errors(targets, chain)[1] <= 4 * bench.budget.task / sharp
+    return alike
 
 
 def _lacking(bench: Bench, whole: Branches, other: Branches) -> tuple[Flags, Flags]:

@@ -94,8 +94,10 @@ def _rows_of(
             return [*velocity, heading], (*moves, "turning the heading of the tool's x axis about world z")
         case Task.POINT_PITCH:
             normal = _pitch_axis(turns, axes)
-            pitch = [sum((a * c for a, c in zip(motion[1], normal, strict=True)), MP.mpf(0)) for motion in motions]
-            return [*velocity, pitch], (*moves, "turning the tool in the arm's own plane")
+            if _parallel(normal, z):
+                why = "the tool's z axis has no angle in the arm's own plane, it lies along the pitch axis: mend [tool] rpy"
+                return [*velocity, [MP.mpf(0)] * len(motions)], (*moves, why)
+            return [*velocity, [_dot(motion[1], normal) for motion in motions]], (*moves, "turning the tool in the arm's own plane")
         case Task.PLANE_POSE | Task.PLANE_POINT:
             return _plane_rows(task, motions, turns, axes)
 
