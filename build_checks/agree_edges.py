@@ -92,7 +92,7 @@ def _says_singular(bench: Bench, q: Array, seeds: Array, kind: str, from_itself:
     inspect(bench, batch)
     own = bench.c.branch_of(bench.c.rounded(q))
     back, status = bench.c.inverse(batch.packed, own, batch.seeds)
-    bent = response(bench.reading, q, batch.poses) > _BENT * bench.budget.unit
+    bent = response(bench.reading, q, batch.poses, bench.budget.unit) > _BENT * bench.budget.unit
     unreached = (status == Status.OUT_OF_REACH) & (not from_itself)
 
     def describe(index: int) -> Failure:

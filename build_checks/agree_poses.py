@@ -109,10 +109,11 @@ def _newton_step(reading: TaskReading, q: Array) -> Array:
     return moved
 
 
-def response(reading: TaskReading, q: Array, target: Poses) -> Array:
+def response(reading: TaskReading, q: Array, target: Poses, unit: float) -> Array:
     """[K] how far the joints of rank-deficient places q must move to meet targets that differ by rounding.
 
-    The larger of the motion that the other singular values call for and of the part that no first-order motion meets.
+    The larger of the motion that the other singular values call for and of the part that no first-order motion meets,
+    and what one rounding of the number type, `unit`, within the implementation adds to it.
     """
     chain = reading.reference.chain(q)
     misses = reading.misses(target, chain)
@@ -120,7 +121,7 @@ def response(reading: TaskReading, q: Array, target: Poses) -> Array:
     left, values, _ = np.linalg.svd(reading.scaled(reading.jacobian(chain.tool, chain)), full_matrices=False)
     parts = np.einsum("nij,ni->nj", left, rows)
     moves = parts[:, :-1] / np.maximum(values[:, :-1], 1e-12)
-    own_rounding = _OWN_ROUNDING / np.maximum(values[:, -2], 1e-12)
+    own_rounding = (_OWN_ROUNDING + unit) / np.maximum(values[:, -2], 1e-12)
     larger: Array = np.maximum(length(moves), np.abs(parts[:, -1])) + own_rounding
     return larger
 

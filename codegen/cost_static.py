@@ -181,7 +181,7 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
         case SlideStep():
             return [step.numerator, step.denominator], []
         case SlideRootsStep():
-            return [step.middle, step.square], []
+            return [step.flat, step.middle, step.square], []
         case QuarticStep() | SlideQuarticStep():
             return list(step.coefficients), []
         case RefineStep():
@@ -207,7 +207,9 @@ def _form_count(derivation: Derivation, step: Step, unread: frozenset[Pair]) -> 
         case SlideStep():
             return _division(step) + _settled_slide(derivation, step.joint)
         case SlideRootsStep():
-            added = OperationCount(additions=int(not step.middle.is_exactly(0)), roots=1)
+            added = OperationCount(
+                additions=int(not step.middle.is_exactly(0)), multiplications=int(not step.flat.is_constant), roots=1
+            )
             return added + _settled_slide(derivation, step.joint)
         case QuarticStep() | SlideQuarticStep():
             return _NOTHING

@@ -51,7 +51,7 @@ def step_roots(step: Step) -> list[Node]:
         case SlideStep():
             return [step.numerator, step.denominator]
         case SlideRootsStep():
-            return [step.middle, step.square]
+            return [step.flat, step.middle, step.square]
         case RefineStep():
             return [*step.residuals, *step.slopes[0], *step.slopes[1]]
         case _:
@@ -207,7 +207,7 @@ class Statements:
             self._balance_or_free(step, name, (target, square, flat))
         self._store(name)
 
-    def _flat(self, step: BalanceStep) -> str:
+    def _flat(self, step: BalanceStep | SlideRootsStep) -> str:
         if step.flat is None or step.flat.is_exactly(0):
             return self.zero
         return "FLAT" if step.flat.is_exactly(1) else f"FLAT * {self.scope.factor(step.flat)}"
@@ -287,7 +287,8 @@ class Statements:
         name, root = step.value.name, step.root.name
         square, middle = self.scope.value(step.square), self.scope.value(step.middle)
         self.put(f"{self.p}_real {root};")
-        self.put(f"if (!{self.p}_signed_root(work, {square}, SLACK * REACH * REACH, FLAT * REACH * REACH, second, &{root})) {{")
+        slack = "SLACK * REACH * REACH"
+        self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {self._flat(step)}, second, &{root})) {{")
         self.put("    return;  /* out of reach */")
         self.put("}")
         value = root if step.middle.is_exactly(0) else f"{middle} + {root}"

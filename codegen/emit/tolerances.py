@@ -15,7 +15,8 @@ from codegen.model import Arm, JointKind
 from codegen.options import Options
 
 FREE, FREE_TURN, SLACK, STEP, EXCESS, FLAT = 16, 40, 4096, 8, 16, 8
-MISS = {24: (16, 64), 53: (86, 330)}  # by significand bits: of the reach, and of a rotation's entries; within the promise
+# by significand bits: of the reach, and of all entries of a rotation: twice the angle promised, as at any edge
+MISS = {24: (16, 95), 53: (86, 500)}
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 

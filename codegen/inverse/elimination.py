@@ -171,8 +171,9 @@ def solve_outer(solver: Solver, use: Use, outer: Outer, note: str, square: Node 
     elif outer.kind == "slide roots":
         lead = poly.coefficient((2, 0), zero)
         middle = b.neg(b.half(b.div(poly.coefficient((1, 0), zero), lead)))
-        square = b.sub(b.square(middle), b.div(poly.coefficient((0, 0), zero), lead))
-        solver.slide_roots(own, middle, square, note)
+        flat = b.square(middle)
+        square = b.sub(flat, b.div(poly.coefficient((0, 0), zero), lead))
+        solver.slide_roots(own, middle, square, flat, note)
     else:
         solver.quartic(own, poly, note)
 

@@ -101,7 +101,10 @@ class SlideStep:
 
 @dataclass(frozen=True, slots=True)
 class SlideRootsStep:
-    """middle +- sqrt(square): two roots, by the sign of value - middle."""
+    """middle +- sqrt(square): two roots, by the sign of value - middle.
+
+    flat  times a few roundings: a square up to this is zero but for rounding (BalanceStep)
+    """
 
     joint: int
     angle: str
@@ -112,6 +115,7 @@ class SlideRootsStep:
     side: Node
     meaning: str
     note: str
+    flat: Node
     roots: int = 2
 
 

@@ -305,8 +305,9 @@ def _slide_roots(solver: Solver, problem: PointProblem, u: Vector, note: str) ->
     across = space.cross(space.unit[2], along)
     start = space.moved(core.middle, u)
     missed = space.dot(across, start)
-    square = b.sub(b.add(b.square(p[0]), b.square(p[1])), b.square(missed))
-    solver.slide_roots(problem.segment.uses[1], b.neg(space.dot(along, start)), square, note)
+    flat = b.square(missed)
+    square = b.sub(b.add(b.square(p[0]), b.square(p[1])), flat)
+    solver.slide_roots(problem.segment.uses[1], b.neg(space.dot(along, start)), square, flat, note)
 
 
 def _last_joint(solver: Solver, problem: PointProblem, what: str) -> None:

@@ -229,8 +229,8 @@ class Solver:
         self.slides[use.joint.index] = value
         return self.own_slide(use)
 
-    def slide_roots(self, use: Use, middle: Node, square: Node, note: str) -> Node:
-        """The slide from d^2 - 2 middle d + ... = 0, as middle +- sqrt(square)."""
+    def slide_roots(self, use: Use, middle: Node, square: Node, flat: Node, note: str) -> Node:
+        """The slide from d^2 - 2 middle d + ... = 0, as middle +- sqrt(square); `flat` as in the step."""
         b = self.builder
         if use.sign < 0:
             middle = b.neg(middle)
@@ -240,7 +240,7 @@ class Solver:
         value = self.new_slide(name)
         meaning = f"{name} slid further out|{name} slid further in"
         self.steps.append(
-            SlideRootsStep(use.joint.index, name, value, middle, square, root, b.sub(value, middle), meaning, note)
+            SlideRootsStep(use.joint.index, name, value, middle, square, root, b.sub(value, middle), meaning, note, flat)
         )
         self.slides[use.joint.index] = value
         return self.own_slide(use)
