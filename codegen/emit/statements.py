@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from fractions import Fraction
 
 from codegen.emit.expression import Scope
 from codegen.emit.numbers import literal
@@ -334,8 +335,25 @@ class Statements:
         self.scope.names = known
         self.scope.indent = self.scope.indent[4:]
         self.put("}")
+        self._stay_near(step.variables[1])
         for variable in step.variables:
             self._finish_variable(variable)
+
+    def _stay_near(self, variable: Variable) -> None:
+        """The root of the outer joint was one: polishing must not have run to another."""
+        if isinstance(variable.during, Pair):
+            assert isinstance(variable.before, Pair)
+            before, after = self._name(variable.before), self._name(variable.during)
+            nearly = literal(Fraction(31, 32), self.options.real)
+            far = f"{before}.c * {after}.c + {before}.s * {after}.s < {nearly}"
+        else:
+            assert isinstance(variable.before, Node)
+            distance = f"{self.p}_abs({variable.during.name} - {variable.before.name})"
+            far = f"{distance} > {literal(Fraction(1, 8), self.options.real)} * REACH"
+        self.put(f"if ({far}) {{  /* it ran to another root: there is none here */")
+        self.put("    work->marks |= MARK_OUT_OF_REACH;")
+        self.put("    return;")
+        self.put("}")
 
     def _start_variable(self, variable: Variable) -> None:
         if isinstance(variable.before, Pair):

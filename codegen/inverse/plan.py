@@ -167,7 +167,7 @@ class RefineStep:
     residuals: tuple[Node, Node]
     slopes: tuple[tuple[Node, Node], tuple[Node, Node]]  # d residual / d variable
     note: str
-    passes: int = 3
+    passes: int = 5
     roots: int = 1
 
 

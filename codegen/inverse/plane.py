@@ -125,7 +125,7 @@ def _three_turns(solver: Solver, problem: PlaneProblem, what: str) -> bool:
     segment = way.problem.segment
     solve_outer(solver, segment.uses[2], way.outer, f"{what}: {solver.label(segment.uses[2].joint.index)} alone")
     if way.outer.kind == "quartic":
-        polish(solver, segment.uses[1], segment.uses[2], way.equations, way.normal, what)
+        polish(solver, segment.uses[1], segment.uses[2], way.equations, way.normal, None, what)
     return _two_turns(solver, way, what)
 
 

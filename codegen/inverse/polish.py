@@ -1,11 +1,14 @@
 """Roots of an elimination, polished on the two equations it came from: Newton steps in the inner and the outer joint.
 
-Squaring and expanding costs digits; the two equations themselves do not have that loss.
+Squaring and expanding costs digits; the two equations themselves do not have that loss. A distance from a point on the
+first axis is polished as the distance from that axis, whose square is small where the axis is near.
 """
 
 from __future__ import annotations
 
-from codegen.geometry import Pair, Vector
+from dataclasses import dataclass
+
+from codegen.geometry import Pair, Rigid, Vector
 from codegen.inverse.elimination import Equation, reduced_rhs, solved_for_z
 from codegen.inverse.plan import Least, Variable
 from codegen.inverse.polynomial import Algebra, Poly, PolyVector
@@ -42,8 +45,16 @@ def _monomial(solver: Solver, monomial: tuple[int, int], where: Pair | Node) -> 
     return product
 
 
+@dataclass(frozen=True, slots=True)
+class FirstAxis:
+    """What the first joint turns about z: points behind `core`, which must come as far from the axis as `p` is."""
+
+    core: Rigid
+    p: Vector
+
+
 def polish(
-    solver: Solver, inner: Use, outer: Use, equations: list[Equation], u: PolyVector, what: str
+    solver: Solver, inner: Use, outer: Use, equations: list[Equation], u: PolyVector, axis: FirstAxis | None, what: str
 ) -> None:
     """Find the inner joint from the unpolished outer one, then polish both together."""
     rough = _inner_from_outer(solver, inner, outer, equations, u, what)
@@ -52,7 +63,7 @@ def polish(
         _variable(solver, inner, rough),
         _variable(solver, outer, outer_before),
     )
-    residuals, slopes = _newton(solver, inner, equations, u, variables)
+    residuals, slopes = _newton(solver, inner, equations, u, axis, variables)
     solver.refine(variables, residuals, slopes, f"{what}: polish both roots on the two equations they came from")
     for use, variable in zip((inner, outer), variables, strict=True):
         if isinstance(variable.after, Pair):
@@ -93,17 +104,34 @@ def _inner_from_outer(
 
 
 def _newton(
-    solver: Solver, inner: Use, equations: list[Equation], u: PolyVector, variables: tuple[Variable, Variable]
+    solver: Solver,
+    inner: Use,
+    equations: list[Equation],
+    u: PolyVector,
+    axis: FirstAxis | None,
+    variables: tuple[Variable, Variable],
 ) -> tuple[tuple[Node, Node], tuple[tuple[Node, Node], tuple[Node, Node]]]:
-    rows = [_row(solver, inner, e, u, variables) for e in equations]
+    moving = _carried(solver, inner, u, variables)
+    rows = []
+    for equation in equations:
+        if equation.least is Least.AREA and axis is not None:
+            rows.append(_distance_row(solver, axis, moving))
+        else:
+            rows.append(_row(solver, equation, moving, variables[1].during))
     (r1, s1), (r2, s2) = rows
     return (r1, r2), (s1, s2)
 
 
-def _row(
-    solver: Solver, inner: Use, equation: Equation, u: PolyVector, variables: tuple[Variable, Variable]
-) -> tuple[Node, tuple[Node, Node]]:
-    """One equation's residual and its slopes by the inner and the outer joint, at the values being polished."""
+@dataclass(frozen=True, slots=True)
+class _Carried:
+    """What the inner joint carries, at the values being polished, and its slopes by the inner and the outer joint."""
+
+    value: Vector
+    by_inner: Vector
+    by_outer: Vector
+
+
+def _carried(solver: Solver, inner: Use, u: PolyVector, variables: tuple[Variable, Variable]) -> _Carried:
     space, b = solver.space, solver.builder
     now, outer_now = variables[0].during, variables[1].during
     here: Vector = (value_at(solver, u[0], outer_now), value_at(solver, u[1], outer_now), value_at(solver, u[2], outer_now))
@@ -111,25 +139,30 @@ def _row(
     sign = b.integer(inner.sign)
     if isinstance(now, Pair):
         turn = now if inner.sign > 0 else space.opposite(now)
-        moved, moved_slope = space.spun(turn, here), space.spun(turn, slope)
-        by_inner = b.mul(sign, space.dot(equation.a, space.cross(space.unit[2], moved)))
-        extra, extra_slope, extra_inner = space.zero, space.zero, space.zero
-    else:
-        slid = b.mul(sign, now)
-        moved, moved_slope = space.plus(here, space.along_z(slid)), slope
-        by_inner = b.mul(sign, equation.a[2])
-        extra, extra_slope, extra_inner = _slide_square(solver, equation, here, slope, slid, sign)
-    residual = b.add(space.dot(equation.a, moved), extra, b.neg(value_at(solver, equation.rhs, outer_now)))
-    by_outer = b.add(space.dot(equation.a, moved_slope), extra_slope, b.neg(slope_at(solver, equation.rhs, outer_now)))
-    return residual, (b.add(by_inner, extra_inner), by_outer)
+        moved = space.spun(turn, here)
+        return _Carried(moved, space.scaled(space.cross(space.unit[2], moved), sign), space.spun(turn, slope))
+    moved = space.plus(here, space.along_z(b.mul(sign, now)))
+    return _Carried(moved, space.along_z(sign), slope)
 
 
-def _slide_square(
-    solver: Solver, equation: Equation, here: Vector, slope: Vector, slid: Node, sign: Node
-) -> tuple[Node, Node, Node]:
-    """What a sliding inner joint adds to the squared distance: d u_z + d^2 / 2, and its slopes."""
-    b, zero = solver.builder, solver.space.zero
-    if equation.least is not Least.AREA:
-        return zero, zero, zero
-    value = b.add(b.mul(slid, here[2]), b.half(b.square(slid)))
-    return value, b.mul(slid, slope[2]), b.mul(sign, b.add(here[2], slid))
+def _row(
+    solver: Solver, equation: Equation, moving: _Carried, outer: Pair | Node
+) -> tuple[Node, tuple[Node, Node]]:
+    """One equation's residual and its slopes by the inner and the outer joint."""
+    space, b = solver.space, solver.builder
+    residual = b.add(space.dot(equation.a, moving.value), b.neg(value_at(solver, equation.rhs, outer)))
+    by_outer = b.add(space.dot(equation.a, moving.by_outer), b.neg(slope_at(solver, equation.rhs, outer)))
+    return residual, (space.dot(equation.a, moving.by_inner), by_outer)
+
+
+def _distance_row(solver: Solver, axis: FirstAxis, moving: _Carried) -> tuple[Node, tuple[Node, Node]]:
+    """(x^2 + y^2 - p_x^2 - p_y^2) / 2, and its slopes."""
+    space, b = solver.space, solver.builder
+    x, y, _ = space.moved(axis.core, moving.value)
+    wanted = b.add(b.square(axis.p[0]), b.square(axis.p[1]))
+    residual = b.half(b.sub(b.add(b.square(x), b.square(y)), wanted))
+    slopes = []
+    for change in (moving.by_inner, moving.by_outer):
+        turned = space.times(axis.core.rotation, change)
+        slopes.append(b.add(b.mul(x, turned[0]), b.mul(y, turned[1])))
+    return residual, (slopes[0], slopes[1])
