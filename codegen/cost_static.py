@@ -175,7 +175,7 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
     """What a step reads once, and what it reads in every pass."""
     match step:
         case DirectionStep():
-            return [step.x, step.y], []
+            return [node for node in (step.turned,) if node] + [step.x, step.y], []
         case BalanceStep():
             return [node for node in (step.size, step.flat) if node] + [step.target, step.square, step.x, step.y], []
         case SlideStep():

@@ -2,12 +2,20 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from codegen.ability import Lack, lack_of
 from codegen.emit.files import Source, closed_form_files
 from codegen.errors import CannotSolveError, Fault
-from codegen.inverse.tasks import derive
+from codegen.inverse.plan import RefineStep
+from codegen.inverse.tasks import Derivation, derive
 from codegen.model import Arm
 from codegen.options import Options
+
+if TYPE_CHECKING:
+    from codegen.tracking.steps_context import StepsContext
+
+_RETRACING_STEPS = 4  # from a place that is nearly right
 
 
 def generate(arm: Arm, options: Options, source: Source | None = None) -> dict[str, str]:
@@ -19,10 +27,20 @@ def generate(arm: Arm, options: Options, source: Source | None = None) -> dict[s
     refuse_unable(arm, place.name)
     derivation = derive(arm)
     if derivation is not None:
-        return closed_form_files(arm, derivation, options, place)
+        return closed_form_files(arm, derivation, options, place, _last_steps(arm, derivation, options))
     from codegen.tracking.files import tracked_files  # brings numpy: only for arms that need it
 
     return tracked_files(arm, options, place)
+
+
+def _last_steps(arm: Arm, derivation: Derivation, options: Options) -> StepsContext | None:
+    """None where the formulas keep their digits; roots that are polished do not near a double root."""
+    if not any(isinstance(step, RefineStep) for step in derivation.plan.steps):
+        return None
+    from codegen.tracking.shape import shape_of
+    from codegen.tracking.steps_context import steps_context
+
+    return steps_context(arm, shape_of(arm), options, _RETRACING_STEPS)
 
 
 def refuse_unable(arm: Arm, where: str) -> None:

@@ -62,9 +62,14 @@ def environment() -> jinja2.Environment:
     )
 
 
-def closed_form_files(arm: Arm, derivation: Derivation, options: Options, source: Source) -> dict[str, str]:
-    """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm whose inverse is in closed form."""
-    context = _context(arm, derivation, options, source)
+def closed_form_files(
+    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: object | None = None
+) -> dict[str, str]:
+    """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm whose inverse is in closed form.
+
+    `steps`: what the templates of the last steps place, for an arm whose formulas lose digits.
+    """
+    context = _context(arm, derivation, options, source, steps)
     p = options.prefix
     return {f"{p}_kin.h": rendered("kin.h.j2", context), f"{p}_kin.c": pruned("kin.c.j2", context)}
 
@@ -87,14 +92,17 @@ def pruned(template: str, context: dict[str, object]) -> str:
         used, rows = called, read
 
 
-def _context(arm: Arm, derivation: Derivation, options: Options, source: Source) -> dict[str, object]:
+def _context(
+    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: object | None
+) -> dict[str, object]:
     constants = Constants(options)
     forward = MotionText(arm, options, constants).forward()
     inverse = InverseText(derivation, options, constants)
     stages = inverse.stage_texts()
     reach = inverse.reach_lines()
     branch_of = BranchText(derivation, options, constants).lines()
-    jacobian = MotionText(arm, options, constants).jacobian()
+    motion = MotionText(arm, options, constants)
+    jacobian = motion.jacobian() if steps is None else motion.core()
     check = pose_check(derivation, options, constants)
     joints = [joint_text(arm, k, options) for k in range(len(arm.joints))]
     return {
@@ -111,10 +119,11 @@ def _context(arm: Arm, derivation: Derivation, options: Options, source: Source)
         "digest": source.digest,
         "version": VERSION,
         "numeric": False,
+        "s": steps,
         "branches": derivation.plan.branches,
         "maths": maths_context(options),
         "constants": constants.declarations(),
-        "tolerances": tolerance_rows(arm, options),
+        "tolerances": tolerance_rows(arm, options, steps is not None),
         "forward": forward,
         "jacobian": jacobian,
         "stages": [_stage_context(stage) for stage in stages],

@@ -8,7 +8,7 @@ from codegen.chain import Chain, chain_of
 from codegen.emit.expression import Constants, Scope
 from codegen.exact import MP, Angle
 from codegen.forward import Carrier, Heading, cumulative_pair, jacobian_nodes, pose_nodes
-from codegen.geometry import Pair, Space
+from codegen.geometry import Pair, Space, Vector
 from codegen.model import Arm
 from codegen.names import joint_identifiers
 from codegen.options import Options
@@ -99,13 +99,15 @@ class MotionText:
 
     def jacobian(self) -> list[str]:
         _, columns = jacobian_nodes(self.carrier)
-        targets = [
-            (f"jac[{row + 3 * half}][{k}]", vector[row])
-            for k, column in enumerate(columns)
-            for half, vector in enumerate(column)
-            for row in range(3)
-        ]
-        return self._function(targets)
+        return self._function(_jacobian_targets(columns))
+
+    def core(self) -> list[str]:
+        """Pose and Jacobian in one function, so that each sine and cosine is taken once."""
+        pose = pose_nodes(self.carrier)
+        _, columns = jacobian_nodes(self.carrier)
+        targets = [(f"pose->p[{i}]", pose.position[i]) for i in range(3)]
+        targets += [(f"pose->r[{i}][{j}]", pose.rotation[i][j]) for i in range(3) for j in range(3)]
+        return self._function([*targets, *_jacobian_targets(columns)])
 
     def _function(self, targets: list[tuple[str, Node]]) -> list[str]:
         scope = Scope(self.builder, self.constants, self.options, taken=set(self.reserved))
@@ -124,3 +126,12 @@ class MotionText:
         scope.taken.add(name)
         note = "  /* parallel axes: their angles add up */" if len(heading) > 1 else ""
         scope.put(f"const {p}_pair {name} = {p}_turn({scope.text(angle)});{note}")
+
+
+def _jacobian_targets(columns: list[tuple[Vector, Vector]]) -> list[tuple[str, Node]]:
+    return [
+        (f"jac[{row + 3 * half}][{k}]", vector[row])
+        for k, column in enumerate(columns)
+        for half, vector in enumerate(column)
+        for row in range(3)
+    ]

@@ -44,7 +44,7 @@ def step_roots(step: Step) -> list[Node]:
     """The values that a step's statements read."""
     match step:
         case DirectionStep():
-            own = [step.x, step.y]
+            own = [step.x, step.y] if step.turned is None else [step.turned, step.x, step.y]
             return own if step.absorbed is None else [*own, step.absorbed.x, step.absorbed.y]
         case BalanceStep():
             extra = [node for node in (step.size, step.flat) if node is not None]
@@ -141,7 +141,9 @@ class Statements:
             self._store(name)
             return
         self.put(f"{self.p}_pair {name};")
-        if least is None:
+        if step.turned is not None:
+            self._direction_or_seed(step, name, (x, y))
+        elif least is None:
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
             self._settle_turn(step.joint, name)
         elif step.joint is None:
@@ -158,6 +160,17 @@ class Statements:
         self._store(name)
         if step.absorbed is not None:
             self._store(self._name(step.absorbed.pair))
+
+    def _direction_or_seed(self, step: DirectionStep, name: str, target: tuple[str, str]) -> None:
+        """What an approximate root may make up out of rounding is not read."""
+        assert step.turned is not None
+        size = "LEAST_ROUGH * LEAST_ROUGH" + (" * REACH * REACH" if step.least is Least.LENGTH else "")
+        self.put(f"if ({self.scope.value(step.turned)} > {size}) {{")
+        self.put(f"    (void){self.p}_unit({target[0]}, {target[1]}, {self.zero}, &{name});")
+        self.put("} else {  /* it hardly moves what it is to be found from: it starts at its seed */")
+        self.put(f"    {name} = {self._seed_pair(step.seed)};")
+        self.put("    work->marks |= MARK_EDGE | MARK_NEARLY_FREE;")
+        self.put("}")
 
     def _settle_turn(self, joint: int | None, name: str, deeper: bool = False) -> None:
         if joint is not None:

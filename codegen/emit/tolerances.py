@@ -17,6 +17,8 @@ from codegen.options import Options
 FREE, FREE_TURN, SLACK, STEP, EXCESS, FLAT = 16, 40, 4096, 8, 16, 8
 # by significand bits: of the reach, and of all entries of a rotation: twice the angle promised, as at any edge
 MISS = {24: (16, 95), 53: (86, 500)}
+RETRACED = {24: (8, 32), 53: (40, 160)}
+ROUGH = 512  # a double root is known to the root of this many roundings
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
@@ -30,11 +32,11 @@ def reach_of(arm: Arm) -> Fraction:
     return total or Fraction(1)
 
 
-def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
-    """(name, literal, comment)."""
+def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[tuple[str, str, str]]:
+    """(name, literal, comment). `retraced`: a solution that misses is not given up but brought nearer."""
     u, reach = options.real.rounding, reach_of(arm)
     high, low = _full_turn(options)
-    miss, turn = MISS[options.real.bits]
+    miss, turn = (RETRACED if retraced else MISS)[options.real.bits]
 
     def row(name: str, value: object, comment: str) -> tuple[str, str, str]:
         return name, literal(value, options.real), comment
@@ -47,6 +49,7 @@ def tolerance_rows(arm: Arm, options: Options) -> list[tuple[str, str, str]]:
         row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
         row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
+        row("LEAST_ROUGH", MP.sqrt(ROUGH * MP.mpf(u.numerator) / u.denominator), "part of a unit vector that a double root leaves unknown"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
         row("LEAST_TURN", turn * u, "and the rotation by this, all entries' squares added up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),

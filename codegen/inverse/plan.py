@@ -42,6 +42,8 @@ class DirectionStep:
 
     joint  the joint that it settles; None for the angle of a group, or where a later step settles the joint
     Where x and y both vanish the pose leaves the angle free: it keeps its seed.
+    turned the squared size of what the joint turns, where that comes from an approximate root: no larger than such a
+           root leaves unknown, it says nothing of the joint, which then starts from its seed
     """
 
     joint: int | None
@@ -53,6 +55,7 @@ class DirectionStep:
     seed: SeedAngle
     note: str
     absorbed: Absorption | None = None
+    turned: Node | None = None
     roots: int = 1
 
 

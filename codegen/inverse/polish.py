@@ -100,6 +100,8 @@ def _inner_from_outer(
     left, right = (value_at(solver, reduced_rhs(solver, e, u, algebra), where) for e in equations)
     z_x, z_y = solved_for_z(solver, (equations[0], equations[1]), left, right)
     solver.turn_onto(inner, known, (z_x, z_y, known[2]), Least.NOTHING, note, settles=False)
+    turned = b.add(b.square(known[0]), b.square(known[1]))
+    solver.start_at_seed_below(turned, Least.ANGLE if equations[0].least is Least.ANGLE else Least.LENGTH)
     return solver.pairs[inner.joint.index]
 
 

@@ -132,6 +132,13 @@ class Solver:
         self.pairs[use.joint.index] = pair
         return self.own_pair(use)
 
+    def start_at_seed_below(self, turned: Node, least: Least) -> None:
+        """The direction just found says nothing where the squared size of what it turns is as small as a rough root's
+        error."""
+        step = self.steps[-1]
+        assert isinstance(step, DirectionStep)
+        self.steps[-1] = replace(step, turned=turned, least=least)
+
     def absorb(self, use: Use, x: Node, y: Node) -> None:
         """Where the joint just solved keeps its seed, `use`, solved before it, goes along (x, y) instead."""
         step = self.steps[-1]

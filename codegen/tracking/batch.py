@@ -24,14 +24,11 @@ from codegen.tracking.lanes import (
     least_squares_step,
     sine_cosine,
 )
+from codegen.tracking.settings import DAMPING, LARGEST_MOVE, NEAR, SEARCH_STEPS
 from codegen.tracking.shape import ArmShape
 from codegen.tracking.turns import Turn, axis_turn, heading_turn, no_turn, pitch_turn, plane_turn, rotation_turn
 
-DAMPING = 0.14  # of the residual; measured: 0.05 to 0.2 need the same number of starts
 LEAST_DAMPING = 1e-8
-LARGEST_MOVE = 2.0  # rad, or slide units, of one joint in one step
-SEARCH_STEPS = 16  # of one start; measured: 12 loses a third of the starts, 20 costs more than it finds
-NEAR = 1e-2  # residual from which on a start may finish
 FINISHING_STEPS = 8
 SOLVED = 1e-9  # residual of a solution, in float64
 

@@ -10,12 +10,13 @@ from codegen.emit import files as emit
 from codegen.emit.expression import Constants
 from codegen.emit.motion_text import MotionText
 from codegen.emit.tolerances import tolerance_rows
-from codegen.forward import jacobian_nodes, pose_nodes
 from codegen.model import Arm
 from codegen.options import Options
 from codegen.tracking.context import tracking_context
 from codegen.tracking.links import small_chain
+from codegen.tracking.settings import SEARCH_STEPS
 from codegen.tracking.starts import TrackingTables, prepare_starts
+from codegen.tracking.steps_context import steps_context
 
 
 class TrackedMotion(MotionText):
@@ -27,20 +28,6 @@ class TrackedMotion(MotionText):
         if chain is not None:
             self.values.chain = chain
             self.carrier = replace(self.carrier, chain=chain)
-
-    def core(self) -> list[str]:
-        """Pose and Jacobian in one function, so that each sine and cosine is taken once."""
-        pose = pose_nodes(self.carrier)
-        _, columns = jacobian_nodes(self.carrier)
-        targets = [(f"pose->p[{i}]", pose.position[i]) for i in range(3)]
-        targets += [(f"pose->r[{i}][{j}]", pose.rotation[i][j]) for i in range(3) for j in range(3)]
-        targets += [
-            (f"jac[{row + 3 * half}][{k}]", vector[row])
-            for k, column in enumerate(columns)
-            for half, vector in enumerate(column)
-            for row in range(3)
-        ]
-        return self._function(targets)
 
 
 def tracked_files(
@@ -81,4 +68,5 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
         "forward": forward,
         "core": core,
         "t": tracking,
+        "s": steps_context(arm, tables.shape, options, SEARCH_STEPS),
     }
