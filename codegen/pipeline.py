@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING
 from codegen.ability import Lack, lack_of
 from codegen.emit.files import Source, closed_form_files
 from codegen.errors import CannotSolveError, Fault
-from codegen.inverse.plan import RefineStep
 from codegen.inverse.tasks import Derivation, derive
 from codegen.model import Arm
 from codegen.options import Options
@@ -35,7 +34,7 @@ def generate(arm: Arm, options: Options, source: Source | None = None) -> dict[s
 
 def _last_steps(arm: Arm, derivation: Derivation, options: Options) -> StepsContext | None:
     """None where the formulas keep their digits; roots that are polished do not near a double root."""
-    if not any(isinstance(step, RefineStep) for step in derivation.plan.steps):
+    if not derivation.plan.retraced:
         return None
     from codegen.tracking.shape import shape_of
     from codegen.tracking.steps_context import steps_context

@@ -69,14 +69,25 @@ class BranchText:
         known = f"{{{texts[5]}, {texts[6]}}}" if kind == "turn" else texts[5]
         scope.put(f"const {p}_quartic {name}_equation = {{{{{', '.join(texts[:5])}}}}};")
         scope.put(f"const {p}_{'pair' if kind == 'turn' else 'real'} {name}_known = {known};")
-        scope.put(f"branch |= {p}_{kind}_number(&{name}_equation, {name}_known) << {shift}u;")
+        if kind == "slide":
+            scope.put(f"branch |= {p}_slide_number(&{name}_equation, {name}_known) << {shift}u;")
+            return
+        zero = literal(0, self.options.real)
+        if len(texts) == 7:  # numbered by the slope
+            scope.put(f"branch |= {p}_turn_number(&{name}_equation, {name}_known, 2u) << {shift}u;")
+            return
+        scope.put(f"const unsigned {name}_flipped = ({texts[8]} > {zero}) ? 0u : 1u;  /* rising roots have the other side */")
+        scope.put(f"const unsigned {name}_kind = (({texts[7]} < {zero}) ? 1u : 0u) ^ {name}_flipped;")
+        found = f"{p}_turn_number(&{name}_equation, {name}_known, {name}_kind)"
+        scope.put(f"branch |= ({found} ^ {name}_flipped) << {shift}u;")
 
 
 def _roots(step: Step) -> list[Node]:
     if isinstance(step, BalanceStep | SlideRootsStep):
         return [step.side]
     if isinstance(step, QuarticStep):
-        return [*step.coefficients, step.known.cosine, step.known.sine]
+        own = [*step.coefficients, step.known.cosine, step.known.sine]
+        return own if step.det is None or step.side is None else [*own, step.side, step.det]
     assert isinstance(step, SlideQuarticStep)
     return [*step.coefficients, step.known]
 

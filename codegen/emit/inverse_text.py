@@ -174,7 +174,7 @@ class InverseText:
         if prepared is not None:
             roots += _prepared_roots(prepared)
         scope = self.scope(number, roots + outgoing)
-        printer = Statements(scope, self.goal, self.options, self.unread)
+        printer = Statements(scope, self.goal, self.options, self.unread, self.derivation.plan.retraced)
         if number == 0:
             printer.held_joints()
         for step in steps:
@@ -215,7 +215,7 @@ class InverseText:
     def _is_kept(self, name: str) -> bool:
         """Roots, rough values and values being polished stay inside their stage."""
         stem = name.removesuffix(".c").removesuffix(".s").removesuffix("_slide")
-        return not stem.endswith(("_root", "_now", "_rough"))
+        return not stem.endswith(("_root", "_now", "_rough", "_side"))
 
     # -- the check of a solution that was clamped --------------------------------------------------------------------
     def reach_misses(self) -> list[tuple[str, Node]]:
@@ -252,6 +252,8 @@ def made_known(step: Step) -> list[Pair | Node]:
         made: list[Pair | Node] = [step.pair]
         if isinstance(step, BalanceStep):
             made.append(step.root)
+        if isinstance(step, QuarticStep):
+            made.append(step.bit)
         return made
     if hasattr(step, "variables"):
         return [value for variable in step.variables for value in (variable.during, variable.after)]

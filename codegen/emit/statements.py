@@ -7,6 +7,7 @@ from fractions import Fraction
 
 from codegen.emit.expression import Scope
 from codegen.emit.numbers import literal
+from codegen.emit.tolerances import SLACK
 from codegen.geometry import Pair
 from codegen.inverse.goal import Goal
 from codegen.inverse.plan import (
@@ -53,6 +54,8 @@ def step_roots(step: Step) -> list[Node]:
             return [step.numerator, step.denominator]
         case SlideRootsStep():
             return [step.flat, step.middle, step.square]
+        case QuarticStep():
+            return [] if step.det is None or step.det.is_constant else [step.det]
         case RefineStep():
             return [*step.residuals, *step.slopes[0], *step.slopes[1]]
         case _:
@@ -67,10 +70,12 @@ class Statements:
     goal: Goal
     options: Options
     unread: frozenset[Pair] = frozenset()
+    retraced: bool = False  # solutions that miss are brought nearer: what they are found from may be rough
 
     def __post_init__(self) -> None:
         self.p = self.options.prefix
         self.zero = literal(0, self.options.real)
+        self.slack = "WIDE_SLACK" if self.retraced else "SLACK"
 
     def put(self, line: str) -> None:
         self.scope.put(line)
@@ -212,7 +217,7 @@ class Statements:
         for side in (step.x, step.y):
             self._ready_without(side, step.root)
         if step.size is None:
-            self._root(name, square, "SLACK", flat)
+            self._root(name, square, self.slack, flat)
             self.put(f"{name}.c = {self.scope.text(step.x)};")
             self.put(f"{name}.s = {self.scope.text(step.y)};")
             self.put(f"{self.p}_tidy(&{name});")
@@ -242,7 +247,7 @@ class Statements:
         size, least, least_square = self.scope.value(step.size), LEASTS[step.least], SQUARED[step.least]
         self.put(f"if ({size} > {least_square}) {{")
         self.scope.indent += "    "
-        slack = f"SLACK * {size}"
+        slack = f"{self.slack} * {size}"
         if not step.target.is_exactly(0):
             slack += f" + {least} * {self.p}_abs({target})"
         self._root(name, square, slack, flat)
@@ -301,7 +306,7 @@ class Statements:
         name, root = step.value.name, step.root.name
         square, middle = self.scope.value(step.square), self.scope.value(step.middle)
         self.put(f"{self.p}_real {root};")
-        slack = "SLACK * REACH * REACH"
+        slack = f"{self.slack} * REACH * REACH"
         self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {self._flat(step)}, second, &{root})) {{")
         self.put("    return;  /* out of reach */")
         self.put("}")
@@ -323,15 +328,29 @@ class Statements:
 
     def _quartic_choice(self, step: QuarticStep | SlideQuarticStep) -> None:
         name = self._name(step.pair) if isinstance(step, QuarticStep) else step.value.name
-        self.put(f"if (!work->{step.angle}_roots.there[choice]) {{")
+        root = "choice"
+        if isinstance(step, QuarticStep) and step.det is not None:
+            root = self._root_of_side(step)
+        self.put(f"if (!work->{step.angle}_roots.there[{root}]) {{")
         self.put("    work->marks |= MARK_OUT_OF_REACH;")
         self.put("    return;")
         self.put("}")
         self.put("work->marks |= MARK_EDGE;  /* its roots are approximate: the pose reached is checked */")
         if isinstance(step, QuarticStep):
-            self.put(f"const {self.p}_pair {name} = work->{step.angle}_roots.turn[choice];")
+            self.put(f"const {self.p}_pair {name} = work->{step.angle}_roots.turn[{root}];")
         else:
-            self.put(f"const {self.p}_real {name} = work->{step.angle}_roots.slide[choice];")
+            self.put(f"const {self.p}_real {name} = work->{step.angle}_roots.slide[{root}];")
+
+    def _root_of_side(self, step: QuarticStep) -> str:
+        """The number of the root among those that rise and fall: `choice` has the side of the Jacobian as its low bit."""
+        assert step.det is not None
+        one = literal(1, self.options.real)
+        if step.bit in self.scope.uses:
+            self.put(f"const {self.p}_real {step.bit.name} = ((choice & 1u) == 0u) ? {one} : -{one};")
+        if step.det.is_constant:
+            return "choice" if step.det.value > 0 else "choice ^ 1u"
+        self.put(f"const unsigned {step.angle}_root = ({self.scope.value(step.det)} > {self.zero}) ? choice : (choice ^ 1u);")
+        return f"{step.angle}_root"
 
     def _refine(self, step: RefineStep) -> None:
         for variable in step.variables:
@@ -357,7 +376,7 @@ class Statements:
         if isinstance(variable.during, Pair):
             assert isinstance(variable.before, Pair)
             before, after = self._name(variable.before), self._name(variable.during)
-            nearly = literal(Fraction(31, 32), self.options.real)
+            nearly = literal(1 - 4 * SLACK * self.options.real.rounding, self.options.real)
             far = f"{before}.c * {after}.c + {before}.s * {after}.s < {nearly}"
         else:
             assert isinstance(variable.before, Node)

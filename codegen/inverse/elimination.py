@@ -40,6 +40,7 @@ class Outer:
     least: Least
     score: int
     kind: str
+    det: Node | None = None  # of the two equations in Z: by it the polynomial was multiplied, squared
     distance: bool = False  # the equation is the distance from a point that the joints before it cannot change
 
 
@@ -107,7 +108,8 @@ def _outer_under_turn(solver: Solver, equations: list[Equation], u: PolyVector, 
     z_y = algebra.sub(algebra.scale(right, first.a[0]), algebra.scale(left, second.a[0]))
     z_square = algebra.add(algebra.mul(z_x, z_x), algebra.mul(z_y, z_y))
     radius = algebra.add(algebra.mul(u[0], u[0]), algebra.mul(u[1], u[1]))
-    return _graded(solver, algebra.sub(z_square, algebra.scale(radius, b.square(det))), Least.AREA, algebra)
+    found = _graded(solver, algebra.sub(z_square, algebra.scale(radius, b.square(det))), Least.AREA, algebra)
+    return found and replace(found, det=det)
 
 
 def _outer_under_slide(solver: Solver, equations: list[Equation], u: PolyVector, algebra: Algebra) -> Outer | None:

@@ -124,7 +124,16 @@ class SlideRootsStep:
 
 @dataclass(frozen=True, slots=True)
 class QuarticStep:
-    """Up to four roots of a trigonometric polynomial f0 + f1 c + f2 s + f3 c^2 + f4 c s, numbered as the header says."""
+    """Up to four roots of a trigonometric polynomial f0 + f1 c + f2 s + f3 c^2 + f4 c s, numbered as the header says.
+
+    The two equations that the polynomial came from have a Jacobian by the two joints, J, and a determinant in the inner
+    joint's pair, D; at a root its slope is 2 D det(J) (implicit differentiation). So the sign of det(J) is known for each
+    root: it numbers them, for it changes at folds of the arm only, while D may change its sign at any pose.
+
+    det     D, where the sign of det(J) is taken; None: roots are numbered by the slope itself
+    side    det(J) where all joints are known, for finding a branch's number
+    bit     +1 or -1, known once a root is chosen: the sign of its det(J)
+    """
 
     joint: int
     angle: str
@@ -133,6 +142,9 @@ class QuarticStep:
     known: Pair  # the pair where all joints are known, for finding a branch's number
     seed: SeedAngle
     note: str
+    bit: Node
+    det: Node | None = None
+    side: Node | None = None
     meaning: str = "crossing direction of the root, then its order"
     roots: int = 4
 
@@ -191,6 +203,11 @@ class Plan:
     pairs: dict[int, Pair] = field(default_factory=dict)
     slides: dict[int, Node] = field(default_factory=dict)
     structure: tuple[str, ...] = ()
+
+    @property
+    def retraced(self) -> bool:
+        """Whether formulas lose digits, so that a solution may have to be brought nearer by steps."""
+        return any(isinstance(step, RefineStep) for step in self.steps)
 
     @property
     def branches(self) -> int:

@@ -14,7 +14,7 @@ from codegen.inverse.groups import Plane, moved_plane
 from codegen.inverse.orientation import DirectionProblem, solve_direction2
 from codegen.inverse.plan import Least
 from codegen.inverse.planar import axes_now
-from codegen.inverse.polish import polish
+from codegen.inverse.polish import Pairing, polish
 from codegen.inverse.polynomial import Algebra, Poly, PolyVector
 from codegen.inverse.segment import Segment, core_of
 from codegen.inverse.solver import Solver
@@ -125,7 +125,8 @@ def _three_turns(solver: Solver, problem: PlaneProblem, what: str) -> bool:
     segment = way.problem.segment
     solve_outer(solver, segment.uses[2], way.outer, f"{what}: {solver.label(segment.uses[2].joint.index)} alone")
     if way.outer.kind == "quartic":
-        polish(solver, segment.uses[1], segment.uses[2], way.equations, way.normal, None, what)
+        pairing = Pairing(segment.uses[1], segment.uses[2], way.equations, way.normal, way.outer.det, None)
+        polish(solver, pairing, what)
     return _two_turns(solver, way, what)
 
 

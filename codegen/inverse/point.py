@@ -16,7 +16,7 @@ from codegen.inverse.elimination import (
     square_by_radius,
 )
 from codegen.inverse.plan import Least
-from codegen.inverse.polish import FirstAxis, polish
+from codegen.inverse.polish import FirstAxis, Pairing, polish
 from codegen.inverse.polynomial import Algebra, Poly, PolyVector
 from codegen.inverse.segment import Core, Segment, Use
 from codegen.inverse.solver import Balance, Solver
@@ -127,7 +127,8 @@ def solve_point3(solver: Solver, problem: PointProblem, what: str) -> bool:
     solve_outer(solver, outer_use, way.outer, note, way.square(solver))
     if way.outer.kind == "quartic":
         axis = FirstAxis(segment.cores[0].middle, way.p)
-        polish(solver, segment.uses[1], outer_use, way.equations, way.source.u, axis, what)
+        pairing = Pairing(segment.uses[1], outer_use, way.equations, way.source.u, way.outer.det, axis)
+        polish(solver, pairing, what)
         _last_joint(solver, _without_last(solver, way.problem), what)
         return True
     return solve_point2(solver, _without_last(solver, way.problem), what)

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from codegen.exact import MP
 from codegen.geometry import Pair, Rigid, Vector
 from codegen.inverse.elimination import Equation, reduced_rhs, solved_for_z
 from codegen.inverse.plan import Least, Variable
@@ -45,6 +46,9 @@ def _monomial(solver: Solver, monomial: tuple[int, int], where: Pair | Node) -> 
     return product
 
 
+NEARLY_ALONG = "NEARLY_ALONG"  # squared sine of the angle between two lines
+
+
 @dataclass(frozen=True, slots=True)
 class FirstAxis:
     """What the first joint turns about z: points behind `core`, which must come as far from the axis as `p` is."""
@@ -53,17 +57,33 @@ class FirstAxis:
     p: Vector
 
 
-def polish(
-    solver: Solver, inner: Use, outer: Use, equations: list[Equation], u: PolyVector, axis: FirstAxis | None, what: str
-) -> None:
+@dataclass(frozen=True, slots=True)
+class Pairing:
+    """Two equations for an inner and an outer joint: a . (inner joint moved) u = rhs, u and rhs by the outer joint.
+
+    det   of the two in the inner joint's pair; None where the outer joint's polynomial was not made by solving for it
+    axis  what the distance equation among them measures from
+    """
+
+    inner: Use
+    outer: Use
+    equations: list[Equation]
+    u: PolyVector
+    det: Node | None
+    axis: FirstAxis | None
+
+
+def polish(solver: Solver, pairing: Pairing, what: str) -> None:
     """Find the inner joint from the unpolished outer one, then polish both together."""
-    rough = _inner_from_outer(solver, inner, outer, equations, u, what)
+    inner, outer, u = pairing.inner, pairing.outer, pairing.u
+    side = _number_roots(solver, pairing)
+    rough = _inner_from_outer(solver, pairing, side, what)
     outer_before = solver.pairs[outer.joint.index] if outer.turns else solver.slides[outer.joint.index]
     variables = (
         _variable(solver, inner, rough),
         _variable(solver, outer, outer_before),
     )
-    residuals, slopes = _newton(solver, inner, equations, u, axis, variables)
+    residuals, slopes = _newton(solver, pairing, (variables[0].during, variables[1].during))
     solver.refine(variables, residuals, slopes, f"{what}: polish both roots on the two equations they came from")
     for use, variable in zip((inner, outer), variables, strict=True):
         if isinstance(variable.after, Pair):
@@ -80,46 +100,96 @@ def _variable(solver: Solver, use: Use, before: Pair | Node) -> Variable:
     return Variable(index, name, before, solver.new_slide(f"{name}_now"), solver.new_slide(name))
 
 
-def _inner_from_outer(
-    solver: Solver, inner: Use, outer: Use, equations: list[Equation], u: PolyVector, what: str
-) -> Pair | Node:
+def _number_roots(solver: Solver, pairing: Pairing) -> Node | None:
+    """Where the polynomial's slope is the Jacobian's determinant times `det`, the sign of the determinant is the number."""
+    inner, outer = pairing.inner.joint, pairing.outer.joint
+    if pairing.det is None or not (inner.turns and outer.turns):
+        return None
     b = solver.builder
+    known = (solver.known_pairs[inner.index], solver.known_pairs[outer.index])
+    _, ((p, q), (r, s)) = _newton(solver, pairing, known)
+    turned = b.mul(b.integer(pairing.inner.sign), b.sub(b.mul(p, s), b.mul(q, r)))  # by the inner joint as it is used
+    return solver.number_by_jacobian(pairing.det, turned)
+
+
+def _inner_from_outer(solver: Solver, pairing: Pairing, side: Node | None, what: str) -> Pair | Node:
+    b, inner, outer = solver.builder, pairing.inner, pairing.outer
     where = solver.pairs[outer.joint.index] if outer.turns else solver.slides[outer.joint.index]
     algebra = Algebra(b, outer.turns)
-    known: Vector = (
-        value_at(solver, u[0], where),
-        value_at(solver, u[1], where),
-        value_at(solver, u[2], where),
-    )
+    u, equations = pairing.u, pairing.equations
+    known: Vector = (value_at(solver, u[0], where), value_at(solver, u[1], where), value_at(solver, u[2], where))
     note = f"{what}: {solver.label(inner.joint.index)}, not polished yet"
     if not inner.turns:
         first = equations[0]
         rest = b.sub(value_at(solver, first.rhs, where), solver.space.dot(first.a, known))
         solver.slide(inner, rest, first.a[2], note, settles=False)
         return solver.slides[inner.joint.index]
-    left, right = (value_at(solver, reduced_rhs(solver, e, u, algebra), where) for e in equations)
+    reduced = [reduced_rhs(solver, e, u, algebra) for e in equations]
+    left, right = (value_at(solver, poly, where) for poly in reduced)
     z_x, z_y = solved_for_z(solver, (equations[0], equations[1]), left, right)
-    solver.turn_onto(inner, known, (z_x, z_y, known[2]), Least.NOTHING, note, settles=False)
     turned = b.add(b.square(known[0]), b.square(known[1]))
+    if side is not None and pairing.det is not None and not pairing.det.is_constant:
+        slopes = [slope_at(solver, poly, where) for poly in reduced]
+        other = _by_one_equation(solver, equations, (left, right), slopes, turned, side)
+        apart = _clearly_apart(solver, equations, pairing.det)
+        z_x, z_y = b.choice(apart, z_x, other[0]), b.choice(apart, z_y, other[1])
+    solver.turn_onto(inner, known, (z_x, z_y, known[2]), Least.NOTHING, note, settles=False)
     solver.start_at_seed_below(turned, Least.ANGLE if equations[0].least is Least.ANGLE else Least.LENGTH)
     return solver.pairs[inner.joint.index]
 
 
+def _across(solver: Solver, equation: Equation) -> Node:
+    b = solver.builder
+    return b.add(b.square(equation.a[0]), b.square(equation.a[1]))
+
+
+def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node:
+    """Positive where the two equations, as lines in the plane of Z, cross clearly enough to be solved together."""
+    b = solver.builder
+    sizes = b.mul(_across(solver, equations[0]), _across(solver, equations[1]))
+    nearly_along = b.input(NEARLY_ALONG)  # by the number type: a tolerance of the generated C
+    solver.oracle.declare_real(nearly_along)
+    return b.sub(b.square(det), b.mul(nearly_along, sizes))
+
+
+def _by_one_equation(
+    solver: Solver, equations: list[Equation], values: tuple[Node, Node], slopes: list[Node], turned: Node, side: Node
+) -> tuple[Node, Node]:
+    """A positive multiple of Z from the equation that says more; it has two roots, told apart by `side`.
+
+    Where the two equations are nearly one, the outer joint's roots come in nearly equal pairs, which differ by Z alone:
+    the sign of det(J) is that of (a x Z) (C_other' - k C'), with a_other = k a.
+    """
+    b = solver.builder
+    first, second = equations
+    across = b.sub(b.mul(first.a[0], second.a[0]), b.neg(b.mul(first.a[1], second.a[1])))  # their scalar product
+
+    def solved(equation: Equation, value: Node, own_slope: Node, other_slope: Node, turn: int) -> tuple[Node, Node]:
+        size = _across(solver, equation)
+        height = b.sqrt(b.sub(b.mul(size, turned), b.square(value)))
+        bend = b.sub(b.mul(other_slope, size), b.mul(across, own_slope))
+        sign = b.mul(b.integer(turn), side)
+        signed = b.mul(height, b.choice(bend, sign, b.neg(sign)))
+        a_x, a_y = equation.a[0], equation.a[1]
+        return b.sub(b.mul(a_x, value), b.mul(a_y, signed)), b.add(b.mul(a_y, value), b.mul(a_x, signed))
+
+    by_first = solved(first, values[0], slopes[0], slopes[1], 1)
+    by_second = solved(second, values[1], slopes[1], slopes[0], -1)
+    says_more = b.sub(_across(solver, first), b.constant("SAYS_ENOUGH", MP.mpf(1) / 64, "squared part of a unit vector"))
+    return b.choice(says_more, by_first[0], by_second[0]), b.choice(says_more, by_first[1], by_second[1])
+
+
 def _newton(
-    solver: Solver,
-    inner: Use,
-    equations: list[Equation],
-    u: PolyVector,
-    axis: FirstAxis | None,
-    variables: tuple[Variable, Variable],
+    solver: Solver, pairing: Pairing, now: tuple[Pair | Node, Pair | Node]
 ) -> tuple[tuple[Node, Node], tuple[tuple[Node, Node], tuple[Node, Node]]]:
-    moving = _carried(solver, inner, u, variables)
+    """Residuals of the two equations and their slopes by the inner and the outer joint, at values of these."""
+    moving = _carried(solver, pairing.inner, pairing.u, now)
     rows = []
-    for equation in equations:
-        if equation.least is Least.AREA and axis is not None:
-            rows.append(_distance_row(solver, axis, moving))
+    for equation in pairing.equations:
+        if equation.least is Least.AREA and pairing.axis is not None:
+            rows.append(_distance_row(solver, pairing.axis, moving))
         else:
-            rows.append(_row(solver, equation, moving, variables[1].during))
+            rows.append(_row(solver, equation, moving, now[1]))
     (r1, s1), (r2, s2) = rows
     return (r1, r2), (s1, s2)
 
@@ -133,9 +203,9 @@ class _Carried:
     by_outer: Vector
 
 
-def _carried(solver: Solver, inner: Use, u: PolyVector, variables: tuple[Variable, Variable]) -> _Carried:
+def _carried(solver: Solver, inner: Use, u: PolyVector, where: tuple[Pair | Node, Pair | Node]) -> _Carried:
     space, b = solver.space, solver.builder
-    now, outer_now = variables[0].during, variables[1].during
+    now, outer_now = where
     here: Vector = (value_at(solver, u[0], outer_now), value_at(solver, u[1], outer_now), value_at(solver, u[2], outer_now))
     slope: Vector = (slope_at(solver, u[0], outer_now), slope_at(solver, u[1], outer_now), slope_at(solver, u[2], outer_now))
     sign = b.integer(inner.sign)

@@ -264,8 +264,11 @@ class Solver:
             self._new_stage(4)
             pair = self.new_pair(f"{name}_rough")
             self.pairs[index] = pair
+            coefficients = (f[0], f[1], f[2], f[3], f[4])
+            bit = b.fresh_stage(f"{name}_side", self.stage)
+            self.oracle.declare_real(bit)
             self.steps.append(
-                QuarticStep(index, name, pair, (f[0], f[1], f[2], f[3], f[4]), self.known_pairs[index], self.seed_of(use), note)
+                QuarticStep(index, name, pair, coefficients, self.known_pairs[index], self.seed_of(use), note, bit)
             )
             return
         g = [poly.coefficient((k, 0), zero) for k in range(5)]
@@ -277,6 +280,13 @@ class Solver:
         self.steps.append(
             SlideQuarticStep(index, name, value, (g[0], g[1], g[2], g[3], g[4]), self.known_slides[index], note)
         )
+
+    def number_by_jacobian(self, det: Node, side: Node) -> Node:
+        """Number the roots of the quartic just found by the sign of a Jacobian determinant (QuarticStep); returns that sign."""
+        step = self.steps[-1]
+        assert isinstance(step, QuarticStep)
+        self.steps[-1] = replace(step, det=det, side=side, meaning="side of the Jacobian that the root lies on, then its order")
+        return step.bit
 
     def refine(self, variables: tuple[Variable, Variable], residuals: tuple[Node, Node],
                slopes: tuple[tuple[Node, Node], tuple[Node, Node]], note: str) -> None:  # fmt: skip

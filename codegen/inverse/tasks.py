@@ -115,7 +115,7 @@ def step_nodes(step: object) -> list[Node]:
                 gather(item)
 
     for name in step.__dataclass_fields__:  # type: ignore[attr-defined]
-        if name not in ("side", "known"):
+        if name not in ("side", "known", "bit"):
             gather(getattr(step, name))
     return found
 

@@ -92,7 +92,7 @@ def most_steps(tables: TrackingTables, options: Options) -> MostSteps:
     the pose leaves free goes to its seed in legs, each with a look and its own steps, and one more track at the end.
     """
     each = SEARCH_STEPS + FINISHING[options.real] + 1
-    loosening = MOST_LOOSE * ((LEGS + 1) * (each + 1) + each + 1)
+    loosening = MOST_LOOSE * ((LEGS + 2) * (each + 1) + each + 1)
     tracked = ATTEMPTS * each + 1
     searched = tracked + len(tables.starts) * (each + 1 + tables.branches)
     return MostSteps(tracked, tracked + loosening, searched, searched + (len(tables.starts) + 1) * loosening)

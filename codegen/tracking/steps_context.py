@@ -13,7 +13,7 @@ from codegen.tracking.settings import DAMPING, LARGEST_MOVE, NEAR
 from codegen.tracking.shape import ArmShape
 
 MOST_LOOSE = 2
-LEGS = 3  # after a first one of a radian: two more radians make more than half a turn
+LEGS = 4  # of a radian each: more than half a turn
 _LOST = 10**15
 _SOLVED_UNITS = {RealType.FLOAT: 32, RealType.DOUBLE: 64}  # measured: residuals end below 25 units
 _LOOSE = {RealType.FLOAT: Fraction(1, 10**6), RealType.DOUBLE: Fraction(1, 10**12)}
@@ -103,6 +103,7 @@ def _numbers(shape: ArmShape, real: RealType) -> tuple[tuple[str, str, str], ...
         ("LOST", _LOST, "a residual beyond all arms"),
         ("LOOSE", _LOOSE[real], "squared length of a column that seems to depend on others"),
         ("LONGEST_LEG", 1, "of a free joint on its way to its seed"),
+        ("SHORT_LEG", Fraction(1, 4), "by which it must be able to go either way"),
         ("LEAST_PART", Fraction(1, 8), "that it must take in the motion"),
         ("STRAIGHT", MP.pi, "rad, half a turn"),
         ("ONE_TURN", 2 * MP.pi, "rad"),
