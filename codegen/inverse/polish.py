@@ -144,11 +144,17 @@ def _across(solver: Solver, equation: Equation) -> Node:
 
 
 def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node:
-    """Positive where the two equations, as lines in the plane of Z, cross clearly enough to be solved together."""
+    """Positive where the two equations, as lines in the plane of Z, cross clearly enough to be solved together.
+
+    The first has the length of a unit vector's part, the second that of the arm: against these, not against their own
+    lengths, their rounding counts.
+    """
     b = solver.builder
-    sizes = b.mul(_across(solver, equations[0]), _across(solver, equations[1]))
-    nearly_along = b.input(NEARLY_ALONG)  # by the number type: a tolerance of the generated C
+    nearly_along, reach = b.input(NEARLY_ALONG), b.input("REACH")  # tolerances of the generated C
     solver.oracle.declare_real(nearly_along)
+    solver.oracle.declare_real(reach)
+    part_of_reach = b.square(b.mul(reach, b.constant("ARM_SHARE", MP.mpf(1) / 4, "of the reach: about an arm's links")))
+    sizes = b.add(_across(solver, equations[1]), b.mul(part_of_reach, _across(solver, equations[0])))
     return b.sub(b.square(det), b.mul(nearly_along, sizes))
 
 
