@@ -66,7 +66,7 @@ _NOTHING = OperationCount()
 UNIT = OperationCount(additions=1, multiplications=4, divisions=1, roots=1)  # (x, y) brought to length 1
 SETTLE = OperationCount(additions=1)  # how far a returned angle is from its seed
 TIDY = OperationCount(additions=2, multiplications=5)  # a pair of almost length 1 brought to length 1
-_NEWTON = OperationCount(additions=6, multiplications=15, divisions=1)  # two equations in two unknowns
+_NEWTON = OperationCount(additions=7, multiplications=16, divisions=1)  # two equations in two unknowns
 _TURN_BY = OperationCount(additions=2, multiplications=2) + UNIT
 _SEARCH_STEPS = {24: 30, 53: 60}  # of one root of a polynomial, by the bits of the number type
 _MOST_CROSSINGS = 6  # that one polynomial of fourth degree can note, double ones included
@@ -185,7 +185,7 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
         case QuarticStep() | SlideQuarticStep():
             return list(step.coefficients), []
         case RefineStep():
-            return [], [*step.residuals, *step.slopes[0], *step.slopes[1]]
+            return list(step.scales), [*step.residuals, *step.slopes[0], *step.slopes[1]]
         case _:
             assert_never(step)
 

@@ -57,7 +57,7 @@ def step_roots(step: Step) -> list[Node]:
         case QuarticStep():
             return [] if step.det is None or step.det.is_constant else [step.det]
         case RefineStep():
-            return [*step.residuals, *step.slopes[0], *step.slopes[1]]
+            return [*step.scales, *step.residuals, *step.slopes[0], *step.slopes[1]]
         case _:
             return []
 
@@ -355,13 +355,15 @@ class Statements:
     def _refine(self, step: RefineStep) -> None:
         for variable in step.variables:
             self._start_variable(variable)
+        scales = ", ".join(self.scope.value(node) for node in step.scales)
+        self.put(f"const {self.p}_real scales[2] = {{{scales}}};")
         self.put(f"for (int pass = 0; pass < {step.passes}; ++pass) {{")
         self.scope.indent += "    "
         known = dict(self.scope.names)
         first, second = (self.scope.value(node) for node in step.residuals)
         slopes = [self.scope.value(node) for row in step.slopes for node in row]
         self.put(f"{self.p}_real change[2];")
-        self.put(f"{self.p}_newton2({', '.join([*slopes, first, second])}, change);")
+        self.put(f"{self.p}_newton2({', '.join([*slopes, first, second])}, scales, change);")
         for k, variable in enumerate(step.variables):
             self._change_variable(variable, k)
         self.scope.names = known

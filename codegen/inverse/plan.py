@@ -176,12 +176,17 @@ class Variable:
 
 @dataclass(frozen=True, slots=True)
 class RefineStep:
-    """Newton steps on two equations in two joints: the roots of an elimination polished on what they came from."""
+    """Newton steps on two equations in two joints: the roots of an elimination polished on what they came from.
+
+    slopes  d residual / d variable
+    scales  squared sizes that slopes of the two equations have on this arm: against these the steps are damped
+    """
 
     variables: tuple[Variable, Variable]
     residuals: tuple[Node, Node]
-    slopes: tuple[tuple[Node, Node], tuple[Node, Node]]  # d residual / d variable
+    slopes: tuple[tuple[Node, Node], tuple[Node, Node]]
     note: str
+    scales: tuple[Node, Node]
     passes: int = 5
     roots: int = 1
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from codegen.exact import MP
 from codegen.geometry import Pair, Rigid, Vector
 from codegen.inverse.elimination import Equation, reduced_rhs, solved_for_z
-from codegen.inverse.plan import Least, Variable
+from codegen.inverse.plan import Least, RefineStep, Variable
 from codegen.inverse.polynomial import Algebra, Poly, PolyVector
 from codegen.inverse.segment import Use
 from codegen.inverse.solver import Solver
@@ -84,7 +84,8 @@ def polish(solver: Solver, pairing: Pairing, what: str) -> None:
         _variable(solver, outer, outer_before),
     )
     residuals, slopes = _newton(solver, pairing, (variables[0].during, variables[1].during))
-    solver.refine(variables, residuals, slopes, f"{what}: polish both roots on the two equations they came from")
+    note = f"{what}: polish both roots on the two equations they came from"
+    solver.refine(RefineStep(variables, residuals, slopes, note, _scales(solver, pairing)))
     for use, variable in zip((inner, outer), variables, strict=True):
         if isinstance(variable.after, Pair):
             solver.pairs[use.joint.index] = variable.after
@@ -98,6 +99,26 @@ def _variable(solver: Solver, use: Use, before: Pair | Node) -> Variable:
     if isinstance(before, Pair):
         return Variable(index, name, before, solver.new_pair(f"{name}_now"), solver.new_pair(name))
     return Variable(index, name, before, solver.new_slide(f"{name}_now"), solver.new_slide(name))
+
+
+def _scales(solver: Solver, pairing: Pairing) -> tuple[Node, Node]:
+    b = solver.builder
+    reach_squared = b.square(_reach(solver))
+    found = []
+    for equation in pairing.equations:
+        if equation.least is Least.AREA and pairing.axis is not None:
+            p = pairing.axis.p
+            found.append(b.mul(b.add(b.square(p[0]), b.square(p[1])), reach_squared))
+        else:
+            found.append(b.integer(1) if equation.least is Least.ANGLE else reach_squared)
+    return found[0], found[1]
+
+
+def _reach(solver: Solver) -> Node:
+    """A tolerance of the generated C."""
+    reach = solver.builder.input("REACH")
+    solver.oracle.declare_real(reach)
+    return reach
 
 
 def _number_roots(solver: Solver, pairing: Pairing) -> Node | None:
@@ -150,10 +171,9 @@ def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node
     lengths, their rounding counts.
     """
     b = solver.builder
-    nearly_along, reach = b.input(NEARLY_ALONG), b.input("REACH")  # tolerances of the generated C
+    nearly_along = b.input(NEARLY_ALONG)  # a tolerance, too
     solver.oracle.declare_real(nearly_along)
-    solver.oracle.declare_real(reach)
-    part_of_reach = b.square(b.mul(reach, b.constant("ARM_SHARE", MP.mpf(1) / 4, "of the reach: about an arm's links")))
+    part_of_reach = b.square(b.mul(_reach(solver), b.constant("ARM_SHARE", MP.mpf(1) / 4, "of the reach: about an arm's links")))
     sizes = b.add(_across(solver, equations[1]), b.mul(part_of_reach, _across(solver, equations[0])))
     return b.sub(b.square(det), b.mul(nearly_along, sizes))
 

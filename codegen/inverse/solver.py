@@ -288,9 +288,8 @@ class Solver:
         self.steps[-1] = replace(step, det=det, side=side, meaning="side of the Jacobian that the root lies on, then its order")
         return step.bit
 
-    def refine(self, variables: tuple[Variable, Variable], residuals: tuple[Node, Node],
-               slopes: tuple[tuple[Node, Node], tuple[Node, Node]], note: str) -> None:  # fmt: skip
-        self.steps.append(RefineStep(variables, residuals, slopes, note))
+    def refine(self, step: RefineStep) -> None:
+        self.steps.append(step)
 
     def structure_found(self, text: str) -> None:
         self.structure.append(text)
