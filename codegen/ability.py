@@ -97,7 +97,8 @@ def _rows_of(
             if _parallel(normal, z):
                 why = "the tool's z axis has no angle in the arm's own plane, it lies along the pitch axis: mend [tool] rpy"
                 return [*velocity, [MP.mpf(0)] * len(motions)], (*moves, why)
-            return [*velocity, [_dot(motion[1], normal) for motion in motions]], (*moves, "turning the tool in the arm's own plane")
+            pitch = [_dot(motion[1], normal) for motion in motions]
+            return [*velocity, pitch], (*moves, "turning the tool in the arm's own plane")
         case Task.PLANE_POSE | Task.PLANE_POINT:
             return _plane_rows(task, motions, turns, axes)
 

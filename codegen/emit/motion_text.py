@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 from codegen.chain import Chain, chain_of
@@ -128,7 +129,7 @@ class MotionText:
         scope.put(f"const {p}_pair {name} = {p}_turn({scope.text(angle)});{note}")
 
 
-def _jacobian_targets(columns: list[tuple[Vector, Vector]]) -> list[tuple[str, Node]]:
+def _jacobian_targets(columns: Sequence[tuple[Vector, Vector]]) -> list[tuple[str, Node]]:
     return [
         (f"jac[{row + 3 * half}][{k}]", vector[row])
         for k, column in enumerate(columns)

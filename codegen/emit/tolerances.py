@@ -50,7 +50,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
         row("WIDE_SLACK", 64 * SLACK * u, "the same where what misses is brought nearer"),
         row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
-        row("LEAST_ROUGH", MP.sqrt(ROUGH * MP.mpf(u.numerator) / u.denominator), "part of a unit vector that a double root leaves unknown"),
+        row("LEAST_ROUGH", _root(ROUGH * u), "part of a unit vector that a double root leaves unknown"),
         row("NEARLY_ALONG", 1024 * u, "squared sine of the angle between two lines that hardly cross"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
         row("LEAST_TURN", turn * u, "and the rotation by this, all entries' squares added up"),
@@ -61,6 +61,10 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("FULL_TURN", high, "2 pi in two parts: this one is exact when multiplied"),
         row("FULL_TURN_REST", low, "and what is left of it"),
     ]
+
+
+def _root(value: Fraction) -> object:
+    return MP.sqrt(MP.mpf(value.numerator) / value.denominator)
 
 
 def _base_distance(arm: Arm) -> Fraction:

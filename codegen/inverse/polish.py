@@ -75,7 +75,7 @@ class Pairing:
 
 def polish(solver: Solver, pairing: Pairing, what: str) -> None:
     """Find the inner joint from the unpolished outer one, then polish both together."""
-    inner, outer, u = pairing.inner, pairing.outer, pairing.u
+    inner, outer = pairing.inner, pairing.outer
     side = _number_roots(solver, pairing)
     rough = _inner_from_outer(solver, pairing, side, what)
     outer_before = solver.pairs[outer.joint.index] if outer.turns else solver.slides[outer.joint.index]
@@ -173,8 +173,8 @@ def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node
     b = solver.builder
     nearly_along = b.input(NEARLY_ALONG)  # a tolerance, too
     solver.oracle.declare_real(nearly_along)
-    part_of_reach = b.square(b.mul(_reach(solver), b.constant("ARM_SHARE", MP.mpf(1) / 4, "of the reach: about an arm's links")))
-    sizes = b.add(_across(solver, equations[1]), b.mul(part_of_reach, _across(solver, equations[0])))
+    link = b.mul(_reach(solver), b.constant("LINK_SHARE", MP.mpf(1) / 4, "of the reach: about one link's"))
+    sizes = b.add(_across(solver, equations[1]), b.mul(b.square(link), _across(solver, equations[0])))
     return b.sub(b.square(det), b.mul(nearly_along, sizes))
 
 

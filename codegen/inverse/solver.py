@@ -23,7 +23,6 @@ from codegen.inverse.plan import (
     SlideRootsStep,
     SlideStep,
     Step,
-    Variable,
 )
 from codegen.inverse.polynomial import Poly
 from codegen.inverse.segment import Use
