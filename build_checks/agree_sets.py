@@ -16,6 +16,7 @@ from build_checks.reference import Array, Flags, Integers, Poses
 from build_checks.report import Check, Failure
 from codegen.model import Task
 
+_SHARP = 0.1  # below it the pose hardly states the angle
 _PART = 16384  # solutions fed back at a time: their sets stay small enough for the processor's cache
 
 
@@ -122,8 +123,8 @@ def _read_alike(bench: Bench, found: Branches, flat: Flat, poses: Poses) -> Flag
         rows = np.flatnonzero(is_in(found.status[flat.rows, branch], SOLVED))
         chain = bench.reference.chain(found.q[flat.rows[rows], branch].astype(np.float64))
         targets = poses.take(rows)
-        sharp = np.maximum(bench.reading.sharpness(targets, chain), 1e-300)
-        alike[rows] &= bench.reading.errors(targets, chain)[1] <= 4 * bench.budget.task / sharp
+        clear = bench.reading.sharpness(targets, chain) > _SHARP
+        alike[rows] &= clear & (bench.reading.errors(targets, chain)[1] <= bench.budget.task)
     return alike
 
 

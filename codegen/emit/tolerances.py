@@ -11,13 +11,14 @@ from fractions import Fraction
 
 from codegen.emit.numbers import literal
 from codegen.exact import MP, Angle
-from codegen.model import Arm, JointKind
+from codegen.model import Arm, JointKind, Task
 from codegen.options import Options
 
-FREE, FREE_TURN, SLACK, STEP, EXCESS, FLAT = 16, 40, 4096, 8, 16, 8
-# by significand bits: of the reach, and of all entries of a rotation: twice the angle promised, as at any edge
-MISS = {24: (16, 95), 53: (86, 500)}
-RETRACED = {24: (8, 32), 53: (40, 160)}
+FREE_TURN, SLACK, STEP, EXCESS, FLAT = 40, 4096, 8, 16, 8
+FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
+# by significand bits: of the reach, and an angle, rad: twice the angle promised, as at any edge
+MISS = {24: (16, 67), 53: (86, 360)}
+RETRACED = {24: (8, 24), 53: (40, 110)}
 ROUGH = 512  # a double root is known to the root of this many roundings
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
@@ -36,6 +37,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
     """(name, literal, comment). `retraced`: a solution that misses is not given up but brought nearer."""
     u, reach = options.real.rounding, reach_of(arm)
     high, low = _full_turn(options)
+    spread = MP.sqrt(2) if arm.task is Task.POSE else MP.mpf(1)  # a small turn's share in the entries of its matrix
     miss, turn = (RETRACED if retraced else MISS)[options.real.bits]
 
     def row(name: str, value: object, comment: str) -> tuple[str, str, str]:
@@ -45,7 +47,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("LARGEST", Fraction(2) ** (120 if options.real.bits < 30 else 1016), "rad or m: a joint value beyond it is none"),
         row("REACH", reach, "m, all links end to end"),
         row("FAR", FAR * (reach + _base_distance(arm)), "m, farther than any pose worth trying"),
-        row("LEAST_LENGTH", FREE * u * reach, "m, a distance from an axis below which it is zero"),
+        row("LEAST_LENGTH", FREE[options.real.bits] * u * reach, "m, a distance from an axis below which it is zero"),
         row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
         row("WIDE_SLACK", 64 * SLACK * u, "the same where what misses is brought nearer"),
@@ -53,7 +55,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("LEAST_ROUGH", _root(ROUGH * u), "part of a unit vector that a double root leaves unknown"),
         row("NEARLY_ALONG", 1024 * u, "squared sine of the angle between two lines that hardly cross"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
-        row("LEAST_TURN", turn * u, "and the rotation by this, all entries' squares added up"),
+        row("LEAST_TURN", turn * spread * MP.mpf(u.numerator) / u.denominator, "and what it reads of the rotation by this, all entries' squares added up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
         row("HALF_TURN", MP.pi, "pi"),
