@@ -55,7 +55,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("LEAST_ROUGH", _root(ROUGH * u), "part of a unit vector that a double root leaves unknown"),
         row("NEARLY_ALONG", 1024 * u, "squared sine of the angle between two lines that hardly cross"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
-        row("LEAST_TURN", turn * spread * MP.mpf(u.numerator) / u.denominator, "and what it reads of the rotation by this, all entries' squares added up"),
+        row("LEAST_TURN", turn * spread * MP.mpf(u.numerator) / u.denominator, "and what it reads of the rotation, summed up"),
         row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
         row("HALF_TURN", MP.pi, "pi"),
