@@ -27,7 +27,7 @@ from codegen.options import Arithmetic, Options, RealType
 
 HARNESS = Path(__file__).with_name("certify.c")
 FIGURES = Path(__file__).parents[1] / "codegen" / "elementary" / "figures.py"
-FUNCTIONS = frozenset({"atan2", "sin_cos", "sqrt", "abs", "is_finite"})
+FUNCTIONS = frozenset({"atan2", "sin_cos", "sqrt", "root", "exceeds", "abs", "is_finite"})
 TURNS = 62832  # rad: 1e4 turns
 _PREFIX = "own"
 _DECLARATIONS = """

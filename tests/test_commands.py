@@ -124,6 +124,9 @@ BAD_OPTIONS = [
     (["--prefix", "a*/x"], 'error: --prefix: "a*/x" is not a C identifier\n'),
     (["--angle-error", "1"], "error: --angle-error: 1 ulp cannot be promised\n  hint: give 2 or more\n"),
     (["--angle-error", "16", "--math", "libm"], "error: --angle-error: says nothing about --math libm\n"),
+    (["--angles", "whole"], 'error: --angles: unknown word "whole"\n  hint: accepted are integer, real\n'),
+    (["--angles", "integer", "--math", "libm"], "error: --angles: says nothing about --math libm\n"),
+    (["--angles", "integer", "--real", "double"], "error: --angles: whole numbers of 32 bits hold no double\n"),
 ]
 
 

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from codegen.commands.arguments import AngleError, AsJson, Math, Prefix, Real, Wanted, wanted
+from codegen.commands.arguments import AngleError, Angles, AsJson, Math, Prefix, Real, Wanted, wanted
 from codegen.commands.console import Progress, show_data
 from codegen.errors import CallError, Fault
 from codegen.writing import write_file
@@ -49,6 +49,7 @@ def agree(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    angles: Angles = "real",
 ) -> None:
     """Check the C against the link table.
 
@@ -67,7 +68,7 @@ def agree(
         from build_checks.agree import Settings
 
         settings = Settings(samples, seed, thorough, shard=_shard(shard))
-        part = _run(wanted(_only(arm), real, math, prefix, angle_error), settings)
+        part = _run(wanted(_only(arm), real, math, prefix, angle_error, angles), settings)
     _hand_out(part, as_json, report, junit)
     if not part.report.agreed:
         raise typer.Exit(1)

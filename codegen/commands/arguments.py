@@ -11,7 +11,7 @@ import typer
 
 from codegen.commands.console import show_faults, working
 from codegen.errors import CallError, Fault
-from codegen.options import Mathematics, Options, RealType
+from codegen.options import Arithmetic, Mathematics, Options, RealType
 
 if TYPE_CHECKING:
     from codegen.armfile import ArmFile
@@ -20,6 +20,7 @@ if TYPE_CHECKING:
 LEAST_ANGLE_ERROR = 2  # ulp; the default
 _REALS = tuple(real.c_name for real in RealType)
 _MATHEMATICS = tuple(mathematics.value for mathematics in Mathematics)
+_ARITHMETICS = tuple(arithmetic.value for arithmetic in Arithmetic)
 
 
 def _complete(words: tuple[str, ...]) -> Callable[[str], list[str]]:
@@ -58,21 +59,33 @@ AngleError = Annotated[
         f"{LEAST_ANGLE_ERROR} or more; more gives shorter, faster code.",
     ),
 ]
+Angles = Annotated[
+    str,
+    typer.Option(
+        "--angles",
+        metavar="|".join(_ARITHMETICS),
+        help="What the C's own sine, cosine and arc tangent compute in: the number type, or whole numbers, which is "
+        "quicker on 32-bit processors without a float unit (float only).",
+        autocompletion=_complete(_ARITHMETICS),
+    ),
+]
 AsJson = Annotated[bool, typer.Option("--json", help="Print JSON for a machine to read.")]
 
 
-def options_of(real: str, math: str, prefix: str, angle_error: int) -> Options:
+def options_of(real: str, math: str, prefix: str, angle_error: int, angles: str = "real") -> Options:
     """The options of the generated C; CallError holds everything that is wrong with them."""
     faults = [
         *_real_fault(real),
         *_choice_fault("--math", math, _MATHEMATICS),
         *_prefix_fault(prefix),
         *_angle_error_fault(angle_error, math),
+        *_choice_fault("--angles", angles, _ARITHMETICS),
+        *_angles_fault(angles, real, math),
     ]
     if faults:
         raise CallError(*faults)
     wanted = next(kind for kind in RealType if kind.c_name == real)
-    return Options(wanted, Mathematics(math), prefix, angle_error)
+    return Options(wanted, Mathematics(math), prefix, angle_error, Arithmetic(angles))
 
 
 def _real_fault(real: str) -> list[Fault]:
@@ -108,6 +121,16 @@ def _angle_error_fault(angle_error: int, math: str) -> list[Fault]:
     return []
 
 
+def _angles_fault(angles: str, real: str, math: str) -> list[Fault]:
+    if angles != Arithmetic.INTEGER.value:
+        return []
+    if math == Mathematics.LIBM.value:
+        return [Fault("--angles", "says nothing about --math libm", "leave one of the two out")]
+    if real == RealType.DOUBLE.c_name:
+        return [Fault("--angles", "whole numbers of 32 bits hold no double", "choose --real float, or leave --angles out")]
+    return []
+
+
 @dataclass(frozen=True, slots=True)
 class Wanted:
     """An arm file that was read, and the options for its C."""
@@ -130,9 +153,9 @@ class Wanted:
             return generate(self.file.arm, self.options, self.source)
 
 
-def wanted(arm: Path, real: str, math: str, prefix: str, angle_error: int) -> Wanted:
+def wanted(arm: Path, real: str, math: str, prefix: str, angle_error: int, angles: str = "real") -> Wanted:
     """Checks the options and reads the arm file."""
-    options = options_of(real, math, prefix, angle_error)
+    options = options_of(real, math, prefix, angle_error, angles)
     return Wanted(read(arm), options)
 
 

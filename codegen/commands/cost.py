@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from codegen.commands.arguments import AngleError, ArmPath, AsJson, Math, Prefix, Real, Wanted, wanted
+from codegen.commands.arguments import AngleError, Angles, ArmPath, AsJson, Math, Prefix, Real, Wanted, wanted
 from codegen.commands.console import say, show_data, working
 
 if TYPE_CHECKING:
@@ -39,6 +39,7 @@ def cost(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    angles: Angles = "real",
 ) -> None:
     """Measure flash, stack and time of the C on processors.
 
@@ -54,7 +55,7 @@ def cost(
 
     bounds = parse_budget(budget) if budget is not None else ()
     names = [target_named(name).name for name in target or ()] or [row.name for row in TARGETS]
-    report = _measured(wanted(arm, real, math, prefix, angle_error), names, poses)
+    report = _measured(wanted(arm, real, math, prefix, angle_error, angles), names, poses)
     show_data(report.to_json() if as_json else cost_table(report))
     excesses = exceeded(report, bounds)
     for excess in excesses:

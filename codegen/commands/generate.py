@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from codegen.commands.arguments import AngleError, ArmPath, Math, OutFolder, Prefix, Real, Wanted, wanted
+from codegen.commands.arguments import AngleError, Angles, ArmPath, Math, OutFolder, Prefix, Real, Wanted, wanted
 from codegen.commands.beside import EvidenceWanted, SelfTest, SelfTestSize, check_size, evidence_of, self_test_of
 from codegen.commands.console import say
 from codegen.writing import write_files
@@ -15,6 +15,7 @@ def generate(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    angles: Angles = "real",
     self_test: SelfTest = False,
     self_test_size: SelfTestSize = None,
     evidence: EvidenceWanted = False,
@@ -28,7 +29,7 @@ def generate(
       linkwright generate arms/vial_picker.toml --out firmware/src --real float
     """
     check_size(self_test, self_test_size)
-    files = all_files(wanted(arm, real, math, prefix, angle_error), self_test, self_test_size, evidence)
+    files = all_files(wanted(arm, real, math, prefix, angle_error, angles), self_test, self_test_size, evidence)
     write_files(out, files)
     say(f"wrote {', '.join(str(out / name) for name in sorted(files))}")
 

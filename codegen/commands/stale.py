@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from codegen.commands.arguments import AngleError, ArmPath, Math, Prefix, Real, wanted
+from codegen.commands.arguments import AngleError, Angles, ArmPath, Math, Prefix, Real, wanted
 from codegen.commands.beside import EvidenceWanted, SelfTest, SelfTestSize, check_size
 from codegen.commands.console import say, show_data
 from codegen.commands.generate import all_files
@@ -24,6 +24,7 @@ def stale(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    angles: Angles = "real",
     self_test: SelfTest = False,
     self_test_size: SelfTestSize = None,
     evidence: EvidenceWanted = False,
@@ -38,7 +39,7 @@ def stale(
       linkwright stale arms/vial_picker.toml --out firmware/src
     """
     check_size(self_test, self_test_size)
-    files = all_files(wanted(arm, real, math, prefix, angle_error), self_test, self_test_size, evidence)
+    files = all_files(wanted(arm, real, math, prefix, angle_error, angles), self_test, self_test_size, evidence)
     differences = [text for name in sorted(files) if (text := _difference(out / name, files[name]))]
     if not differences:
         say(f"{', '.join(str(out / name) for name in sorted(files))}: up to date with {arm}")

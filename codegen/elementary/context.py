@@ -15,6 +15,12 @@ from codegen.errors import CallError, Fault
 from codegen.options import Arithmetic, Mathematics, Options, RealType
 
 _NEAR = {RealType.FLOAT: 32, RealType.DOUBLE: 65536}  # rad; the number of quarters fits beside the bits below
+_SOFTWARE = {
+    RealType.FLOAT: "defined(__AVR__) || (defined(__arm__) && !defined(__ARM_FP)) || "
+    "(defined(__riscv) && !defined(__riscv_flen))",
+    RealType.DOUBLE: "(defined(__arm__) && (!defined(__ARM_FP) || ((__ARM_FP & 8) == 0))) || "
+    "(defined(__riscv) && (!defined(__riscv_flen) || (__riscv_flen < 64)))",
+}
 _SPLITS = {RealType.FLOAT: (19,), RealType.DOUBLE: (36, 36)}  # bits of all but the last part of pi/2
 
 
@@ -32,6 +38,7 @@ class MathsContext:
     """Everything that `maths.c.j2` places.
 
     own          False: the functions call libm
+    software     the preprocessor's condition that numbers of the type are computed by calls
     fixed        sine, cosine and atan2 in whole numbers; None: in the number type
     single       the type is float
     suffix       of the libm functions' names; literal_suffix of the numbers
@@ -43,6 +50,7 @@ class MathsContext:
     """
 
     own: bool
+    software: str
     fixed: FixedFunctions | None
     single: bool
     real: str
@@ -88,6 +96,7 @@ def maths_context(options: Options) -> MathsContext:
     with mp.workdps(40):
         return MathsContext(
             own=own,
+            software=_SOFTWARE[real],
             fixed=_fixed_functions(options) if own and options.angles is Arithmetic.INTEGER else None,
             single=single,
             real=real.c_name,

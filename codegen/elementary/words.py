@@ -20,7 +20,7 @@ class Layout:
     everyday, everyday_span   the words of normal numbers whose doubles do not overflow: the first, and how many
     root_first_bit  the first digit of a root, doubled
     root_bias       what makes twice the exponent of a root from the exponent of its square
-    last_word       the word of the largest number, and that number: `most`
+    last_word       the word of the largest number, and that number: `most`; `one`: the word of 1
     """
 
     word: str
@@ -38,6 +38,7 @@ class Layout:
     root_first_bit: str
     last_word: str
     most: str
+    one: str
 
 
 _FLOAT = Layout(
@@ -56,6 +57,7 @@ _FLOAT = Layout(
     root_first_bit="0x01000000u",
     last_word="0x7F7FFFFFu",
     most="FLT_MAX",
+    one="0x3F800000u",
 )
 _DOUBLE = Layout(
     word="uint64_t",
@@ -73,6 +75,7 @@ _DOUBLE = Layout(
     root_first_bit="0x0020000000000000u",
     last_word="0x7FEFFFFFFFFFFFFFu",
     most="DBL_MAX",
+    one="0x3FF0000000000000u",
 )
 
 

@@ -18,14 +18,16 @@ from codegen.emit.motion_text import MotionText
 from codegen.emit.numbers import literal
 from codegen.emit.tolerances import limit_texts, slowness, tolerance_rows
 from codegen.inverse.tasks import Derivation
-from codegen.model import Arm
-from codegen.options import Options
+from codegen.model import Arm, JointKind
+from codegen.options import Arithmetic, Options
 from codegen.places import TEMPLATES
+from codegen.program import Node
 
 _HELPERS = (
-    "abs", "sqrt", "sin_cos", "is_finite", "turn", "unit", "keep", "turns", "settle_turn", "settle_slide",
-    "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn", "turn_roots", "slide_roots",
-    "keep_free", "turn_number", "slide_number", "quartic_roots", "newton2", "turn_by",
+    "abs", "sqrt", "root", "exceeds", "angle_of", "sin_cos", "is_finite", "turn", "unit", "keep", "turns",
+    "settle_turn", "settle_slide", "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn",
+    "turn_roots", "slide_roots", "keep_free", "turn_number", "slide_number", "quartic_roots", "newton2",
+    "turn_by",
 )  # fmt: skip
 
 
@@ -43,6 +45,7 @@ class JointText:
     lower: str
     upper: str
     slowness: str
+    offset: str = ""
 
 
 @cache
@@ -104,7 +107,11 @@ def _context(
     motion = MotionText(arm, options, constants)
     jacobian = motion.jacobian() if steps is None else motion.core()
     check = pose_check(derivation, options, constants)
-    joints = [joint_text(arm, k, options) for k in range(len(arm.joints))]
+    offsets = [joint.offset for joint in derivation.goal.chain.joints]
+    joints = [
+        joint_text(arm, k, options, offset if arm.joints[k].kind is JointKind.REVOLUTE else None)
+        for k, offset in enumerate(offsets)
+    ]
     return {
         **words(options),
         "arm": {
@@ -127,7 +134,13 @@ def _context(
         "forward": forward,
         "jacobian": jacobian,
         "stages": [_stage_context(stage) for stage in stages],
-        "fields": inverse.fields(),
+        "levels": [_level_context(stage) for stage in reversed(stages[1:])],
+        "mirror": inverse.mirror(),
+        "held_mask": f"0x{sum(1 << index for index in derivation.goal.arm.held_indices):X}",
+        "known_fields": inverse.known_fields(),
+        "work_fields": inverse.work_fields(),
+        "turning": any(row.kind is JointKind.REVOLUTE for row in arm.joints),
+        "offsets": any(joint.offset for joint in joints),
         "reach": reach,
         "reach_rotation": any(re.search(r"\br\[", line) for line in reach),
         "reach_point": any(re.search(r"\bp\[", line) for line in reach),
@@ -166,27 +179,40 @@ def words(options: Options) -> dict[str, object]:
 
 
 def _stage_context(stage: StageText) -> dict[str, object]:
-    bits = {1: 0, 2: 1, 4: 2}[stage.roots]
     return {
         "name": stage.name,
         "number": stage.number,
         "roots": stage.roots,
         "shift": stage.shift,
-        "bit": 1 << stage.shift,
-        "mask": f"0x{((1 << bits) - 1) << stage.shift:X}",
+        "mask": f"0x{sum(1 << joint for joint in stage.turning):X}",
         "notes": stage.notes,
         "lines": stage.lines,
         "reads_rotation": any(re.search(r"\br\[", line) for line in stage.lines),
         "reads_point": any(re.search(r"\bp\[", line) for line in stage.lines),
+        "uses_work": any(re.search(r"\bwork\b|\b[pr]\[", line) for line in stage.lines),
+        "uses_known": any(re.search(r"\bknown\b", line) for line in stage.lines),
+        "can_fail": stage.number > 0 or any("return false;" in line for line in stage.lines),
     }
 
 
-def joint_text(arm: Arm, index: int, options: Options) -> JointText:
+def _level_context(stage: StageText) -> dict[str, object]:
+    others = "each with all that follows" if stage.shift else "each to its end"
+    what = f"The roots of stage {stage.number} that are wanted, {others}; `branch` holds the digits chosen before."
+    return {**_stage_context(stage), "digit": f"0x{stage.roots - 1:X}", "comment": what}
+
+
+def joint_text(arm: Arm, index: int, options: Options, offset: Node | None = None) -> JointText:
     row = arm.joints[index]
     motion = "turns, rad" if row.kind.value == "revolute" else "slides, m"
     lower, upper = limit_texts(arm, index, options)
     held = ", held by the inverse" if row.name in arm.held else ""
-    return JointText(f"{row.name}: {motion}{held}", lower, upper, literal(slowness(arm, index), options.real))
+    return JointText(
+        f"{row.name}: {motion}{held}",
+        lower,
+        upper,
+        literal(slowness(arm, index), options.real),
+        "" if offset is None or offset.is_exactly(0) else literal(offset.value, options.real),
+    )
 
 
 def _branch_text(stages: list[StageText], branches: int) -> list[str]:
@@ -211,7 +237,8 @@ def command_line(source: Source, options: Options) -> str:
     name = re.sub(r"[^\w.+-]", "_", source.name, flags=re.ASCII)
     mathematics = options.mathematics.value
     text = f"linkwright generate {name} --real {options.real.c_name} --math {mathematics} --prefix {options.prefix}"
-    return text if options.angle_error == 2 else f"{text} --angle-error {options.angle_error}"
+    text += "" if options.angle_error == 2 else f" --angle-error {options.angle_error}"
+    return text if options.angles is Arithmetic.REAL else f"{text} --angles {options.angles.value}"
 
 
 def check_of(derivation: Derivation, options: Options) -> PoseCheck:

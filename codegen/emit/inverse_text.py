@@ -9,10 +9,11 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from codegen.emit.expression import Constants, Scope
+from codegen.emit.mirror import Flip, mirror_of
 from codegen.emit.numbers import literal
-from codegen.emit.statements import Statements, step_roots
+from codegen.emit.statements import Kept, Statements, step_roots
 from codegen.geometry import Pair
-from codegen.inverse.plan import BalanceStep, DirectionStep, Least, QuarticStep, SlideQuarticStep, Step
+from codegen.inverse.plan import BalanceStep, DirectionStep, Least, QuarticStep, RefineStep, SlideQuarticStep, Step
 from codegen.inverse.tasks import Derivation
 from codegen.names import joint_identifiers
 from codegen.options import Options
@@ -27,6 +28,7 @@ class StageText:
     number   from 0; stage 0 prepares what no choice changes
     roots    1 for stage 0, else 2 or 4
     shift    how far the stage's digits stand from the right end of the branch number
+    turning  the turning joints that it solves
     """
 
     name: str
@@ -36,6 +38,7 @@ class StageText:
     notes: tuple[str, ...]
     meanings: tuple[str, ...]
     lines: tuple[str, ...]
+    turning: tuple[int, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,7 +55,6 @@ class InverseText:
     options: Options
     constants: Constants
     carried: dict[Node, str] = field(default_factory=dict)
-    extra_fields: list[WorkField] = field(default_factory=list)
 
     def __post_init__(self) -> None:
         self.goal = self.derivation.goal
@@ -60,7 +62,14 @@ class InverseText:
         self.stages = self._split()
         self.leaves = self._leaves()
         self.unread = self._unread_pairs()
+        self.held = {node: name for index in self.goal.arm.held_indices for node, name in self._held_leaves(index)}
+        self.known: set[str] = set()
         self._find_carried()
+        reached = set(reachable([node for _, node in self.reach_misses()]))
+        leaves = {**{leaf: name for leaf, (name, _) in self.leaves.items()}, **self.held}
+        self.kept = Kept(
+            frozenset(self.known), frozenset(_stem(name) for leaf, name in leaves.items() if leaf in reached)
+        )
 
     # -- the split into stages ---------------------------------------------------------------------------------------
     def _split(self) -> list[list[Step]]:
@@ -106,7 +115,12 @@ class InverseText:
                 self._carry_from(root, number, taken)
 
     def _carry_from(self, node: Node, number: int, taken: set[str]) -> None:
-        if node.op is Op.CONSTANT or node.op is Op.INPUT:
+        if node.op is Op.CONSTANT:
+            return
+        if node.op is Op.INPUT:
+            name, made = self.leaves.get(node, (self.held.get(node, ""), 0))
+            if name and made < number:
+                self.known.add(_stem(name))
             return
         if node.stage < number and not node.is_negation:
             if node not in self.carried:
@@ -141,31 +155,30 @@ class InverseText:
     def scope(self, number: int, roots: list[Node], carried: bool = True) -> Scope:
         """A function's scope: what earlier stages carry is read from the work structure."""
         scope = Scope(self.builder, self.constants, self.options)
-        scope.taken |= {"work", "second", "choice", *joint_identifiers(self.goal.arm)}
+        scope.taken |= {"work", "known", "second", "choice", *joint_identifiers(self.goal.arm)}
         for leaf, (name, made) in self.leaves.items():
-            scope.names[leaf] = name if made == number else f"work->{name}"
+            scope.names[leaf] = name if made == number else f"known->{name}"
         for i in range(3):
             scope.names[self.goal.position[i]] = f"p[{i}]"
             for j in range(3):
                 scope.names[self.goal.rotation[i][j]] = f"r[{i}][{j}]"
-        for index in self.goal.arm.held_indices:
-            self._name_held(scope, index, number)
+        for leaf, name in self.held.items():
+            scope.names[leaf] = name if number == 0 else f"known->{name}"
         for node, name in self.carried.items() if carried else ():
             if node.stage < number:
-                scope.names[node] = f"work->{name}"
+                scope.names[node] = f"known->{name}"
             else:
                 self.builder.names.setdefault(node, name)
         scope.plan_uses(roots)
         return scope
 
-    def _name_held(self, scope: Scope, index: int, number: int) -> None:
+    def _held_leaves(self, index: int) -> list[tuple[Node, str]]:
+        """What a joint that is held makes known, and how stage 0 reads it."""
         label = self.goal.solver.labels[index]
-        before = "" if number == 0 else "work->"
         if index in self.goal.held_pairs:
             pair = self.goal.held_pairs[index]
-            scope.names[pair.cosine], scope.names[pair.sine] = f"{before}{label}.c", f"{before}{label}.s"
-        else:
-            scope.names[self.goal.held_slides[index]] = f"{before}{label}_slide"
+            return [(pair.cosine, f"{label}.c"), (pair.sine, f"{label}.s")]
+        return [(self.goal.held_slides[index], f"{label}_slide")]
 
     def _stage(self, number: int, steps: list[Step], shift: int) -> StageText:
         outgoing = [node for node in self.carried if node.stage == number]
@@ -174,7 +187,8 @@ class InverseText:
         if prepared is not None:
             roots += _prepared_roots(prepared)
         scope = self.scope(number, roots + outgoing)
-        printer = Statements(scope, self.goal, self.options, self.unread, self.derivation.plan.retraced)
+        retraced = self.derivation.plan.retraced
+        printer = Statements(scope, self.goal, self.options, self.unread, self.kept, retraced)
         if number == 0:
             printer.held_joints()
         for step in steps:
@@ -182,40 +196,71 @@ class InverseText:
         if prepared is not None:
             printer.prepare(prepared)
         for node in outgoing:
-            scope.put(f"work->{self.carried[node]} = {scope.value(node)};")
+            scope.put(f"known->{self.carried[node]} = {scope.value(node)};")
         name = "start" if number == 0 else steps[0].angle  # type: ignore[union-attr]
         meanings = tuple(getattr(steps[0], "meaning", "").split("|")) if number else ()
         notes = tuple(step.note for step in steps)
-        return StageText(name, number, steps[0].roots if number else 1, shift, notes, meanings, tuple(scope.lines))
+        roots_here = steps[0].roots if number else 1
+        return StageText(name, number, roots_here, shift, notes, meanings, tuple(scope.lines), self._turning(steps))
+
+    def _turning(self, steps: list[Step]) -> tuple[int, ...]:
+        """The turning joints whose angles the steps settle."""
+        joints: set[int | None] = {step.joint for step in steps if isinstance(step, DirectionStep | BalanceStep)}
+        for step in steps:
+            if isinstance(step, RefineStep):
+                joints |= {variable.joint for variable in step.variables if isinstance(variable.after, Pair)}
+        return tuple(sorted(joint for joint in joints if joint is not None and joint < len(self.goal.chain.joints)))
+
+    def mirror(self) -> tuple[Flip, ...]:
+        """What makes the second solution of the last stage from its first; nothing where that does not do."""
+        return mirror_of(self.stages[-1]) or ()
 
     # -- what is carried ---------------------------------------------------------------------------------------------
-    def fields(self) -> list[WorkField]:
+    def known_fields(self) -> list[WorkField]:
+        """The members of the structure of what later stages read."""
+        p = self.options.prefix
+        rows = [WorkField(self._declared(stem), note) for stem, note in self._stems() if stem in self.kept.known]
+        rows += [
+            WorkField(f"{p}_real {name};", self.builder.notes.get(node, "")) for node, name in self.carried.items()
+        ]
+        return rows
+
+    def work_fields(self) -> list[WorkField]:
         """The members of the work structure that this plan needs."""
         p = self.options.prefix
-        rows = []
-        for index in self.goal.arm.held_indices:
-            label = self.goal.solver.labels[index]
-            kind = f"{p}_pair {label}" if index in self.goal.held_pairs else f"{p}_real {label}_slide"
-            rows.append(WorkField(f"{kind};", "held: from the seed"))
-        seen = set()
-        for name, _ in self.leaves.values():
-            stem = name.removesuffix(".c").removesuffix(".s")
-            if stem not in seen and self._is_kept(name):
-                seen.add(stem)
-                rows.append(WorkField(f"{p}_pair {stem};" if "." in name else f"{p}_real {stem};", ""))
+        owned = {_stem(name) for joint in self._joint_pairs().values() for name in joint[:1]}
+        rows = [
+            WorkField(self._declared(stem), note)
+            for stem, note in self._stems()
+            if stem in self.kept.reached and stem not in owned
+        ]
         for steps in self.stages:
             if steps and isinstance(steps[0], QuarticStep):
                 rows.append(WorkField(f"{p}_turns_found {steps[0].angle}_roots;", "all of them"))
             elif steps and isinstance(steps[0], SlideQuarticStep):
                 rows.append(WorkField(f"{p}_slides_found {steps[0].angle}_roots;", "all of them"))
-        for node, name in self.carried.items():
-            rows.append(WorkField(f"{p}_real {name};", self.builder.notes.get(node, "")))
         return rows
 
-    def _is_kept(self, name: str) -> bool:
-        """Roots, rough values and values being polished stay inside their stage."""
-        stem = name.removesuffix(".c").removesuffix(".s").removesuffix("_slide")
-        return not stem.endswith(("_root", "_now", "_rough", "_side"))
+    def _stems(self) -> list[tuple[str, str]]:
+        """Every value that a step makes known or the seed holds, without the parts of pairs; and a note."""
+        names = [(name, "held: from the seed") for name in self.held.values()]
+        names += [(name, "") for name, _ in self.leaves.values()]
+        return list({_stem(name): note for name, note in reversed(names)}.items())[::-1]
+
+    def _declared(self, stem: str) -> str:
+        p = self.options.prefix
+        return f"{p}_real {stem};" if stem.endswith("_slide") else f"{p}_pair {stem};"
+
+    def _joint_pairs(self) -> dict[int, tuple[str, Pair]]:
+        """Per turning joint of the arm the pair that its angle is found from, and what it is called."""
+        found: dict[int, Pair] = dict(self.goal.held_pairs)
+        for step in self.derivation.plan.steps:
+            if isinstance(step, DirectionStep | BalanceStep) and step.joint is not None:
+                found[step.joint] = step.pair
+            elif isinstance(step, RefineStep):
+                found.update({v.joint: v.after for v in step.variables if isinstance(v.after, Pair)})
+        names = {**{leaf: name for leaf, (name, _) in self.leaves.items()}, **self.held}
+        return {k: (names[pair.cosine], pair) for k, pair in sorted(found.items()) if k < len(self.goal.chain.joints)}
 
     # -- the check of a solution that was clamped --------------------------------------------------------------------
     def reach_misses(self) -> list[tuple[str, Node]]:
@@ -225,14 +270,13 @@ class InverseText:
     def reach_lines(self) -> list[str]:
         misses = self.reach_misses()
         scope = self.scope(len(self.stages), [node for _, node in misses], carried=False)
+        read = set(reachable([node for _, node in misses]))
+        for leaf, name in {**{leaf: name for leaf, (name, _) in self.leaves.items()}, **self.held}.items():
+            scope.names[leaf] = f"work->{name}"
+        for joint, (name, pair) in self._joint_pairs().items():
+            if {pair.cosine, pair.sine} & read:
+                self._declare_reached(scope, joint, _stem(name), pair)
         tests = []
-        for pair in sorted(self.unread, key=lambda pair: pair.cosine.name):
-            name = pair.cosine.name.removesuffix(".c")
-            if {pair.cosine, pair.sine} & set(reachable([node for _, node in misses])):
-                scope.put(f"{self.options.prefix}_pair {name};")
-                zero = literal(0, self.options.real)
-                scope.put(f"(void){self.options.prefix}_unit(work->{name}.c, work->{name}.s, {zero}, &{name});")
-                scope.names[pair.cosine], scope.names[pair.sine] = f"{name}.c", f"{name}.s"
         for measure, limit in (("length", "LEAST_MISS"), ("angle", "LEAST_TURN")):
             own = [node for kind, node in misses if kind == measure]
             for k, node in enumerate(own):
@@ -244,6 +288,21 @@ class InverseText:
                 tests.append(f"{measure}_good")
         scope.put(f"return {' && '.join(tests)};")
         return scope.lines
+
+    def _declare_reached(self, scope: Scope, joint: int, name: str, pair: Pair) -> None:
+        p = self.options.prefix
+        if pair in self.unread:
+            scope.put(f"{p}_pair {name};")
+            ends = f"work->turn[{joint}].c, work->turn[{joint}].s, {literal(0, self.options.real)}"
+            scope.put(f"(void){p}_unit({ends}, &{name});")
+        else:
+            scope.put(f"const {p}_pair {name} = work->turn[{joint}];")
+        scope.names[pair.cosine], scope.names[pair.sine] = f"{name}.c", f"{name}.s"
+
+
+def _stem(name: str) -> str:
+    """Of the part of a pair the pair; of anything else itself."""
+    return name.removesuffix(".c").removesuffix(".s")
 
 
 def made_known(step: Step) -> list[Pair | Node]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from fractions import Fraction
 
 from codegen.emit.expression import Scope
@@ -62,6 +62,14 @@ def step_roots(step: Step) -> list[Node]:
             return []
 
 
+@dataclass(frozen=True, slots=True)
+class Kept:
+    """Names of values that outlive their stage: read by a later stage, and read by the check of the pose reached."""
+
+    known: frozenset[str] = frozenset()
+    reached: frozenset[str] = frozenset()
+
+
 @dataclass
 class Statements:
     """Prints steps into a scope."""
@@ -70,6 +78,7 @@ class Statements:
     goal: Goal
     options: Options
     unread: frozenset[Pair] = frozenset()
+    kept: Kept = field(default_factory=Kept)
     retraced: bool = False  # solutions that miss are brought nearer: what they are found from may be rough
 
     def __post_init__(self) -> None:
@@ -105,14 +114,14 @@ class Statements:
             variable = self._with_offset(f"work->seed[{index}]", joint.offset)
             if joint.turns:
                 self.put(f"const {self.p}_pair {label} = {self.p}_turn({variable});  /* held: from the seed */")
-                self.put(f"work->{label} = {label};")
+                self.put(f"work->turn[{index}] = {label};")
+                self._keep_known(label)
             else:
                 self.put(f"const {self.p}_real {label}_slide = {variable};  /* held: from the seed */")
                 self.put(f"if (!{self.p}_within({label}_slide, FAR)) {{")
-                self.put("    work->marks = MARK_OUT_OF_REACH;")
-                self.put("    return;")
+                self.put("    return false;")
                 self.put("}")
-                self.put(f"work->{label}_slide = {label}_slide;")
+                self._store(f"{label}_slide")
             self.put(f"{self.p}_keep(work, {index}u);")
 
     def _with_offset(self, text: str, offset: Node, sign: str = "+") -> str:
@@ -142,15 +151,13 @@ class Statements:
         least = LEASTS.get(step.least)
         if least is None and step.pair in self.unread:
             self.put(f"const {self.p}_pair {name} = {{{x}, {y}}};  /* not of length 1: only its angle is read */")
-            self._settle_turn(step.joint, name)
-            self._store(name)
+            self._store(name, step.joint)
             return
         self.put(f"{self.p}_pair {name};")
         if step.turned is not None:
             self._direction_or_seed(step, name, (x, y))
         elif least is None:
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
-            self._settle_turn(step.joint, name)
         elif step.joint is None:
             self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{  /* the pose leaves it free: by the seed */")
             self.put(f"    {name} = {self._seed_pair(step.seed)};")
@@ -159,12 +166,13 @@ class Statements:
                 self._absorb(step.absorbed)
             self.put("}")
         else:
-            self.put(f"if ({self.p}_unit({x}, {y}, {least}, &{name})) {{")
-            self._settle_turn(step.joint, name, deeper=True)
-            self._keep_else(step.joint, step.seed, name, step.absorbed)
-        self._store(name)
+            self.put(
+                f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{  /* the pose leaves it free: it keeps its seed */"
+            )
+            self._keep_seed(step.joint, step.seed, name, step.absorbed)
+        self._store(name, step.joint)
         if step.absorbed is not None:
-            self._store(self._name(step.absorbed.pair))
+            self._store(self._name(step.absorbed.pair), step.absorbed.joint)
 
     def _direction_or_seed(self, step: DirectionStep, name: str, target: tuple[str, str]) -> None:
         """What an approximate root may make up out of rounding is not read."""
@@ -177,13 +185,7 @@ class Statements:
         self.put("    work->marks |= MARK_EDGE | MARK_NEARLY_FREE;")
         self.put("}")
 
-    def _settle_turn(self, joint: int | None, name: str, deeper: bool = False) -> None:
-        if joint is not None:
-            angle = self._with_offset(f"{self.p}_atan2({name}.s, {name}.c)", self.goal.chain.joints[joint].offset, "-")
-            self.put(("    " if deeper else "") + f"{self.p}_settle_turn(work, {joint}u, {angle});")
-
-    def _keep_else(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
-        self.put("} else {  /* the pose leaves it free: it keeps its seed */")
+    def _keep_seed(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
         self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
         if joint is not None:
             self.put(f"    {self.p}_keep_free(work, {joint}u);")
@@ -199,14 +201,19 @@ class Statements:
         other = self._name(absorbed.pair)
         x, y = self.scope.value(absorbed.x), self.scope.value(absorbed.y)
         self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{other});  /* takes up the rest */")
-        self._settle_turn(absorbed.joint, other)
         self.scope.names, self.scope.indent = outer
 
-    def _store(self, name: str) -> None:
-        """Rough values are polished in the same stage; nothing later reads them."""
-        if name.removesuffix("_slide").endswith("_rough"):
-            return
-        self.put(f"work->{name} = {name};")
+    def _store(self, name: str, joint: int | None = None) -> None:
+        """Keep a pair for its joint's angle, and any value that a later stage or the check of the pose reads."""
+        if joint is not None:
+            self.put(f"work->turn[{joint}] = {name};")
+        elif name in self.kept.reached:
+            self.put(f"work->{name} = {name};")
+        self._keep_known(name)
+
+    def _keep_known(self, name: str) -> None:
+        if name in self.kept.known:
+            self.put(f"known->{name} = {name};")
 
     def _balance(self, step: BalanceStep) -> None:
         name = self._name(step.pair)
@@ -221,10 +228,9 @@ class Statements:
             self.put(f"{name}.c = {self.scope.text(step.x)};")
             self.put(f"{name}.s = {self.scope.text(step.y)};")
             self.put(f"{self.p}_tidy(&{name});")
-            self._settle_turn(step.joint, name)
         else:
             self._balance_or_free(step, name, (target, square, flat))
-        self._store(name)
+        self._store(name, step.joint)
 
     def _flat(self, step: BalanceStep | SlideRootsStep) -> str:
         if step.flat is None or step.flat.is_exactly(0):
@@ -245,7 +251,7 @@ class Statements:
         assert step.size is not None
         target, square, flat = values
         size, least, least_square = self.scope.value(step.size), LEASTS[step.least], SQUARED[step.least]
-        self.put(f"if ({size} > {least_square}) {{")
+        self.put(f"if ({self.p}_exceeds({size}, {least_square})) {{")
         self.scope.indent += "    "
         slack = f"{self.slack} * {size}"
         if not step.target.is_exactly(0):
@@ -255,17 +261,16 @@ class Statements:
         self.put(f"{name}.c = ({self.scope.text(step.x)}) * scale;")
         self.put(f"{name}.s = ({self.scope.text(step.y)}) * scale;")
         self.put(f"{self.p}_tidy(&{name});")
-        self._settle_turn(step.joint, name)
         self.scope.indent = self.scope.indent[4:]
         if not step.target.is_exactly(0):
             self.put(f"}} else if ({self.p}_abs({target}) > {least}) {{")
-            self.put("    work->marks |= MARK_OUT_OF_REACH;")
-            self.put("    return;")
-        self._keep_else(step.joint, step.seed, name)
+            self.put("    return false;  /* out of reach */")
+        self.put("} else {  /* the pose leaves it free: it keeps its seed */")
+        self._keep_seed(step.joint, step.seed, name)
 
     def _root(self, name: str, square: str, slack: str, flat: str) -> None:
         self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {flat}, second, &{name}_root)) {{")
-        self.put("    return;  /* out of reach */")
+        self.put("    return false;  /* out of reach */")
         self.put("}")
 
     def _slide(self, step: SlideStep) -> None:
@@ -308,7 +313,7 @@ class Statements:
         self.put(f"{self.p}_real {root};")
         slack = f"{self.slack} * REACH * REACH"
         self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {self._flat(step)}, second, &{root})) {{")
-        self.put("    return;  /* out of reach */")
+        self.put("    return false;  /* out of reach */")
         self.put("}")
         value = root if step.middle.is_exactly(0) else f"{middle} + {root}"
         self.put(f"const {self.p}_real {name} = {value};")
@@ -332,8 +337,7 @@ class Statements:
         if isinstance(step, QuarticStep) and step.det is not None:
             root = self._root_of_side(step)
         self.put(f"if (!work->{step.angle}_roots.there[{root}]) {{")
-        self.put("    work->marks |= MARK_OUT_OF_REACH;")
-        self.put("    return;")
+        self.put("    return false;  /* there is no such root */")
         self.put("}")
         self.put("work->marks |= MARK_EDGE;  /* its roots are approximate: the pose reached is checked */")
         if isinstance(step, QuarticStep):
@@ -385,8 +389,7 @@ class Statements:
             distance = f"{self.p}_abs({variable.during.name} - {variable.before.name})"
             far = f"{distance} > {literal(Fraction(1, 8), self.options.real)} * REACH"
         self.put(f"if ({far}) {{  /* it ran to another root: there is none here */")
-        self.put("    work->marks |= MARK_OUT_OF_REACH;")
-        self.put("    return;")
+        self.put("    return false;")
         self.put("}")
 
     def _start_variable(self, variable: Variable) -> None:
@@ -408,13 +411,13 @@ class Statements:
             assert isinstance(variable.during, Pair)
             name = self._name(variable.after)
             self.put(f"const {self.p}_pair {name} = {self._name(variable.during)};")
-            self._settle_turn(variable.joint if variable.joint < len(self.goal.chain.joints) else None, name)
+            self._store(name, variable.joint if variable.joint < len(self.goal.chain.joints) else None)
         else:
             assert isinstance(variable.during, Node)
             name = variable.after.name
             self.put(f"const {self.p}_real {name} = {variable.during.name};")
             self._settle_slide(variable.joint, name)
-        self._store(name)
+            self._store(name)
 
 
 def _leaves_of(node: Node) -> set[Node]:
@@ -425,5 +428,3 @@ def _leaves_of(node: Node) -> set[Node]:
 
 def _comment_lines(text: str) -> list[str]:
     return [f"/* {text} */"]
-
-

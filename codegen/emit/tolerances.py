@@ -60,6 +60,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
         row("HALF_TURN", MP.pi, "pi"),
         row("TURNS_PER_RADIAN", 1 / (2 * MP.pi), "1 / (2 pi)"),
+        row("SHIFT", 3 * Fraction(2) ** (options.real.bits - 2), "adding it rounds to a whole number"),
         row("FULL_TURN", high, "2 pi in two parts: this one is exact when multiplied"),
         row("FULL_TURN_REST", low, "and what is left of it"),
     ]
