@@ -17,6 +17,7 @@ from codegen.emit.inverse_text import InverseText, StageText
 from codegen.emit.motion_text import MotionText
 from codegen.emit.numbers import literal
 from codegen.emit.tolerances import limit_texts, slowness, tolerance_rows
+from codegen.inverse.plan import BY_SIDE
 from codegen.inverse.tasks import Derivation
 from codegen.model import Arm, JointKind
 from codegen.options import Arithmetic, Options
@@ -225,12 +226,23 @@ def _branch_text(stages: list[StageText], branches: int) -> list[str]:
             zero, one = stage.meanings
             lines.append(f"  bit {stage.shift}   0: {zero}   1: {one}")
         else:
-            lines.append(
-                f"  bits {stage.shift + 1} and {stage.shift}   {stage.name}, one of up to four roots: bit {stage.shift} by "
-                "whether its equation rises or falls"
-            )
-            lines.append(f"             through the root (0 rises), bit {stage.shift + 1} by the order of such roots")
+            lines += _quartic_text(stage)
     return lines
+
+
+def _quartic_text(stage: StageText) -> list[str]:
+    low, high = stage.shift, stage.shift + 1
+    head = f"  bits {high} and {low}   {stage.name}, one of up to four roots: bit {low} by "
+    if stage.meanings == (BY_SIDE,):
+        return [
+            head + "the sign of a Jacobian",
+            f"             determinant, which changes where the arm folds, bit {high} by the order of such roots,",
+            "             counted from an angle of -143 degrees: passing there renumbers them",
+        ]
+    return [
+        head + "whether its equation rises or falls",
+        f"             through the root (0 rises), bit {high} by the order of such roots",
+    ]
 
 
 def command_line(source: Source, options: Options) -> str:

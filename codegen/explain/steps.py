@@ -189,8 +189,7 @@ class StepText:
             "```",
             "",
             "Its roots are found between the places where its slope changes sign, in a bounded number of steps.",
-            f"Bit {digits[0]} is 0 where the left side rises through zero as {step.angle} grows, 1 where it falls; "
-            f"bit {digits[1]} counts such roots in rising order.",
+            _numbering(step, digits),
             "",
             *block(self.sheet.take()),
             "Where two roots become one, two branches meet: at the edge of the reach or in a fold.",
@@ -242,3 +241,17 @@ def _stem(pair: Pair) -> str:
 
 def _known_name(value: Pair | Node) -> str:
     return _stem(value) if isinstance(value, Pair) else value.name
+
+
+def _numbering(step: QuarticStep | SlideQuarticStep, digits: Digits) -> str:
+    """Which of the roots a branch's two bits name."""
+    if isinstance(step, QuarticStep) and step.side is not None:
+        return (
+            f"Bit {digits[0]} is the side of the Jacobian that a root lies on: the sign of the determinant of the slopes of the "
+            f"two equations that {step.angle} came from, 0 where it is positive. It changes where the arm folds, and "
+            f"nowhere else. Bit {digits[1]} counts the roots of one side in rising order, from an angle of -143.13 degrees."
+        )
+    return (
+        f"Bit {digits[0]} is 0 where the left side rises through zero as {step.angle} grows, 1 where it falls; "
+        f"bit {digits[1]} counts such roots in rising order."
+    )

@@ -122,6 +122,10 @@ class SlideRootsStep:
     roots: int = 2
 
 
+BY_SLOPE = "crossing direction of the root, then its order"
+BY_SIDE = "side of the Jacobian that the root lies on, then its order"
+
+
 @dataclass(frozen=True, slots=True)
 class QuarticStep:
     """Up to four roots of a trigonometric polynomial f0 + f1 c + f2 s + f3 c^2 + f4 c s, numbered as the header says.
@@ -145,7 +149,7 @@ class QuarticStep:
     bit: Node
     det: Node | None = None
     side: Node | None = None
-    meaning: str = "crossing direction of the root, then its order"
+    meaning: str = BY_SLOPE
     roots: int = 4
 
 
@@ -159,7 +163,7 @@ class SlideQuarticStep:
     coefficients: tuple[Node, Node, Node, Node, Node]
     known: Node
     note: str
-    meaning: str = "crossing direction of the root, then its order"
+    meaning: str = BY_SLOPE
     roots: int = 4
 
 

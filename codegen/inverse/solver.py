@@ -12,6 +12,7 @@ from dataclasses import dataclass, field, replace
 from codegen.geometry import Pair, Rigid, Space, Vector
 from codegen.inverse.oracle import Oracle
 from codegen.inverse.plan import (
+    BY_SIDE,
     Absorption,
     BalanceStep,
     DirectionStep,
@@ -284,7 +285,7 @@ class Solver:
         """Number the roots of the quartic just found by the sign of a Jacobian determinant (QuarticStep); returns that sign."""
         step = self.steps[-1]
         assert isinstance(step, QuarticStep)
-        self.steps[-1] = replace(step, det=det, side=side, meaning="side of the Jacobian that the root lies on, then its order")
+        self.steps[-1] = replace(step, det=det, side=side, meaning=BY_SIDE)
         return step.bit
 
     def refine(self, step: RefineStep) -> None:
