@@ -247,8 +247,8 @@ def _numbering(step: QuarticStep | SlideQuarticStep, digits: Digits) -> str:
     """Which of the roots a branch's two bits name."""
     if isinstance(step, QuarticStep) and step.side is not None:
         return (
-            f"Bit {digits[0]} is the side of the Jacobian that a root lies on: the sign of the determinant of the slopes of the "
-            f"two equations that {step.angle} came from, 0 where it is positive. It changes where the arm folds, and "
+            f"Bit {digits[0]} is the side of the Jacobian that a root lies on: the sign of the determinant of the slopes of "
+            f"the two equations that {step.angle} came from, 0 where it is positive. It changes where the arm folds, and "
             f"nowhere else. Bit {digits[1]} counts the roots of one side in rising order, from an angle of -143.13 degrees."
         )
     return (
