@@ -14,7 +14,7 @@ from codegen.exact import MP, Angle
 from codegen.model import Arm, JointKind, Task
 from codegen.options import Options
 
-FREE_TURN, SLACK, STEP, EXCESS, FLAT = 40, 4096, 8, 16, 8
+FREE_TURN, SLACK, STEP, EXCESS, FLAT = 40, 4096, 4, 16, 8
 FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
 # by significand bits: of the reach, and an angle, rad: twice the angle promised, as at any edge
 MISS = {24: (16, 67), 53: (86, 360)}
@@ -56,7 +56,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("NEARLY_ALONG", 1024 * u, "squared sine of the angle between two lines that hardly cross"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
         row("LEAST_TURN", turn * spread * MP.mpf(u.numerator) / u.denominator, "and what it reads of the rotation, summed up"),
-        row("LEAST_STEP", STEP * u, "rad or m, a joint may pass its limit by this"),
+        row("LEAST_STEP", STEP * u, "of a limit and of 1 rad or m: by this a joint may pass it"),
         row("LEAST_EXCESS", EXCESS * u, "a rotation's columns are this near to unit length and right angles"),
         row("HALF_TURN", MP.pi, "pi"),
         row("TURNS_PER_RADIAN", 1 / (2 * MP.pi), "1 / (2 pi)"),
