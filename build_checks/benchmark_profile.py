@@ -14,6 +14,7 @@ from pathlib import Path
 import numpy as np
 
 from build_checks.benchmark_peers import PEER_PREFIX, PEERS, peer_files
+from build_checks.benchmark_targets import options_for
 from build_checks.cost_calls import cost_calls
 from build_checks.emulate import make_calls
 from build_checks.emulate_contract import FUNCTIONS, TargetInterface, read_interface
@@ -57,7 +58,7 @@ def main(arguments: Sequence[str] | None = None) -> None:
     chosen = parser.parse_args(arguments)
     arm, target = read_arm(_ARMS / f"{chosen.arm}.toml").arm, target_named(chosen.target)
     joints = Reference(arm).random_joints(np.random.default_rng(_SEED), chosen.poses).tolist()
-    ours = generate(arm, Options())
+    ours = generate(arm, options_for(target.name))
     _show("generated", profile(ours, Options().prefix, target, chosen.function, joints, libm=False))
     for peer in PEERS:
         if peer.arm == chosen.arm and f"peer_{chosen.function}(" in peer_files(peer)["peer_kin.h"]:

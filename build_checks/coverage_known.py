@@ -20,14 +20,15 @@ _LINKS_DIFFER = frozenset({"bench_six", "vial_picker", "tray_scara", "press_tend
 
 KNOWN = (
     Known(
-        "_solve",
-        r"if \(\(changed & 0x1u\) != 0u\)",
-        "the lowest digit of a branch number always changes; the test stands as for the other digits",
+        r"_stage_\d",
+        r"signed_root\(work, known->\w+_square, SLACK, 0\.0f?, second|^return false;  /\* out of reach \*/$",
+        "one less the square of an entry of a true rotation is not negative but for rounding",
     ),
     Known(
-        r"_stage_\d",
-        r"signed_root\(work, work->\w+_square, SLACK, 0\.0f?, second|^return;  /\* out of reach \*/$",
-        "one less the square of an entry of a true rotation is not negative but for rounding",
+        r"_branches_\d",
+        r"if \(\w+_stage_\d\(|^continue;$",
+        "the wrist of bench_six, and the waist of vial_picker, has its roots for every pose that gets that far",
+        frozenset({"bench_six", "vial_picker"}),
     ),
     Known(
         r"_stage_\d",

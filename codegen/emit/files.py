@@ -137,6 +137,7 @@ def _context(
         "stages": [_stage_context(stage) for stage in stages],
         "levels": [_level_context(stage) for stage in reversed(stages[1:])],
         "mirror": inverse.mirror(),
+        "mirror_mask": f"0x{sum(1 << flip.joint for flip in inverse.mirror()):X}",
         "held_mask": f"0x{sum(1 << index for index in derivation.goal.arm.held_indices):X}",
         "known_fields": inverse.known_fields(),
         "work_fields": inverse.work_fields(),

@@ -113,6 +113,28 @@ class InverseText:
         for number, roots in enumerate(self._all_roots()):
             for root in roots:
                 self._carry_from(root, number, taken)
+        for node in list(self.carried):
+            if self._is_quickly_made(node):
+                del self.carried[node]
+        self._carry_common_origins(taken)
+
+    def _carry_common_origins(self, taken: set[str]) -> None:
+        """Values that are all a constant times the same value, and a constant more: that one is carried instead."""
+        origins: dict[Node, list[Node]] = {}
+        for node in self.carried:
+            origin = _origin(node)
+            if origin is not None:
+                origins.setdefault(origin, []).append(node)
+        for origin, made in origins.items():
+            if len(made) > 1 and origin not in self.carried and origin.op is not Op.INPUT:
+                for node in made:
+                    del self.carried[node]
+                self._carry_from(origin, origin.stage + 1, taken)
+
+    def _is_quickly_made(self, node: Node) -> bool:
+        """One operation on values that are carried anyway: making it again costs less than keeping it."""
+        rest = {arg for arg in node.args if not arg.is_constant}
+        return len(node.args) == 2 and node.op in (Op.SUM, Op.PRODUCT) and rest <= set(self.carried)
 
     def _carry_from(self, node: Node, number: int, taken: set[str]) -> None:
         if node.op is Op.CONSTANT:
@@ -298,6 +320,16 @@ class InverseText:
         else:
             scope.put(f"const {p}_pair {name} = work->turn[{joint}];")
         scope.names[pair.cosine], scope.names[pair.sine] = f"{name}.c", f"{name}.s"
+
+
+def _origin(node: Node) -> Node | None:
+    """x of a value that is constant * x, or constant * x + constant."""
+    if node.op is Op.SUM:
+        rest = [arg for arg in node.args if not arg.is_constant]
+        return _origin(rest[0]) if len(rest) == 1 and rest[0].op is Op.PRODUCT else None
+    if node.op is Op.PRODUCT and node.args[0].is_constant != node.args[1].is_constant:
+        return node.args[1] if node.args[0].is_constant else node.args[0]
+    return None
 
 
 def _stem(name: str) -> str:

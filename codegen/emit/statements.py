@@ -49,7 +49,8 @@ def step_roots(step: Step) -> list[Node]:
             return own if step.absorbed is None else [*own, step.absorbed.x, step.absorbed.y]
         case BalanceStep():
             extra = [node for node in (step.size, step.flat) if node is not None]
-            return [*extra, step.target, step.square, step.x, step.y]
+            target = [] if step.size is None or step.target.is_exactly(0) else [step.target]
+            return [*extra, *target, step.square, step.x, step.y]
         case SlideStep():
             return [step.numerator, step.denominator]
         case SlideRootsStep():
@@ -166,9 +167,8 @@ class Statements:
                 self._absorb(step.absorbed)
             self.put("}")
         else:
-            self.put(
-                f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{  /* the pose leaves it free: it keeps its seed */"
-            )
+            self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{")
+            self.put("    /* the pose leaves it free: it keeps its seed */")
             self._keep_seed(step.joint, step.seed, name, step.absorbed)
         self._store(name, step.joint)
         if step.absorbed is not None:
@@ -219,8 +219,7 @@ class Statements:
         name = self._name(step.pair)
         self.put(f"{self.p}_pair {name};")
         self.put(f"{self.p}_real {name}_root;")
-        target, square = self.scope.value(step.target), self.scope.value(step.square)
-        flat = self._flat(step)
+        square, flat = self.scope.value(step.square), self._flat(step)
         for side in (step.x, step.y):
             self._ready_without(side, step.root)
         if step.size is None:
@@ -229,7 +228,7 @@ class Statements:
             self.put(f"{name}.s = {self.scope.text(step.y)};")
             self.put(f"{self.p}_tidy(&{name});")
         else:
-            self._balance_or_free(step, name, (target, square, flat))
+            self._balance_or_free(step, name, (square, flat))
         self._store(name, step.joint)
 
     def _flat(self, step: BalanceStep | SlideRootsStep) -> str:
@@ -247,9 +246,10 @@ class Statements:
             else:
                 self._ready_without(arg, leaf)
 
-    def _balance_or_free(self, step: BalanceStep, name: str, values: tuple[str, str, str]) -> None:
+    def _balance_or_free(self, step: BalanceStep, name: str, values: tuple[str, str]) -> None:
         assert step.size is not None
-        target, square, flat = values
+        square, flat = values
+        target = self.scope.value(step.target)
         size, least, least_square = self.scope.value(step.size), LEASTS[step.least], SQUARED[step.least]
         self.put(f"if ({self.p}_exceeds({size}, {least_square})) {{")
         self.scope.indent += "    "
