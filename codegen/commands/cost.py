@@ -55,22 +55,22 @@ def cost(
 
     bounds = parse_budget(budget) if budget is not None else ()
     names = [target_named(name).name for name in target or ()] or [row.name for row in TARGETS]
-    report = _measured(wanted(arm, real, math, prefix, angle_error, angles), names, poses)
+    report = measured(wanted(arm, real, math, prefix, angle_error, angles), names, poses)
     show_data(report.to_json() if as_json else cost_table(report))
     excesses = exceeded(report, bounds)
     for excess in excesses:
         say(str(excess))
-    if excesses or _too_little_measured(report, bool(target), bool(bounds)):
+    if excesses or _too_littlemeasured(report, bool(target), bool(bounds)):
         raise typer.Exit(1)
 
 
-def _too_little_measured(report: CostReport, named: bool, bounded: bool) -> bool:
+def _too_littlemeasured(report: CostReport, named: bool, bounded: bool) -> bool:
     """A target that was named has to be measured, and a budget needs one at least; the report says what is missing."""
     return (named and bool(report.not_measured)) or (bounded and not report.targets)
 
 
-def _measured(what: Wanted, names: list[str], poses: int) -> CostReport:
-    """One report of all targets, measured one after the other so that progress can be told."""
+def measured(what: Wanted, names: list[str], poses: int) -> CostReport:
+    """One report of all the named targets, measured one after the other so that progress can be told."""
     import numpy as np
 
     from build_checks.cost import measure_cost
