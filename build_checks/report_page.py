@@ -2,23 +2,33 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 from build_checks.cost import CostReport, FunctionCost, TargetCost
 from build_checks.report import AgreeReport, CheckResult, Run
 from build_checks.report_text import failure_lines, length_text, share_lines, verdict, worst_rows
+from codegen.model import Task
 from codegen.page.content import Agreement, Table
+
+_UNDECIDED = "Undecided: so near a singularity or an edge that rounding of the pose explains either answer."
+_WEAK = (
+    "Where only a short projection of a tool axis states the angle, rounding of the pose moves it by as much more, and as "
+    "much more is allowed."
+)
+_WEAK_TASKS = (Task.POINT_PITCH, Task.POINT_YAW)
 
 
 def agreement_of(report: AgreeReport) -> Agreement:
-    return Agreement(
-        report.agreed,
-        verdict(report),
-        (_counts(report.results), *_worst(report)),
-        (*share_lines(report), _UNDECIDED) if any(r.undecided for r in report.results) else share_lines(report),
-        failure_lines(report),
-    )
+    tables = (_counts(report.results), *_worst(report))
+    return Agreement(report.agreed, verdict(report), tables, tuple(_remarks(report)), failure_lines(report))
 
 
-_UNDECIDED = "Undecided: so near a singularity or an edge that rounding of the pose explains either answer."
+def _remarks(report: AgreeReport) -> Iterator[str]:
+    yield from share_lines(report)
+    if any(result.undecided for result in report.results):
+        yield _UNDECIDED
+    if report.run.task in {task.key for task in _WEAK_TASKS}:
+        yield _WEAK
 
 
 def _counts(results: tuple[CheckResult, ...]) -> Table:

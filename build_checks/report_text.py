@@ -89,7 +89,9 @@ def _worst_lines(report: AgreeReport) -> str:
 def _worst_row(run: Run, result: CheckResult, name: str, factor: int) -> str:
     position = result.position.error if result.position else 0.0
     angle = result.angle.error if result.angle else 0.0
-    where = f"{name:<42} {length_text(run, position):>14} {position / run.reach:>9.2g} {factor * run.position_budget:>8.1g}"
+    where = (
+        f"{name:<42} {length_text(run, position):>14} {position / run.reach:>9.2g} {factor * run.position_budget:>8.1g}"
+    )
     return f"{where} {angle:>11.2g} {factor * run.angle_budget:>8.1g}"
 
 

@@ -36,12 +36,13 @@ function turnBy([roll, pitch, yaw]) {
 const TARGET = ["x", "y", "z", "roll", "pitch", "yaw"];
 const unitOfEntry = (i) => (i < 3 ? arm.lengthUnit : arm.angleUnit);
 
-function showJoints() {
+/* All but the field of the joint whose value is being typed. */
+function showJoints(typed = -1) {
   arm.joints.forEach((joint, i) => {
-    const unit = unitOf(joint), slider = element(`slider-${i}`), box = element(`value-${i}`);
+    const unit = unitOf(joint), slider = element(`slider-${i}`);
     slider.value = state.q[i] / unit.size;
     slider.setAttribute("aria-valuetext", `${shown(state.q[i], unit)} ${unit.name}`);
-    if (document.activeElement !== box) box.value = shown(state.q[i], unit);
+    if (i !== typed) element(`value-${i}`).value = shown(state.q[i], unit);
     const past = joint.limits !== null && (state.q[i] < joint.limits[0] - 1e-9 || state.q[i] > joint.limits[1] + 1e-9);
     element(`row-${i}`).classList.toggle("over", past);
   });
@@ -61,8 +62,7 @@ function showPose() {
 
 function showTarget() {
   [...state.target.p, ...anglesOf(state.target.r)].forEach((value, i) => {
-    const box = element(`target-${TARGET[i]}`);
-    if (document.activeElement !== box) box.value = shown(value, unitOfEntry(i), 1);
+    element(`target-${TARGET[i]}`).value = shown(value, unitOfEntry(i), 1);
   });
 }
 
@@ -144,8 +144,8 @@ function reach(q) {
   kinematics.forward(state.q, state.pose);
 }
 
-function showArm() {
-  showJoints();
+function showArm(typed) {
+  showJoints(typed);
   showPose();
   draw();
 }
@@ -165,15 +165,15 @@ function solveSoon() {
 }
 
 /* The joints were moved: the target goes along. */
-function jointsMoved() {
+function jointsMoved(typed) {
   reach(state.q);
-  takeTarget();
+  takeTarget(typed);
 }
 
-function takeTarget() {
+function takeTarget(typed) {
   state.target.become(state.pose);
   showTarget();
-  showArm();
+  showArm(typed);
   solveSoon();
 }
 
@@ -207,9 +207,9 @@ arm.joints.forEach((joint, i) => {
   element(`value-${i}`).addEventListener("input", (event) => {
     if (event.target.value === "" || !Number.isFinite(event.target.valueAsNumber)) return;
     state.q[i] = event.target.valueAsNumber * unit.size;
-    jointsMoved();
+    jointsMoved(i);
   });
-  element(`value-${i}`).addEventListener("blur", showJoints);
+  element(`value-${i}`).addEventListener("blur", () => showJoints());
 });
 TARGET.forEach((name, i) => {
   const box = element(`target-${name}`);
@@ -221,7 +221,7 @@ element("rest").addEventListener("click", () => {
   jointsMoved();
 });
 element("nearest").addEventListener("click", moveToNearest);
-element("follow").addEventListener("click", takeTarget);
+element("follow").addEventListener("click", () => takeTarget());
 element("azimuth").addEventListener("input", (event) => {
   views[0] = obliqueView(Number(event.target.value));
   draw();

@@ -5,15 +5,24 @@ Not to a tolerance: both round every operation to a double (ECMA-262, 6.1.6.1; I
 
 from __future__ import annotations
 
-import re
+import subprocess
 from pathlib import Path
 
 import numpy as np
 import pytest
-from arms_random import AROUND_3_4_5, AXIS_ARMS, HELD_ARMS, PARALLEL, PITCH_ARMS, SPHERICAL, THREE_SLIDES, Structure
-from arms_random import random_arm
+from arms_random import (
+    AROUND_3_4_5,
+    AXIS_ARMS,
+    HELD_ARMS,
+    PARALLEL,
+    PITCH_ARMS,
+    SPHERICAL,
+    THREE_SLIDES,
+    Structure,
+    random_arm,
+)
 from generated import kinematics
-from javascript_bits import ANGLES, bits, by_c, by_node, inputs_of
+from javascript_bits import bits, by_c, by_node, inputs_of
 from required_tools import need_programs
 from test_tracking_steps import ARMS as WITHOUT_CLOSED_FORM
 
@@ -52,3 +61,98 @@ def test_so_does_that_of_a_random_arm(structure: Structure, tmp_path: Path) -> N
 @pytest.mark.parametrize("name", TRACKED)
 def test_so_does_that_of_an_arm_without_a_closed_form(name: str, tmp_path: Path) -> None:
     assert_same_bits(WITHOUT_CLOSED_FORM[name], tmp_path, 8)
+
+
+# -- the translation itself --------------------------------------------------------------------------------------------
+HEADER = """\
+#ifndef ARM_KIN_H
+#define ARM_KIN_H
+#define ARM_JOINTS 2
+typedef double arm_real;
+#endif
+"""
+
+
+def translated(body: str) -> str:
+    """What C functions become, without indents."""
+    text = javascript({"arm_kin.h": HEADER, "arm_kin.c": body}, "arm")
+    return "\n".join(line.strip() for line in text.splitlines())
+
+
+@pytest.mark.parametrize(
+    ("c", "js"),
+    [
+        ("return a - (b - c);", "return a - (b - c);"),
+        ("return (a - b) - c;", "return a - b - c;"),
+        ("return a * b / c;", "return a * b / c;"),
+        ("return a * (b / c);", "return a * (b / c);"),
+        ("return -(a + b) * c;", "return -(a + b) * c;"),
+        ("return (a < b) ? -a : b;", "return a < b ? -a : b;"),
+        ("return (a < b && b < c) || !(c > a) ? a : c;", "return (a < b && b < c) || !(c > a) ? a : c;"),
+    ],
+)
+def test_arithmetic_of_doubles_keeps_its_order(c: str, js: str) -> None:
+    text = translated(f"arm_real arm_f(arm_real a, arm_real b, arm_real c)\n{{\n    {c}\n}}\n")
+    assert js in text.splitlines()
+
+
+def evaluated(body: str, call: str) -> str:
+    """What node prints for a call of the functions that the C becomes."""
+    need_programs("node")
+    text = javascript({"arm_kin.h": HEADER, "arm_kin.c": body}, "arm")
+    program = text[: text.index("  return {\n")] + f"  return {call};\n}})()"
+    done = subprocess.run(["node", "-p", program], capture_output=True, text=True, check=True)
+    return done.stdout.strip()
+
+
+@pytest.mark.parametrize(("a", "w", "i"), [(0, 0, 0), (5, 2**64 - 1, -7), (2**32 - 1, 2**63 + 12345, -(2**31))])
+def test_whole_numbers_keep_the_digits_of_their_type(a: int, w: int, i: int) -> None:
+    """Modulo 2^32 and 2^64 (ISO/IEC 9899:2011, 6.2.5 p9), quotients cut towards zero (6.5.5 p6)."""
+    body = """
+        unsigned arm_f(unsigned a, uint64_t w, int i)
+        {
+            unsigned b = a * 2654435769u - 1u;
+            b |= 1u << (a & 7u);
+            w = (w << 2) + 0x9E3779B97F4A7C15u;
+            return (unsigned)(w >> 31) + b / 3u + (unsigned)(i / 3) + ~a;
+        }
+        """
+    b = (a * 2654435769 - 1) % 2**32 | 1 << (a & 7)
+    word = ((w << 2) + 0x9E3779B97F4A7C15) % 2**64
+    wanted = ((word >> 31) + b // 3 + int(i / 3) + ~a) % 2**32
+    assert evaluated(body, f"arm_f({a}, {w}n, {i})") == str(wanted)
+
+
+def test_words_of_javascript_are_no_names() -> None:
+    text = translated("arm_real arm_f(arm_real new)\n{\n    const arm_real let = new;\n    return let;\n}\n")
+    assert "const let_ = new_;" in text
+
+
+def test_what_the_translation_does_not_know_is_refused() -> None:
+    for body in (
+        "arm_real arm_f(arm_real a)\n{\n    while (a > 0.0) { a -= 1.0; }\n    return a;\n}\n",
+        "arm_real arm_f(arm_real a)\n{\n    return unknown(a);\n}\n",
+        "arm_real arm_f(arm_real a)\n{\n    arm_real *const p = &a;\n    return *p;\n}\n",
+    ):
+        with pytest.raises(NotTranslatable):
+            translated(body)
+
+
+def test_the_preprocessor_takes_the_portable_way() -> None:
+    source = """\
+#if defined(__GNUC__) && ((__ARM_FP & 8) != 0)
+int a;
+#elif DBL_MANT_DIG == 53
+int b;
+#if defined(NONE) || !defined(ARM_JOINTS)
+int c;
+#endif
+#else
+int d;
+#endif
+int e[ARM_JOINTS];  /* ARM_JOINTS */
+"""
+    lines = [line.strip() for line in preprocessed(HEADER, source).splitlines()]
+    assert lines == ["typedef double arm_real;", "int b;", "int e[2];"]
+    with pytest.raises(ValueError, match="no such target"):
+        preprocessed(HEADER, "#if DBL_MANT_DIG != 53\n#error none\n#else\n#error no such target\n#endif\n")

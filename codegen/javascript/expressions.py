@@ -32,10 +32,16 @@ _COMPARISONS = {"==": "===", "!=": "!==", "<": "<", ">": ">", "<=": "<=", ">=": 
 LOOSE, TEST, LOGIC, COMPARISON, SUM, PRODUCT, ATOM = range(7)
 _RANKS = {"+": SUM, "-": SUM, "*": PRODUCT, "/": PRODUCT}
 _RESERVED = frozenset(
-    "arguments await break case catch class const continue debugger default delete do else enum eval export extends "
-    "false finally for function if implements import in instanceof interface let new null package private protected "
-    "public return static super switch this throw true try typeof undefined var void while with yield async of get set "
-    "Array ArrayBuffer BigInt BigUint64Array Cell Float64Array Infinity Math NaN Number Object Place fill".split()
+    re.findall(
+        r"\w+",
+        """
+        arguments async await break case catch class const continue debugger default delete do else enum eval export
+        extends false finally for function get if implements import in instanceof interface let new null of package
+        private protected public return set static super switch this throw true try typeof undefined var void while
+        with yield
+        Array ArrayBuffer BigInt BigUint64Array Cell Float64Array Infinity Math NaN Number Object Place fill
+        """,
+    )
 )  # words of JavaScript, and names that the translation itself uses
 
 

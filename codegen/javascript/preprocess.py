@@ -47,10 +47,8 @@ def _branch(word: str, rest: str, macros: dict[str, str], taken: list[bool], don
         taken[-1] = not done[-1] and all(taken[:-1]) and (word == "else" or _holds(rest, macros))
         done[-1] = done[-1] or taken[-1]
         return
-    if word == "if":
-        holds = all(taken) and _holds(rest, macros)
-    else:
-        holds = (rest in macros) == (word == "ifdef")
+    defined = (rest in macros) == (word == "ifdef")
+    holds = (all(taken) and _holds(rest, macros)) if word == "if" else defined
     taken.append(holds)
     done.append(holds)
 

@@ -11,7 +11,9 @@ def record_lines(record: Record, types: Types) -> list[str]:
     if record.union:
         return _union_lines(record.name, types)
     given = ", ".join(f"{name} = {types.fresh(member)}" for name, member in members.items())
-    copies = [line for name, member in members.items() for line in types.filled(member, f"this.{name}", f"other.{name}")]
+    copies = [
+        line for name, member in members.items() for line in types.filled(member, f"this.{name}", f"other.{name}")
+    ]
     return [
         f"class {record.name} {{",
         f"  constructor({given}) {{",

@@ -1,8 +1,8 @@
 """The types that generated C uses, and what each is in JavaScript.
 
-A number is a number; a 64-bit word is a BigInt; an array is an array, of doubles a Float64Array; a struct is an object that is made once and
-filled in place, so that a pointer to it is the object itself. A pointer to a number is a `Cell` or a `Place`: an object
-whose `v` is the number.
+A number is a number; a 64-bit word is a BigInt; an array is an array, of doubles a Float64Array; a struct is an object
+that is made once and filled in place, so that a pointer to it is the object itself. A pointer to a number is a `Cell`
+or a `Place`: an object whose `v` is the number.
 """
 
 from __future__ import annotations

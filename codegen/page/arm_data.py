@@ -101,4 +101,9 @@ def _extent(arm: Arm, rest: Floats) -> Floats:
 
 
 def _view(view: View) -> dict[str, Any]:
-    return {"right": view.right, "up": view.up, "rows": view.rows.round(12).tolist(), "toward": view.toward.round(12).tolist()}
+    return {
+        "right": view.right,
+        "up": view.up,
+        "rows": view.rows.round(12).tolist(),
+        "toward": view.toward.round(12).tolist(),
+    }
