@@ -1,8 +1,4 @@
-"""Expressions: C's numbers and conversions, in JavaScript.
-
-Every number of JavaScript is a double, so arithmetic of doubles stands as it is; whole numbers of 32 bits are brought
-back to 32 bits where a sum or a product may leave them, 64-bit words are BigInts, cut to 64 bits.
-"""
+"""Expressions of C, walked in one scope."""
 
 from __future__ import annotations
 
@@ -15,9 +11,7 @@ from codegen.javascript.types import (
     BOOL,
     INT,
     REAL,
-    UNSIGNED,
     VOID,
-    WORD,
     ArrayOf,
     Kind,
     NotTranslatable,
@@ -27,10 +21,22 @@ from codegen.javascript.types import (
     Type,
     Types,
 )
+from codegen.javascript.values import (
+    ATOM,
+    COMPARISON,
+    LOGIC,
+    PRODUCT,
+    SUM,
+    TEST,
+    Value,
+    balanced,
+    constant_value,
+    converted,
+    in_its_type,
+    operation,
+    promoted,
+)
 
-_COMPARISONS = {"==": "===", "!=": "!==", "<": "<", ">": ">", "<=": "<=", ">=": ">="}
-LOOSE, TEST, LOGIC, COMPARISON, SUM, PRODUCT, ATOM = range(7)
-_RANKS = {"+": SUM, "-": SUM, "*": PRODUCT, "/": PRODUCT}
 _RESERVED = frozenset(
     re.findall(
         r"\w+",
@@ -43,33 +49,6 @@ _RESERVED = frozenset(
         """,
     )
 )  # words of JavaScript, and names that the translation itself uses
-
-
-@dataclass(frozen=True, slots=True)
-class Value:
-    """JavaScript text and the C type of what it gives.
-
-    rank      how tightly its outermost operator binds
-    constant  a whole number of 31 bits, the same in every type
-    """
-
-    text: str
-    type: Type
-    rank: int = LOOSE
-    constant: bool = False
-
-    @property
-    def kind(self) -> Kind | None:
-        return self.type.kind if isinstance(self.type, Number) else None
-
-    @property
-    def tight(self) -> str:
-        """As what an operator of one operand, an index or a member stands at."""
-        return self.beside(ATOM)
-
-    def beside(self, rank: int) -> str:
-        """As an operand: in brackets where its own operator binds less tightly."""
-        return self.text if self.rank >= rank else f"({self.text})"
 
 
 def js_name(name: str) -> str:
@@ -96,44 +75,6 @@ class Scope:
         return self.names[name]
 
 
-def converted(value: Value, wanted: Type) -> Value:
-    """As by assignment to the wanted type."""
-    if not isinstance(wanted, Number) or value.kind in (None, wanted.kind):
-        return value
-    source = value.kind
-    match wanted.kind:
-        case Kind.VOID:
-            return value
-        case Kind.BOOL:
-            return Value(f"{value.beside(SUM)} !== {'0n' if source is Kind.WORD else '0'}", BOOL, COMPARISON)
-        case Kind.WORD:
-            return _word(value)
-        case Kind.REAL:
-            text = f"Number({value.text})" if source in (Kind.BOOL, Kind.WORD) else value.text
-            return Value(text, REAL, ATOM if text != value.text else value.rank)
-        case Kind.INT:
-            return Value(f"Number({value.text})", INT, ATOM) if source is Kind.BOOL else _cut(value, "| 0", INT)
-        case Kind.UNSIGNED:
-            return _cut(value, ">>> 0", UNSIGNED)
-    raise NotTranslatable(f"a conversion to {wanted}")
-
-
-def _cut(value: Value, cut: str, wanted: Type) -> Value:
-    if value.constant:
-        return Value(value.text, wanted, ATOM, True)
-    if value.kind is Kind.WORD:
-        return Value(f"Number({value.text} & 0xFFFFFFFFn) {cut}", wanted)
-    return Value(f"{value.tight} {cut}", wanted)
-
-
-def _word(value: Value) -> Value:
-    if value.kind is Kind.REAL:
-        return Value(f"BigInt(Math.trunc({value.text}))", WORD, ATOM)
-    if re.fullmatch(r"0x[0-9A-Fa-f]+|\d+", value.text):
-        return Value(f"{value.text}n", WORD, ATOM)
-    return Value(f"BigInt.asUintN(64, BigInt({value.text}))", WORD, ATOM)
-
-
 class Expressions:
     """Translates expressions in one scope."""
 
@@ -143,7 +84,7 @@ class Expressions:
     def value(self, node: c_ast.Node) -> Value:
         match node:
             case c_ast.Constant():
-                return _constant(node)
+                return constant_value(node)
             case c_ast.ID():
                 return self._identifier(node.name)
             case c_ast.ArrayRef():
@@ -240,12 +181,12 @@ class Expressions:
                 return self._step(node)
             case "p++" | "p--":
                 raise NotTranslatable("the value before a step")
-        value = _promoted(self.value(node.expr))
+        value = promoted(self.value(node.expr))
         if node.op == "+":
             return value
         if value.kind is Kind.REAL:
             return Value(f"{node.op}{value.tight}", REAL, PRODUCT)
-        return _result(f"{node.op}{value.tight}", value.type)
+        return in_its_type(f"{node.op}{value.tight}", value.type)
 
     def _pointed_at(self, node: c_ast.Node) -> Value:
         pointer = self.value(node)
@@ -263,7 +204,7 @@ class Expressions:
     def _binary(self, node: c_ast.BinaryOp) -> Value:
         if node.op in ("&&", "||"):
             return self._both(node)
-        return _operation(node.op, self.value(node.left), self.value(node.right))
+        return operation(node.op, self.value(node.left), self.value(node.right))
 
     def _both(self, node: c_ast.BinaryOp) -> Value:
         """A chain of one operator needs no brackets; one in the other keeps them."""
@@ -275,7 +216,7 @@ class Expressions:
     def _ternary(self, node: c_ast.TernaryOp) -> Value:
         above, otherwise = self.value(node.iftrue), self.value(node.iffalse)
         if above.kind is not None and otherwise.kind is not None and above.kind is not otherwise.kind:
-            above, otherwise = _balanced(above, otherwise)
+            above, otherwise = balanced(above, otherwise)
         test = self.condition(node.cond).beside(LOGIC)
         return Value(f"{test} ? {above.beside(SUM)} : {otherwise.beside(SUM)}", above.type, TEST)
 
@@ -308,69 +249,5 @@ class Expressions:
         op = node.op.removesuffix("=")
         if target.kind is Kind.REAL:
             return Value(f"{target.text} {node.op} {self.as_type(node.rvalue, REAL).text}", REAL)
-        result = converted(_operation(op, target, self.value(node.rvalue)), target.type)
+        result = converted(operation(op, target, self.value(node.rvalue)), target.type)
         return Value(f"{target.text} = {result.text}", target.type)
-
-
-def _constant(node: c_ast.Constant) -> Value:
-    if node.type.endswith("double") or node.type == "float":
-        return Value(node.value.rstrip("fF"), REAL, ATOM)
-    digits = node.value.rstrip("uUlL")
-    if int(digits, 0) > 0xFFFFFFFF:
-        return Value(f"{digits}n", WORD, ATOM)
-    return Value(digits, UNSIGNED if node.value != digits else INT, ATOM, int(digits, 0) < 2**31)
-
-
-def _promoted(value: Value) -> Value:
-    return converted(value, INT) if value.kind is Kind.BOOL else value
-
-
-def _balanced(left: Value, right: Value) -> tuple[Value, Value]:
-    """Both in the type that the usual arithmetic conversions give."""
-    left, right = _promoted(left), _promoted(right)
-    if left.kind is None or right.kind is None:
-        raise NotTranslatable(f"an operation on {left.type} and {right.type}")
-    wanted = Number(max(left.kind, right.kind, key=lambda kind: kind.value))
-    return converted(left, wanted), converted(right, wanted)
-
-
-def _operation(op: str, left: Value, right: Value) -> Value:
-    if op in _COMPARISONS and BOOL in (left.type, right.type) and left.type == right.type:
-        return Value(f"{left.tight} {_COMPARISONS[op]} {right.tight}", BOOL, COMPARISON)
-    if op in ("<<", ">>"):  # the result has the left operand's type (ISO/IEC 9899:2011, 6.5.7 p3)
-        return _shift(op, _promoted(left), _promoted(right))
-    left, right = _balanced(left, right)
-    if op in _COMPARISONS:
-        return Value(f"{left.beside(SUM)} {_COMPARISONS[op]} {right.beside(SUM)}", BOOL, COMPARISON)
-    if op == "*" and left.kind in (Kind.INT, Kind.UNSIGNED):
-        return _result(f"Math.imul({left.text}, {right.text})", left.type)
-    if left.kind is Kind.REAL:
-        return _real_operation(op, left, right)
-    return _result(f"{left.tight} {op} {right.tight}", left.type)
-
-
-def _real_operation(op: str, left: Value, right: Value) -> Value:
-    """In the order that the C has: a sum of sums keeps its brackets where they change that order."""
-    rank = _RANKS[op]
-    return Value(f"{left.beside(rank)} {op} {right.beside(rank + 1)}", REAL, rank)
-
-
-def _shift(op: str, left: Value, right: Value) -> Value:
-    if left.kind is Kind.WORD:
-        return _result(f"{left.tight} {op} {converted(right, WORD).tight}", WORD, exact=op == ">>")
-    js = ">>>" if op == ">>" and left.kind is Kind.UNSIGNED else op
-    return _result(f"{left.tight} {js} {right.tight}", left.type)
-
-
-def _result(text: str, wanted: Type, exact: bool = False) -> Value:
-    """Brought back to the digits of its type."""
-    if exact:
-        return Value(text, wanted)
-    match wanted:
-        case Number(kind=Kind.INT):
-            return Value(f"({text}) | 0", wanted)
-        case Number(kind=Kind.UNSIGNED):
-            return Value(f"({text}) >>> 0", wanted)
-        case Number(kind=Kind.WORD):
-            return Value(f"BigInt.asUintN(64, {text})", wanted, ATOM)
-    return Value(text, wanted)

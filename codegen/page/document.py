@@ -8,7 +8,6 @@ from dataclasses import dataclass
 from typing import Any
 
 import jinja2
-from markupsafe import Markup
 
 from codegen import VERSION
 from codegen.armfile import ArmFile
@@ -57,37 +56,37 @@ class Subject:
 class MapText:
     title: str
     note: str
-    svg: Markup
+    svg: str
     classes: tuple[Class, ...]
 
 
 @dataclass(frozen=True, slots=True)
 class PageText:
-    """All holes of the template."""
+    """All holes of the template. What is HTML, a style or a script already is named as safe there."""
 
     version: str
     name: str
     summary: str
-    style: Markup
+    style: str
     controls: list[Control]
     length_unit: str
     angle_unit: str
     task_hint: str
-    branch_hint: Markup
-    arm_html: Markup
-    derivation: tuple[tuple[str, str, Markup], ...]
+    branch_hint: str
+    arm_html: str
+    derivation: tuple[tuple[str, str, str], ...]
     real: str
     agreement: Agreement
     maps: tuple[MapText, ...]
-    cost_html: Markup
+    cost_html: str
     costs: tuple[Table, ...]
     cost_remarks: tuple[str, ...]
     cautions: tuple[str, ...]
     command: str
     digest: str
-    data: Markup
-    kinematics: Markup
-    script: Markup
+    data: str
+    kinematics: str
+    script: str
 
 
 def page(subject: Subject, measured: Measured) -> str:
@@ -108,28 +107,28 @@ def _page_text(subject: Subject, measured: Measured) -> PageText:
         version=VERSION,
         name=arm.name,
         summary=_summary(arm, subject.derivation),
-        style=Markup(_shipped("page.css").strip()),
+        style=_shipped("page.css").strip(),
         controls=controls(arm),
         length_unit=arm.length_unit,
         angle_unit=arm.angle_unit,
         task_hint=_task_hint(arm),
         branch_hint=_branch_hint(subject.derivation),
-        arm_html=Markup(html_of(told["The arm"])),
+        arm_html=html_of(told["The arm"]),
         derivation=tuple(
-            (heading, slug(heading), Markup(html_of(lines))) for heading, lines in told.items() if heading not in _APART
+            (heading, slug(heading), html_of(lines)) for heading, lines in told.items() if heading not in _APART
         ),
         real=f"{subject.options.real.c_name}, with {_mathematics(subject.options)}",
         agreement=measured.agreement,
         maps=tuple(_map_text(found) for found in measured.maps),
-        cost_html=Markup(html_of(told["Cost"])),
+        cost_html=html_of(told["Cost"]),
         costs=measured.costs,
         cost_remarks=measured.cost_remarks,
         cautions=CAUTIONS,
         command=subject.command,
         digest=subject.file.digest,
         data=_data(arm_data(arm, _branches(subject.script), subject.derivation is None)),
-        kinematics=Markup(javascript(subject.script, SCRIPT_OPTIONS.prefix)),
-        script=Markup(_shipped("picture.js") + "\n" + _shipped("controls.js").strip()),
+        kinematics=javascript(subject.script, SCRIPT_OPTIONS.prefix),
+        script=_shipped("picture.js") + "\n" + _shipped("controls.js").strip(),
     )
 
 
@@ -160,10 +159,10 @@ def _task_hint(arm: Arm) -> str:
     return _HINTS[arm.task] + held
 
 
-def _branch_hint(derivation: Derivation | None) -> Markup:
+def _branch_hint(derivation: Derivation | None) -> str:
     if derivation is None:
-        return Markup("Branch 0 is tracked from where the joints are; the other numbers hold for this list only.")
-    return Markup('<a href="#what-a-branch-number-means">What a branch number means</a>')
+        return "Branch 0 is tracked from where the joints are; the other numbers hold for this list only."
+    return '<a href="#what-a-branch-number-means">What a branch number means</a>'
 
 
 def _branches(script: dict[str, str]) -> int:
@@ -173,9 +172,9 @@ def _branches(script: dict[str, str]) -> int:
 
 
 def _map_text(found: ErrorMap) -> MapText:
-    return MapText(found.title, found.note, Markup(svg(found)), tuple(shown_classes(found)))
+    return MapText(found.title, found.note, svg(found), tuple(shown_classes(found)))
 
 
-def _data(content: dict[str, Any]) -> Markup:
+def _data(content: dict[str, Any]) -> str:
     """JSON that cannot end the element it stands in."""
-    return Markup(json.dumps(content, ensure_ascii=False, allow_nan=False).replace("<", "\\u003c"))
+    return json.dumps(content, ensure_ascii=False, allow_nan=False).replace("<", "\\u003c")
