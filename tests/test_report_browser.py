@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator
 from pathlib import Path
 
@@ -81,6 +82,25 @@ def test_all_three_views_are_drawn(picker: Browser) -> None:
         drawn = picker.run(f"return document.getElementById('view-{view}').innerHTML")
         assert "NaN" not in drawn
         assert "undefined" not in drawn
+
+
+def self_check(page: Browser) -> str:
+    """What the page says of itself, when it has found it out."""
+    page.run("checkSelf()")
+    return page.text("self-check")
+
+
+def test_the_page_says_that_this_browser_computes_the_bits_of_the_c(picker: Browser) -> None:
+    shown = self_check(picker)
+    assert "The same bits." in shown
+    assert re.search(r"at 12 poses and on every branch, 0 of \d{3} numbers differ", shown)
+
+
+def test_the_page_says_so_where_a_number_differs(picker: Browser) -> None:
+    picker.run("arm.vectors[3].pose[2] += 1e-16; arm.vectors[5].statuses[1] = 3; arm.vectors[7].branches[2][1] = -0.5")
+    shown = self_check(picker)
+    assert "Not the same bits." in shown
+    assert "3 of" in shown
 
 
 # -- joints ------------------------------------------------------------------------------------------------------------
@@ -269,4 +289,5 @@ def test_the_postures_of_a_tracked_arm_are_found_and_reached(window: Browser, tm
         window.run("document.querySelector(`input[name=posture][value='${arguments[0]}']`).click()", branch)
         assert window.run("return Array.from(state.q)") == pytest.approx(list(q[branch]), abs=1e-12)
         assert window.number("gap") < 1e-9
+    assert "The same bits." in self_check(window)
     assert window.complaints() == []

@@ -62,7 +62,7 @@ def report(
         raise CallError(Fault(str(out), "is not named as a page", "end it in .html"))
     files = what.generated()
     subject = _subject(what, _command(arm, what, samples, seed, cost))
-    measured = _measured(what, files, samples, seed, cost)
+    measured = _measured(what, files, subject, samples, seed, cost)
     write_file(out, page(subject, measured))
     say(f"wrote {out}")
     if not measured.agreement.agreed:
@@ -90,15 +90,18 @@ def _subject(what: Wanted, command: str) -> Subject:
     return Subject(what.file, what.source.name, derivation, what.options, command, script)
 
 
-def _measured(what: Wanted, files: dict[str, str], samples: int, seed: int, cost: bool) -> Measured:
+def _measured(what: Wanted, files: dict[str, str], subject: Subject, samples: int, seed: int, cost: bool) -> Measured:
     from build_checks.error_map import error_maps
+    from build_checks.page_vectors import page_vectors
     from codegen.page.content import Measured
+    from codegen.page.document import SCRIPT_OPTIONS
 
     agreement = _agreement(what, files, samples, seed)
     with working("mapping the errors"):
         maps = error_maps(what.file.arm, files, what.options, samples, seed)
+        vectors = page_vectors(what.file.arm, subject.script, SCRIPT_OPTIONS, seed)
     costs, remarks = _costs(what) if cost else ((), (_NO_COST,))
-    return Measured(agreement, maps, costs, remarks)
+    return Measured(agreement, vectors, maps, costs, remarks)
 
 
 def _agreement(what: Wanted, files: dict[str, str], samples: int, seed: int) -> Agreement:

@@ -53,10 +53,26 @@ class ErrorMap:
 
 
 @dataclass(frozen=True, slots=True)
+class Vector:
+    """What the C gives in doubles: the pose at `joints`, and every branch of that pose from `seed`. SI units.
+
+    pose      the rotation row by row, then the position
+    branches  None where there is no solution
+    """
+
+    joints: tuple[float, ...]
+    seed: tuple[float, ...]
+    pose: tuple[float, ...]
+    statuses: tuple[int, ...]
+    branches: tuple[tuple[float, ...] | None, ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Measured:
     """All that was measured: `costs` are tables, `cost_remarks` what could not be measured and why."""
 
     agreement: Agreement
+    vectors: tuple[Vector, ...]
     maps: tuple[ErrorMap, ...]
     costs: tuple[Table, ...] = ()
     cost_remarks: tuple[str, ...] = ()

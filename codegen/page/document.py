@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 import re
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
 from typing import Any
 
 import jinja2
@@ -23,6 +23,7 @@ from codegen.page.heat_map import Class, shown_classes, svg
 from codegen.places import PAGE_TEMPLATES
 
 SCRIPT_OPTIONS = Options(RealType.DOUBLE, Mathematics.OWN, "arm")  # of the C that the page's script is made from
+_SCRIPTS = ("picture.js", "controls.js", "self_check.js")
 _APART = ("The arm", "Cost")  # sections of the explanation that the page shows elsewhere
 
 CAUTIONS = (
@@ -126,9 +127,12 @@ def _page_text(subject: Subject, measured: Measured) -> PageText:
         cautions=CAUTIONS,
         command=subject.command,
         digest=subject.file.digest,
-        data=_data(arm_data(arm, _branches(subject.script), subject.derivation is None)),
+        data=_data(
+            arm_data(arm, _branches(subject.script), subject.derivation is None)
+            | {"vectors": [asdict(vector) for vector in measured.vectors]}
+        ),
         kinematics=javascript(subject.script, SCRIPT_OPTIONS.prefix),
-        script=_shipped("picture.js") + "\n" + _shipped("controls.js").strip(),
+        script="\n".join(_shipped(name) for name in _SCRIPTS).strip(),
     )
 
 
