@@ -19,7 +19,7 @@ const shown = (value, unit, more = 0) => {
   return /^-0\.?0*$/.test(text) ? text.slice(1) : text;
 };
 const views = [obliqueView(-58), ...arm.views];
-const state = { q: arm.rest.slice(), pose: kinematics.pose(), target: kinematics.pose(), found: [], chosen: -1 };
+const state = { q: arm.opening.slice(), pose: kinematics.pose(), target: kinematics.pose(), found: [], chosen: -1 };
 
 /* Fixed axes: Rz(yaw) Ry(pitch) Rx(roll); where the pitch is a right angle the roll counts as 0. */
 function anglesOf(r) {
@@ -127,8 +127,8 @@ function postureRow({ q, status }, branch) {
 
 function jointValue(value, joint) {
   const past = joint.limits !== null && (value < joint.limits[0] - 1e-9 || value > joint.limits[1] + 1e-9);
-  const cell = made("span", past ? "past" : "");
-  cell.append(made("small", "", joint.name), shown(value, unitOf(joint)));
+  const cell = made("span");
+  cell.append(made("small", "", joint.name), made("span", past ? "past" : "", shown(value, unitOf(joint))));
   return cell;
 }
 

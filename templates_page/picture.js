@@ -156,8 +156,9 @@ function scaleBar(paper) {
 function directions(view, paper) {
   const x = paper.width - 56, y = paper.height - 16;
   if (!view.oblique) {
+    const right = view.right.length < 3 ? `x="${x + 28}" y="${y + 4}"` : `text-anchor="end" x="${paper.width - 8}" y="${y + 14}"`;
     return `<path class="scale" d="M${x} ${y}h24m-5 -3l5 3l-5 3M${x} ${y}v-24m-3 5l3 -5l3 5"/>`
-      + `<text class="small" x="${x + 28}" y="${y + 4}">${view.right}</text><text class="small" x="${x - 4}" y="${y - 28}">${view.up}</text>`;
+      + `<text class="small" ${right}>${view.right}</text><text class="small" x="${x - 4}" y="${y - 28}">${view.up}</text>`;
   }
   const centre = [paper.width - 36, paper.height - 34];
   return ["x", "y", "z"].map((name, j) => {

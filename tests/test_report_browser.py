@@ -47,8 +47,9 @@ def picker_page(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 @pytest.fixture
 def picker(window: Browser, picker_page: Path) -> Browser:
-    """The page of the vial picker, freshly opened: 4 joints in degrees and millimetres, 4 branches."""
+    """The page of the vial picker, its joints at rest: 4 joints in degrees and millimetres, 4 branches."""
     window.open(picker_page)
+    window.find("rest").click()
     return window
 
 

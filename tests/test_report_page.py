@@ -13,12 +13,14 @@ import pytest
 from command_line import CANNOT_REACH, PICKER, PLOTTER, call, names_in
 from required_tools import need_target
 
+import build_checks.cost
 import codegen.pipeline
 from build_checks.compile import Kinematics, compiled
 from build_checks.error_map import error_maps, round_trips
 from build_checks.reference import Reference
 from build_checks.targets import TARGETS
 from codegen.armfile import read_arm
+from codegen.errors import CheckFailedError, Fault
 from codegen.options import Options, RealType
 from codegen.page.content import ErrorMap
 from codegen.page.derivation import html_of
@@ -169,6 +171,18 @@ def test_cost_is_measured_where_it_can_be(tmp_path: Path) -> None:
     text = page_text(tmp_path, PLOTTER, "--samples", "100")
     assert TARGETS[0].title in text
     assert re.search(r'<th scope="row">arm_inverse</th><td>[\d,]+</td>', text)
+
+
+def test_a_target_whose_measurement_fails_is_said_and_the_page_still_comes(
+    monkeypatch: pytest.MonkeyPatch, tmp_path: Path
+) -> None:
+    def fails(*_: object, **__: object) -> None:
+        raise CheckFailedError(Fault("arm_inverse", "used more stack than there is"))
+
+    monkeypatch.setattr(build_checks.cost, "measure_cost", fails)
+    text = page_text(tmp_path, PLOTTER, "--samples", "100")
+    for target in TARGETS:
+        assert f"{target.title}: not measured: arm_inverse: used more stack than there is" in text
 
 
 def test_cost_that_is_left_out_is_said(picker: str) -> None:

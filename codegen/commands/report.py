@@ -11,7 +11,7 @@ import typer
 
 from codegen.commands.arguments import AngleError, ArmPath, Math, Prefix, Real, Wanted, wanted
 from codegen.commands.console import Progress, say, working
-from codegen.errors import CallError, Fault
+from codegen.errors import CallError, CheckFailedError, Fault
 from codegen.writing import write_file
 
 if TYPE_CHECKING:
@@ -100,7 +100,7 @@ def _measured(what: Wanted, files: dict[str, str], subject: Subject, samples: in
     with working("mapping the errors"):
         maps = error_maps(what.file.arm, files, what.options, samples, seed)
         vectors = page_vectors(what.file.arm, subject.script, SCRIPT_OPTIONS, seed)
-    costs, remarks = _costs(what) if cost else ((), (_NO_COST,))
+    costs, remarks = _costs(what, files) if cost else ((), (_NO_COST,))
     return Measured(agreement, vectors, maps, costs, remarks)
 
 
@@ -115,10 +115,20 @@ def _agreement(what: Wanted, files: dict[str, str], samples: int, seed: int) -> 
         progress.end()
 
 
-def _costs(what: Wanted) -> tuple[tuple[Table, ...], tuple[str, ...]]:
+def _costs(what: Wanted, files: dict[str, str]) -> tuple[tuple[Table, ...], tuple[str, ...]]:
+    """A table for each target; one line for each that cannot be measured, whatever the reason."""
     from build_checks.report_page import cost_tables
     from build_checks.targets import TARGETS
     from codegen.commands.cost import measured
 
-    found = measured(what, [target.name for target in TARGETS], _COST_POSES)
-    return cost_tables(found), found.not_measured
+    tables: list[Table] = []
+    remarks: list[str] = []
+    for target in TARGETS:
+        try:
+            found = measured(what, files, [target.name], _COST_POSES)
+        except CheckFailedError as error:
+            remarks += [f"{target.title}: not measured: {fault.where}: {fault.what}" for fault in error.faults]
+            continue
+        tables += cost_tables(found)
+        remarks += found.not_measured
+    return tuple(tables), tuple(remarks)

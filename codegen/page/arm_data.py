@@ -16,6 +16,7 @@ from codegen.link_product import Floats, frame_matrix, frames_along
 from codegen.model import Arm, JointRow, Task
 
 _POSTURES = 500  # that the picture's frame is made to hold
+_BEND = np.pi / 6  # rad, at most, of each turning joint in the posture that the page opens with
 _DIGITS = {"m": 4, "mm": 1, "rad": 3, "deg": 1}  # of a slider's step
 _POSITION_ONLY = (Task.POINT, Task.PLANE_POINT)
 
@@ -59,6 +60,7 @@ def arm_data(arm: Arm, branches: int, numeric: bool) -> dict[str, Any]:
         "tool": frame_matrix(arm.tool).tolist(),
         "joints": [_joint(arm, k, scene) for k in range(len(arm.joints))],
         "rest": rest.tolist(),
+        "opening": _opening(arm, rest),
         "extent": _extent(arm, rest).tolist(),
         "mark": scene.mark,
         "views": [_view(side_view(scene)), _view(top_view())],
@@ -66,6 +68,14 @@ def arm_data(arm: Arm, branches: int, numeric: bool) -> dict[str, Any]:
         "numeric": numeric,
         "readsRotation": arm.task not in _POSITION_ONLY,
     }
+
+
+def _opening(arm: Arm, rest: Floats) -> list[float]:
+    """The posture that the page opens with: bent, as at rest many an arm is straight and so singular."""
+    lower, upper, _ = ranges(arm)
+    room = np.where(np.arange(len(rest)) % 2 == 0, upper - rest, lower - rest) / 2
+    bend = np.clip(room, -_BEND, _BEND)
+    return [float(value) for value in np.where([is_angle(row) for row in arm.joints], rest + bend, rest)]
 
 
 def _joint(arm: Arm, index: int, scene: Scene) -> dict[str, Any]:
