@@ -14,7 +14,7 @@ from codegen.page.content import ErrorMap
 
 COLOURS = ("#fee838", "#d9c55c", "#b4a76f", "#8f8a79", "#6c6e72", "#3f5470", "#00224e")  # small errors first
 _WIDTH, _LEFT, _BOTTOM, _TOP, _RIGHT = 460.0, 58.0, 42.0, 8.0, 10.0
-_MOST_HEIGHT = 420.0
+_MOST_HEIGHT, _LEAST_WIDTH = 440.0, 250.0  # the least leaves room for the words below
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,8 +71,9 @@ def svg(found: ErrorMap) -> str:
         f"{_label(found.up_label, found)}</text>",
     ]
     title = escape(f"{found.title}: {found.note}", quote=True)
-    box = f"0 0 {_WIDTH:g} {bottom + _BOTTOM:.1f}"
-    return f'<svg class="map" role="img" viewBox="{box}" aria-label="{title}">{"".join(parts)}</svg>'
+    wide, high = max(right + _RIGHT, _LEAST_WIDTH), bottom + _BOTTOM
+    size = f'viewBox="0 0 {wide:.1f} {high:.1f}" width="{wide:.0f}" height="{high:.0f}"'
+    return f'<svg class="map" role="img" {size} aria-label="{title}">{"".join(parts)}</svg>'
 
 
 def _label(text: str, found: ErrorMap) -> str:
