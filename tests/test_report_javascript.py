@@ -123,6 +123,68 @@ def test_whole_numbers_keep_the_digits_of_their_type(a: int, w: int, i: int) -> 
     assert evaluated(body, f"arm_f({a}, {w}n, {i})") == str(wanted)
 
 
+STRUCTS = """
+typedef struct arm_pair {
+    arm_real c;
+    arm_real s;
+} arm_pair;
+
+typedef struct arm_pairs {
+    arm_pair list[2];
+    arm_real x[3];
+    unsigned count;
+} arm_pairs;
+
+static void arm_change(arm_pair *pair, arm_real *number, arm_real tail[2])
+{
+    pair->s = 9.0;
+    *number += 4.0;
+    tail[1] = 0.125;
+}
+
+static arm_pair arm_swapped(const arm_pair *pair)
+{
+    arm_pair other = *pair;
+    other.c = pair->s;
+    other.s = pair->c;
+    return other;
+}
+
+arm_real arm_f(void)
+{
+    arm_pair a = {1.0, 2.0};
+    arm_pair b = a;
+    arm_pairs some = {{{3.0, 4.0}, {5.0, 6.0}}, {0.5, 0.25, 0.75}, 2u};
+    arm_pairs others;
+    arm_real local = 10.0;
+    arm_pair *const second = &some.list[1];
+
+    b.c = 50.0;
+    others = some;
+    others.list[0].c = 300.0;
+    others.x[0] = 700.0;
+    some.list[0] = a;
+    a.s = 20.0;
+    arm_change(second, &local, &some.x[1]);
+    arm_change(&b, &some.x[0], others.x);
+    *second = arm_swapped(second);
+    return a.c + 2.0 * a.s + 3.0 * b.c + 5.0 * b.s + 7.0 * some.list[0].s + 11.0 * some.list[1].c
+            + 13.0 * some.list[1].s + 17.0 * others.list[0].c + 19.0 * others.list[1].s + 23.0 * local
+            + 29.0 * some.x[0] + 31.0 * some.x[2] + 37.0 * others.x[0] + 41.0 * others.x[1] + (arm_real)others.count;
+}
+"""
+
+
+def test_structs_are_copied_and_pointed_at_as_in_c(tmp_path: Path) -> None:
+    """Against gcc: two names of one struct change together, a copy does not."""
+    need_programs("gcc")
+    main = 'int main(void)\n{\n    printf("%.17g", arm_f());\n    return 0;\n}\n'
+    (tmp_path / "structs.c").write_text(f"#include <stdio.h>\n{HEADER}{STRUCTS}\n{main}", encoding="utf-8")
+    subprocess.run(["gcc", "-std=c99", "-o", "structs", "structs.c"], cwd=tmp_path, check=True)
+    printed = subprocess.run([tmp_path / "structs"], capture_output=True, text=True, check=True).stdout
+    assert float(evaluated(STRUCTS, "arm_f()")) == float(printed)
+
+
 def test_words_of_javascript_are_no_names() -> None:
     text = translated("arm_real arm_f(arm_real new)\n{\n    const arm_real let = new;\n    return let;\n}\n")
     assert "const let_ = new_;" in text
