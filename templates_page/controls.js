@@ -71,8 +71,11 @@ function draw() {
   views.forEach((view, k) => drawView(element(`view-${k}`), view, scene, state.target));
 }
 
+let waiting = 0; // the timer of branches that are still to be found
+
 /* Every branch of the target, from where the joints are now. */
 function solve() {
+  clearTimeout(waiting);
   const q = Array.from({ length: arm.branches }, () => Array(count).fill(NaN));
   const statuses = Array(arm.branches).fill(OUT_OF_REACH);
   kinematics.inverse_all(state.target, state.q, q, statuses);
@@ -157,11 +160,18 @@ function moveTo(q, branch) {
   showArm();
 }
 
-let waiting = 0;
+/* At once where that is quick; else when the target rests, and until then no posture of the target before can be picked. */
 function solveSoon() {
   clearTimeout(waiting);
-  if (PATIENCE === 0) solve();
-  else waiting = setTimeout(solve, PATIENCE);
+  if (PATIENCE === 0) {
+    solve();
+    return;
+  }
+  element("status").textContent = "Finding the postures ...";
+  element("posture-list").querySelectorAll("input").forEach((choice) => {
+    choice.disabled = true;
+  });
+  waiting = setTimeout(solve, PATIENCE);
 }
 
 /* The joints were moved: the target goes along. */

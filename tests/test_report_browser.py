@@ -45,6 +45,17 @@ def picker_page(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return page_of(PICKER, tmp_path_factory.mktemp("page"))
 
 
+TRACKED_ARM = WITHOUT_CLOSED_FORM["point_pitch"]
+
+
+@pytest.fixture(scope="module")
+def tracked_page(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    folder = tmp_path_factory.mktemp("tracked")
+    file = folder / "tracked.toml"
+    file.write_text(arm_file_text(TRACKED_ARM), encoding="utf-8")
+    return page_of(file, folder)
+
+
 @pytest.fixture
 def picker(window: Browser, picker_page: Path) -> Browser:
     """The page of the vial picker, its joints at rest: 4 joints in degrees and millimetres, 4 branches."""
@@ -275,15 +286,12 @@ def test_nothing_is_wider_than_a_narrow_screen(name: str, width: int, window: Br
 
 
 # -- an arm without a closed form --------------------------------------------------------------------------------------
-def test_the_postures_of_a_tracked_arm_are_found_and_reached(window: Browser, tmp_path: Path) -> None:
-    arm = WITHOUT_CLOSED_FORM["point_pitch"]
-    file = tmp_path / "tracked.toml"
-    file.write_text(arm_file_text(arm), encoding="utf-8")
-    window.open(page_of(file, tmp_path))
+def test_the_postures_of_a_tracked_arm_are_found_and_reached(window: Browser, tracked_page: Path) -> None:
+    window.open(tracked_page)
     for index, value in enumerate(("0.4", "-0.7", "0.9", "0.3")):
         window.type(f"value-{index}", value)
-    window.run("solve()")
-    q, status = branches_by_c(kinematics(arm), window)
+    window.run("solve()")  # at once, not when the target has rested
+    q, status = branches_by_c(kinematics(TRACKED_ARM), window)
     reached = [b for b in range(len(status)) if status[b] != Status.OUT_OF_REACH]
     assert len(reached) > 1
     for branch in reached:
@@ -292,3 +300,22 @@ def test_the_postures_of_a_tracked_arm_are_found_and_reached(window: Browser, tm
         assert window.number("gap") < 1e-9
     assert "The same bits." in self_check(window)
     assert window.complaints() == []
+
+
+def test_no_posture_of_an_old_target_can_be_picked_while_a_tracked_arm_searches(
+    window: Browser, tracked_page: Path
+) -> None:
+    window.open(tracked_page)
+    choices = "document.querySelectorAll('input[name=posture]:enabled').length"
+    before, during, after = window.run(f"""
+        solve();
+        const before = {choices};
+        state.q[0] += 0.1;
+        jointsMoved();
+        const during = {choices};
+        solve();
+        return [before, during, {choices}];
+    """)
+    assert before > 0
+    assert during == 0
+    assert after > 0
