@@ -164,6 +164,7 @@ def test_the_options_reach_the_c_that_is_checked(tmp_path: Path) -> None:
     text = page_text(tmp_path, PLOTTER, *QUICK, "--real", "double", "--math", "libm", "--prefix", "plot")
     assert "The C in double, with the compiler's mathematics" in re.sub(r"\s+", " ", text).replace("&#39;", "'")
     assert "--real double --math libm --prefix plot" in text
+    assert "--prefix arm --angles integer" in page_text(tmp_path, PLOTTER, *QUICK, "--angles", "integer")
 
 
 def test_cost_is_measured_where_it_can_be(tmp_path: Path) -> None:

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from codegen.commands.arguments import AngleError, ArmPath, Math, Prefix, Real, Wanted, wanted
+from codegen.commands.arguments import AngleError, Angles, ArmPath, Math, Prefix, Real, Wanted, wanted
 from codegen.commands.console import Progress, say, working
 from codegen.errors import CallError, CheckFailedError, Fault
 from codegen.writing import write_file
@@ -44,6 +44,7 @@ def report(
     math: Math = "own",
     prefix: Prefix = "arm",
     angle_error: AngleError = 2,
+    angles: Angles = "real",
 ) -> None:
     """Write one page for a design review.
 
@@ -57,7 +58,7 @@ def report(
     """
     from codegen.page.document import page
 
-    what = wanted(arm, real, math, prefix, angle_error)
+    what = wanted(arm, real, math, prefix, angle_error, angles)
     if out.suffix.lower() not in (".html", ".htm"):
         raise CallError(Fault(str(out), "is not named as a page", "end it in .html"))
     files = what.generated()
@@ -72,12 +73,11 @@ def report(
 
 def _command(arm: Path, what: Wanted, samples: int, seed: int, cost: bool) -> str:
     """Without folders, so that the page is the same everywhere."""
-    options = what.options
+    from codegen.emit.files import option_words
+
     words = ["linkwright", "report", arm.name, "--out", f"{arm.stem}.html", "--samples", str(samples)]
-    words += ["--seed", str(seed), "--cost" if cost else "--no-cost", "--real", options.real.c_name]
-    words += ["--math", options.mathematics.value, "--prefix", options.prefix]
-    words += ["--angle-error", str(options.angle_error)] if options.angle_error != 2 else []
-    return shlex.join(words)
+    words += ["--seed", str(seed), "--cost" if cost else "--no-cost"]
+    return f"{shlex.join(words)} {option_words(what.options)}"
 
 
 def _subject(what: Wanted, command: str) -> Subject:
