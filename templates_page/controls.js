@@ -200,7 +200,7 @@ function targetTyped() {
 }
 
 function moveToNearest() {
-  const q = state.q.slice(), branch = kinematics.cell();
+  const q = state.q.slice(), branch = [0];
   const status = kinematics.inverse_nearest(state.target, state.q, q, branch);
   if (status === OUT_OF_REACH || status === BAD_INPUT) return solve();
   reach(q);

@@ -51,9 +51,8 @@ rows(numbers("poses.bin"), 12).forEach((row, k) => {
   const statuses = list(branches, unwritten);
   out.push(kinematics.inverse_all(wanted, seeds[k], all, statuses), ...statuses, ...all.flat());
   const nearest = list(joints, canary);
-  const branch = kinematics.cell();
-  branch.v = canaryBranch;
-  out.push(kinematics.inverse_nearest(wanted, seeds[k], nearest, branch), branch.v, ...nearest);
+  const branch = [canaryBranch];
+  out.push(kinematics.inverse_nearest(wanted, seeds[k], nearest, branch), branch[0], ...nearest);
 });
 const angles = numbers("angles.bin");
 for (let i = 0; i < angles.length; i += 2) out.push(kinematics.atan2(angles[i], angles[i + 1]));

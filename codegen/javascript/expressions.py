@@ -45,7 +45,7 @@ _RESERVED = frozenset(
         extends false finally for function get if implements import in instanceof interface let new null of package
         private protected public return set static super switch this throw true try typeof undefined var void while
         with yield
-        Array ArrayBuffer BigInt BigUint64Array Cell Float64Array Infinity Math NaN Number Object Place fill
+        Array ArrayBuffer BigInt BigUint64Array Float64Array Infinity Math NaN Number Object Place fill
         """,
     )
 )  # words of JavaScript, and names that the translation itself uses
@@ -58,7 +58,7 @@ def js_name(name: str) -> str:
 
 @dataclass
 class Scope:
-    """What names stand for at a place of the file: their types, and which are held in a Cell as their address is taken."""
+    """What names stand for at a place of the file: their types, and which are held in an array of one as their address is taken."""
 
     types: Types
     names: dict[str, Type]
@@ -138,7 +138,7 @@ class Expressions:
             return Value(name, INT, ATOM, self.scope.types.constants[name] >= 0)
         wanted = self.scope.type_of(name)
         held = name in self.scope.cells and isinstance(wanted, Number)
-        return Value(js_name(name) + (".v" if held else ""), wanted, ATOM)
+        return Value(js_name(name) + ("[0]" if held else ""), wanted, ATOM)
 
     def _element(self, node: c_ast.ArrayRef) -> Value:
         row = self.value(node.name)
@@ -153,7 +153,7 @@ class Expressions:
         return Value(f"{whole.tight}.{node.field.name}", self.scope.types.member(record, node.field.name), ATOM)
 
     def _address(self, node: c_ast.Node) -> Value:
-        """Structs and arrays are their own addresses; a number's is a Cell or a Place."""
+        """Structs and arrays are their own addresses; a number's is what holds it as its entry 0."""
         value = self.value(node)
         pointer = PointerTo(value.type)
         if not isinstance(value.type, Number):
@@ -193,7 +193,7 @@ class Expressions:
         if not isinstance(pointer.type, PointerTo):
             raise NotTranslatable(f"* of {pointer.type}")
         target = pointer.type.target
-        return Value(pointer.tight + (".v" if isinstance(target, Number) else ""), target, ATOM)
+        return Value(pointer.tight + ("[0]" if isinstance(target, Number) else ""), target, ATOM)
 
     def _step(self, node: c_ast.UnaryOp) -> Value:
         value = self.value(node.expr)

@@ -40,4 +40,5 @@ def _union_lines(name: str, types: Types) -> list[str]:
     for member in views:
         lines += [f"  get {member}() {{", f"    return this.{member}_view[0];", "  }"]
         lines += [f"  set {member}(value) {{", f"    this.{member}_view[0] = value;", "  }"]
-    return [*lines, "}"]
+    word = next(member for member, view in views.items() if view == "BigUint64Array")  # which keeps a NaN's bits
+    return [*lines, "  become(other) {", f"    this.{word} = other.{word};", "    return this;", "  }", "}"]

@@ -54,7 +54,7 @@ def declaration(node: c_ast.Decl, scope: Scope) -> str:
     scope.names[node.name] = wanted
     cell = isinstance(wanted, Number) and node.name in scope.cells
     fixed = cell or "const" in getattr(node.type, "quals", ()) or isinstance(wanted, ArrayOf | Record)
-    return f"{'const' if fixed else 'let'} {js_name(node.name)} = {f'new Cell({text})' if cell else text};"
+    return f"{'const' if fixed else 'let'} {js_name(node.name)} = {f'[{text}]' if cell else text};"
 
 
 def _initial(node: c_ast.Node, wanted: Type, scope: Scope) -> str:

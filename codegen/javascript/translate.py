@@ -12,20 +12,15 @@ from codegen.javascript.types import Function, NotTranslatable, Number, Record, 
 
 _TYPEDEFS = "typedef _Bool bool; typedef int int32_t; typedef unsigned uint32_t; typedef unsigned long uint64_t;\n"
 _HELPERS = """\
-class Cell {
-  constructor(v) {
-    this.v = v;
-  }
-}
 class Place {
   constructor(holder, key) {
     this.holder = holder;
     this.key = key;
   }
-  get v() {
+  get 0() {
     return this.holder[this.key];
   }
-  set v(value) {
+  set 0(value) {
     this.holder[this.key] = value;
   }
 }
@@ -52,8 +47,8 @@ _INTERFACE = ("forward", "inverse", "inverse_all", "inverse_nearest", "branch_of
 
 
 def javascript(files: dict[str, str], prefix: str) -> str:
-    """An expression whose value is an object of the functions of `prefix`_kin.h, by their names without the prefix, of
-    `pose()`, which makes an arm_pose, and of `cell()`, which makes a place for one number to come out, in its `v`.
+    """An expression whose value is an object of the functions of `prefix`_kin.h, by their names without the prefix,
+    and of `pose()`, which makes an arm_pose. Where C takes a pointer to a number, give an array of one.
 
     files  {file name: text} of C that was generated in doubles with its own mathematics
     Raises NotTranslatable where the C holds something that this translation does not know.
@@ -131,7 +126,6 @@ class _File:
             "return {",
             *functions,
             f"  pose: () => new {self._prefix}_pose(),",
-            "  cell: () => new Cell(0),",
             "};",
         ]
 

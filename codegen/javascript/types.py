@@ -1,8 +1,8 @@
 """The types that generated C uses, and what each is in JavaScript.
 
 A number is a number; a 64-bit word is a BigInt; an array is an array, of doubles a Float64Array; a struct is an object
-that is made once and filled in place, so that a pointer to it is the object itself. A pointer to a number is a `Cell`
-or a `Place`: an object whose `v` is the number.
+that is made once and filled in place, so that a pointer to it is the object itself. A pointer to a number is whatever
+holds the number as its entry 0: an array, or a `Place` within one or within a struct.
 """
 
 from __future__ import annotations
@@ -169,7 +169,7 @@ class Types:
     def filled(self, wanted: Type, target: str, source: str) -> list[str]:
         """Statements that copy a value into one that is there."""
         match wanted:
-            case Record(union=False):
+            case Record():
                 return [f"{target}.become({source});"]
             case ArrayOf():
                 return [f"fill({target}, {source});"]
