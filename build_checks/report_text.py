@@ -15,10 +15,10 @@ def to_text(report: AgreeReport) -> str:
     parts = [
         _heading(report.run),
         _table(report.results),
-        _shares(report),
+        "\n".join(share_lines(report)),
         _worst_lines(report),
-        _failure_lines(report),
-        _verdict(report),
+        failure_lines(report),
+        verdict(report),
     ]
     return "\n\n".join(part for part in parts if part) + "\n"
 
@@ -27,11 +27,12 @@ def _heading(run: Run) -> str:
     plural = "joint" if run.joints == 1 else "joints"
     arm = f"{run.arm}: {run.joints} {plural}, task {run.task}, {run.branches} branches"
     made = f"{run.real}, {run.mathematics} mathematics"
-    sampled = f"{run.samples:,} random joint vectors, seed {run.seed}; reach {_length(run, run.reach)}"
+    sampled = f"{run.samples:,} random joint vectors, seed {run.seed}; reach {length_text(run, run.reach)}"
     return f"{arm}; {made}\n{sampled}"
 
 
-def _length(run: Run, metres: float) -> str:
+def length_text(run: Run, metres: float) -> str:
+    """A length in the arm file's unit, with it."""
     return f"{metres * _UNITS[run.length_unit]:.4g} {run.length_unit}"
 
 
@@ -46,17 +47,17 @@ def _table(results: tuple[CheckResult, ...]) -> str:
     return "\n".join(lines)
 
 
-def _shares(report: AgreeReport) -> str:
+def share_lines(report: AgreeReport) -> tuple[str, ...]:
     """What a numeric inverse finds: it promises most solutions, not all."""
     if not report.run.numeric:
-        return ""
+        return ()
     lines = ["The inverse is numeric: its branch numbers hold within one call."]
     for check, what in ((Check.KNOWN, "known solutions"), (Check.SEARCH, "solutions that a search finds")):
         result = report.result(check)
         if total := result.cases:
             found = total - result.lacking
             lines.append(f"found {found:,} of {total:,} {what}: {100 * found / total:.2f} %")
-    return "\n".join(lines)
+    return tuple(lines)
 
 
 _WORST = (  # rows of the table of worst errors: check, what it is called there, what its budgets are multiplied by
@@ -66,10 +67,15 @@ _WORST = (  # rows of the table of worst errors: check, what it is called there,
 )
 
 
+def worst_rows(report: AgreeReport) -> list[tuple[CheckResult, str, int]]:
+    """Results that hold worst errors, what they are called, and what their budgets are multiplied by."""
+    rows = [(report.result(check), name, factor) for check, name, factor in _WORST]
+    return [row for row in rows if row[0].position and row[0].angle]
+
+
 def _worst_lines(report: AgreeReport) -> str:
     """Worst errors beside what is allowed, then the joint values of the poses that gave them."""
-    rows = [(report.result(check), name, factor) for check, name, factor in _WORST]
-    rows = [row for row in rows if row[0].position and row[0].angle]
+    rows = worst_rows(report)
     if not rows:
         return ""
     head = f"{'worst errors':<42} {'position':>14} {'of reach':>9} {'allowed':>8} {'angle, rad':>11} {'allowed':>8}"
@@ -83,7 +89,9 @@ def _worst_lines(report: AgreeReport) -> str:
 def _worst_row(run: Run, result: CheckResult, name: str, factor: int) -> str:
     position = result.position.error if result.position else 0.0
     angle = result.angle.error if result.angle else 0.0
-    where = f"{name:<42} {_length(run, position):>14} {position / run.reach:>9.2g} {factor * run.position_budget:>8.1g}"
+    where = (
+        f"{name:<42} {length_text(run, position):>14} {position / run.reach:>9.2g} {factor * run.position_budget:>8.1g}"
+    )
     return f"{where} {angle:>11.2g} {factor * run.angle_budget:>8.1g}"
 
 
@@ -99,7 +107,8 @@ def _literal(value: float, digits: int) -> str:
     return text if any(mark in text for mark in ".en") else text + ".0"
 
 
-def _failure_lines(report: AgreeReport) -> str:
+def failure_lines(report: AgreeReport) -> str:
+    """The first failing case, whole; empty where there is none."""
     if report.first_failure is None:
         return ""
     check, failure = report.first_failure
@@ -117,7 +126,8 @@ def _shown(value: Any) -> str:
     return str(value)
 
 
-def _verdict(report: AgreeReport) -> str:
+def verdict(report: AgreeReport) -> str:
+    """Whether the C agrees, and how to repeat the run."""
     run = report.run
     searched = f" --thorough {run.thorough}" if run.thorough else ""
     again = f"repeat with --samples {run.samples} --seed {run.seed}{searched}"

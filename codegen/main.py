@@ -22,11 +22,12 @@ from codegen.commands.cost import cost
 from codegen.commands.draw import draw
 from codegen.commands.explain import explain
 from codegen.commands.generate import generate
+from codegen.commands.report import report
 from codegen.commands.schema import schema
 from codegen.commands.stale import stale
 from codegen.errors import LinkwrightError
 
-COMMANDS = (generate, agree, check, explain, compare, draw, cost, stale, adopt, schema)  # in the order of the help
+COMMANDS = (generate, agree, check, explain, compare, draw, cost, report, stale, adopt, schema)  # in the order of the help
 
 app = typer.Typer(
     name="linkwright",

@@ -17,10 +17,10 @@ from pathlib import Path
 import pytest
 
 ROOT = Path(__file__).resolve().parent.parent
-SHIPPED = ("codegen", "templates_c", "arms", "build_checks")
-SUFFIXES = (".py", ".toml", ".j2", ".c", ".h", ".ld")
+SHIPPED = ("codegen", "templates_c", "templates_page", "arms", "build_checks")
+SUFFIXES = (".py", ".toml", ".j2", ".css", ".js", ".c", ".h", ".ld")
 # Import name where it is not the distribution's.
-DISTRIBUTIONS = {"elftools": "pyelftools"}
+DISTRIBUTIONS = {"elftools": "pyelftools", "markdown_it": "markdown-it-py"}
 
 
 def shipped_files(folder: Path) -> set[str]:

@@ -55,7 +55,8 @@ def cost(
 
     bounds = parse_budget(budget) if budget is not None else ()
     names = [target_named(name).name for name in target or ()] or [row.name for row in TARGETS]
-    report = _measured(wanted(arm, real, math, prefix, angle_error, angles), names, poses)
+    what = wanted(arm, real, math, prefix, angle_error, angles)
+    report = measured(what, what.generated(), names, poses)
     show_data(report.to_json() if as_json else cost_table(report))
     excesses = exceeded(report, bounds)
     for excess in excesses:
@@ -69,15 +70,14 @@ def _too_little_measured(report: CostReport, named: bool, bounded: bool) -> bool
     return (named and bool(report.not_measured)) or (bounded and not report.targets)
 
 
-def _measured(what: Wanted, names: list[str], poses: int) -> CostReport:
-    """One report of all targets, measured one after the other so that progress can be told."""
+def measured(what: Wanted, files: dict[str, str], names: list[str], poses: int) -> CostReport:
+    """One report of the named targets for the C in `files`, measured one after the other so that progress can be told."""
     import numpy as np
 
     from build_checks.cost import measure_cost
     from build_checks.reference import Reference
     from codegen.options import Mathematics
 
-    files = what.generated()
     joints = Reference(what.file.arm).random_joints(np.random.default_rng(_SEED), poses).tolist()
     libm = what.options.mathematics is Mathematics.LIBM
     reports = []

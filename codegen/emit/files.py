@@ -248,8 +248,13 @@ def _quartic_text(stage: StageText) -> list[str]:
 
 def command_line(source: Source, options: Options) -> str:
     name = re.sub(r"[^\w.+-]", "_", source.name, flags=re.ASCII)
+    return f"linkwright generate {name} {option_words(options)}"
+
+
+def option_words(options: Options) -> str:
+    """The options as they are typed."""
     mathematics = options.mathematics.value
-    text = f"linkwright generate {name} --real {options.real.c_name} --math {mathematics} --prefix {options.prefix}"
+    text = f"--real {options.real.c_name} --math {mathematics} --prefix {options.prefix}"
     text += "" if options.angle_error == 2 else f" --angle-error {options.angle_error}"
     return text if options.angles is Arithmetic.REAL else f"{text} --angles {options.angles.value}"
 

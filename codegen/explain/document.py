@@ -43,9 +43,21 @@ class Explained:
 
 def document(what: Explained, name: str) -> str:
     """The Markdown text. `name` is the arm file's name without its folder."""
+    lines = [
+        f"# {what.file.arm.name}: how its kinematics are derived",
+        "",
+        f"Made by linkwright {VERSION} from {name} (SHA-256 {what.file.digest}).",
+    ]
+    for heading, text in sections(what):
+        lines += ["", f"## {heading}", "", *text]
+    return _without_double_gaps(lines)
+
+
+def sections(what: Explained) -> list[tuple[str, list[str]]]:
+    """Heading and Markdown lines of each section, in order."""
     arm = what.file.arm
     plan = what.derivation.plan if what.derivation else None
-    sections: list[tuple[str, list[str]]] = [
+    return [
         ("The arm", arm_lines(arm)),
         ("How to read the formulas", [_READING]),
         ("Structure", structure_lines(arm, structure_of(arm))),
@@ -54,14 +66,6 @@ def document(what: Explained, name: str) -> str:
         ("Cost", _cost_lines(arm, what.derivation)),
         ("Sources", source_lines(plan, arm.task)),
     ]
-    lines = [
-        f"# {arm.name}: how its kinematics are derived",
-        "",
-        f"Made by linkwright {VERSION} from {name} (SHA-256 {what.file.digest}).",
-    ]
-    for heading, text in sections:
-        lines += ["", f"## {heading}", "", *text]
-    return _without_double_gaps(lines)
 
 
 def _without_double_gaps(lines: list[str]) -> str:
