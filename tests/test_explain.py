@@ -194,6 +194,10 @@ class Inverse:
         if choice >= len(roots):
             raise Search
         root = roots[choice]
+        if f"{name}_det" in values.known:  # the side that the root lies on, by the slope there
+            c, s = math.cos(root), math.sin(root)
+            slope = -f[1] * s + f[2] * c - 2 * f[3] * c * s + f[4] * (c * c - s * s)
+            values.known[f"{name}_side"] = math.copysign(1.0, slope * values.known[f"{name}_det"])
         if "*s" in shape[0]:
             values.known |= {f"{name}_rough.c": math.cos(root), f"{name}_rough.s": math.sin(root)}
         else:

@@ -16,10 +16,11 @@ from codegen.options import Options
 
 FREE_TURN, SLACK, STEP, EXCESS, FLAT = 40, 4096, 4, 16, 8
 FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
-# by significand bits: of the reach, and an angle, rad: twice the angle promised, as at any edge
-MISS = {24: (16, 67), 53: (86, 360)}
+# by significand bits: of the reach, and an angle, rad: no more than twice what is promised, as at any edge
+MISS = {24: (20, 67), 53: (86, 360)}
 RETRACED = {24: (8, 24), 53: (40, 110)}
 ROUGH = 512  # a double root is known to the root of this many roundings
+NEARLY_ALONG = 1024  # below, two nearly equal roots are told apart otherwise
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
@@ -53,7 +54,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("WIDE_SLACK", 64 * SLACK * u, "the same where what misses is brought nearer"),
         row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
         row("LEAST_ROUGH", _root(ROUGH * u), "part of a unit vector that a double root leaves unknown"),
-        row("NEARLY_ALONG", 1024 * u, "squared sine of the angle between two lines that hardly cross"),
+        row("NEARLY_ALONG", NEARLY_ALONG * u, "squared sine of the angle between two lines that hardly cross"),
         row("LEAST_MISS", miss * u * reach, "m, a clamped solution may miss the point by this"),
         row("LEAST_TURN", turn * spread * MP.mpf(u.numerator) / u.denominator, "and what it reads of the rotation, summed up"),
         row("LEAST_STEP", STEP * u, "of a limit and of 1 rad or m: by this a joint may pass it"),

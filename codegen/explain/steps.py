@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import assert_never
 
+from codegen.emit.tolerances import NEARLY_ALONG, reach_of
 from codegen.explain.formula import Line, Sheet
 from codegen.explain.markdown import block
 from codegen.explain.singular import free_text, merging_text
@@ -22,6 +23,7 @@ from codegen.inverse.plan import (
 )
 from codegen.inverse.tasks import Derivation
 from codegen.model import Task
+from codegen.options import RealType
 from codegen.program import Node, substituted
 
 Digits = tuple[int, ...]  # positions of a step's bits in the branch number, the lowest first
@@ -170,7 +172,29 @@ class StepText:
     def _quartic(self, step: QuarticStep, digits: Digits) -> list[str]:
         name = step.angle
         shape = f"{name}_f0 + {name}_f1*c + {name}_f2*s + {name}_f3*c^2 + {name}_f4*c*s = 0"
-        return self._four_roots(step, shape, f"in the cosine c and the sine s of {name}", digits)
+        lines = self._four_roots(step, shape, f"in the cosine c and the sine s of {name}", digits)
+        return [*lines, *self._nearly_equal(step)]
+
+    def _nearly_equal(self, step: QuarticStep) -> list[str]:
+        """What tells roots apart where the two equations of the elimination are nearly one."""
+        if step.det is None or step.det.is_constant:
+            return []
+        name = step.angle
+        self.sheet.alias(f"{name}_det", step.det)
+        self.sheet.say("REACH", f"{float(reach_of(self.derivation.goal.arm)):.9g}", "m, all links end to end")
+        along = {real: float(NEARLY_ALONG * real.rounding) for real in RealType}
+        self.sheet.say(
+            "NEARLY_ALONG",
+            f"{along[RealType.FLOAT]:.3g}",
+            f"in float; {along[RealType.DOUBLE]:.3g} in double: a squared sine below which two lines hardly cross",
+        )
+        return [
+            f"The equation rises through roots on the positive side where `{name}_det` is positive, and falls through them "
+            f"where it is negative. Where it vanishes, roots come in equal pairs that differ in the other joint: below, "
+            f"`{name}_side`, +1 on the positive side and -1 on the other, tells them apart.",
+            "",
+            *block(self.sheet.take()),
+        ]
 
     def _slide_quartic(self, step: SlideQuarticStep, digits: Digits) -> list[str]:
         name = step.angle

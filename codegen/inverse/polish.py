@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from codegen.exact import MP
 from codegen.geometry import Pair, Rigid, Vector
 from codegen.inverse.elimination import Equation, reduced_rhs, solved_for_z
 from codegen.inverse.plan import Least, RefineStep, Variable
@@ -173,7 +172,7 @@ def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node
     b = solver.builder
     nearly_along = b.input(NEARLY_ALONG)  # a tolerance, too
     solver.oracle.declare_real(nearly_along)
-    link = b.mul(_reach(solver), b.constant("LINK_SHARE", MP.mpf(1) / 4, "of the reach: about one link's"))
+    link = b.half(b.half(_reach(solver)))  # a length that lengths of this arm may have
     sizes = b.add(_across(solver, equations[1]), b.mul(b.square(link), _across(solver, equations[0])))
     return b.sub(b.square(det), b.mul(nearly_along, sizes))
 
@@ -201,7 +200,8 @@ def _by_one_equation(
 
     by_first = solved(first, values[0], slopes[0], slopes[1], 1)
     by_second = solved(second, values[1], slopes[1], slopes[0], -1)
-    says_more = b.sub(_across(solver, first), b.constant("SAYS_ENOUGH", MP.mpf(1) / 64, "squared part of a unit vector"))
+    enough = b.half(b.half(b.half(b.integer(1))))
+    says_more = b.sub(_across(solver, first), b.square(enough))
     return b.choice(says_more, by_first[0], by_second[0]), b.choice(says_more, by_first[1], by_second[1])
 
 

@@ -58,7 +58,7 @@ def js_name(name: str) -> str:
 
 @dataclass
 class Scope:
-    """What names stand for at a place of the file: their types, and which are held in an array of one as their address is taken."""
+    """What names stand for at a place of the file: their types, and which an array of one holds, as their address is taken."""
 
     types: Types
     names: dict[str, Type]
