@@ -37,6 +37,7 @@ NOT_COUNTED = (  # checks of the input, comparisons, copies, what runs seldom
     "past_limit",
     "settle_far",
     "travel",
+    "retrace",
 )
 
 COUNTED = """
@@ -58,6 +59,7 @@ struct Counted {
     Counted &operator+=(Counted other);
     Counted &operator-=(Counted other);
     Counted &operator*=(Counted other);
+    Counted &operator/=(Counted other);
 };
 #define OPERATION(sign, name) \\
     static Counted operator sign(Counted a, Counted b) { \\
@@ -69,6 +71,7 @@ OPERATION(+, add) OPERATION(-, add) OPERATION(*, multiply) OPERATION(/, divide)
 inline Counted &Counted::operator+=(Counted other) { return *this = *this + other; }
 inline Counted &Counted::operator-=(Counted other) { return *this = *this - other; }
 inline Counted &Counted::operator*=(Counted other) { return *this = *this * other; }
+inline Counted &Counted::operator/=(Counted other) { return *this = *this / other; }
 #define COMPARISON(sign) static bool operator sign(Counted a, Counted b) { return a.value sign b.value; }
 COMPARISON(<) COMPARISON(<=) COMPARISON(>) COMPARISON(>=) COMPARISON(==) COMPARISON(!=)
 static Counted sqrt(Counted x) { note(&Counts::root, x.constant); return Counted(std::sqrt(x.value), x.constant); }

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 from functools import cache
+from typing import TYPE_CHECKING
 
 import jinja2
 
@@ -23,6 +24,9 @@ from codegen.model import Arm, JointKind
 from codegen.options import Arithmetic, Options
 from codegen.places import TEMPLATES
 from codegen.program import Node
+
+if TYPE_CHECKING:
+    from codegen.tracking.steps_context import StepsContext
 
 _HELPERS = (
     "abs", "sqrt", "root", "exceeds", "angle_of", "sin_cos", "is_finite", "turn", "unit", "keep", "turns",
@@ -67,7 +71,7 @@ def environment() -> jinja2.Environment:
 
 
 def closed_form_files(
-    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: object | None = None
+    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: StepsContext | None = None
 ) -> dict[str, str]:
     """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm whose inverse is in closed form.
 
@@ -97,7 +101,7 @@ def pruned(template: str, context: dict[str, object]) -> str:
 
 
 def _context(
-    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: object | None
+    arm: Arm, derivation: Derivation, options: Options, source: Source, steps: StepsContext | None
 ) -> dict[str, object]:
     constants = Constants(options)
     forward = MotionText(arm, options, constants).forward()
@@ -121,7 +125,7 @@ def _context(
             "matches": arm.task.matches,
             "held": arm.held,
             "joints": joints,
-            "branch_text": _branch_text(stages, derivation.plan.branches),
+            "branch_text": [*_branch_text(stages, derivation.plan.branches), *_last_steps_text(steps)],
         },
         "command": command_line(source, options),
         "digest": source.digest,
@@ -229,6 +233,15 @@ def _branch_text(stages: list[StageText], branches: int) -> list[str]:
         else:
             lines += _quartic_text(stage)
     return lines
+
+
+def _last_steps_text(steps: StepsContext | None) -> list[str]:
+    if steps is None:
+        return []
+    return [
+        "  Where its formulas lose digits, damped Newton steps bring a branch onto the pose: at the very worst",
+        f"  {steps.most} evaluations of the Jacobian, {steps.most_free} where the pose leaves joints free.",
+    ]
 
 
 def _quartic_text(stage: StageText) -> list[str]:

@@ -60,6 +60,17 @@ class StepsContext:
     plane_rows: tuple[tuple[str, str, str], ...]
 
 
+    @property
+    def most(self) -> int:
+        """Evaluations of the Jacobian from one place at the very worst, where the pose leaves no joint free."""
+        return self.search_steps + self.finishing_steps + 1
+
+    @property
+    def most_free(self) -> int:
+        """The same where the pose leaves joints free: each goes to its seed in legs, each with a look and its own steps."""
+        return self.most + self.most_loose * ((self.legs + 2) * (self.most + 1) + self.most + 1) + 1
+
+
 def steps_context(arm: Arm, shape: ArmShape, options: Options, search_steps: int) -> StepsContext:
     real = options.real
     plane = bool(shape.plane)
