@@ -58,12 +58,16 @@ def js_name(name: str) -> str:
 
 @dataclass
 class Scope:
-    """What names stand for at a place of the file: their types, and which an array of one holds, as their address is taken."""
+    """What names stand for at a place of the file: their types, and which are held in an array of one.
+
+    cells     those whose address is taken
+    function  the one whose body this is; empty outside
+    """
 
     types: Types
     names: dict[str, Type]
     cells: frozenset[str] = frozenset()
-    function: str = ""  # the one whose body this is
+    function: str = ""
 
     def inner(self) -> Scope:
         """A block within this one."""
