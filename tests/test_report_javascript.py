@@ -142,6 +142,11 @@ static void arm_change(arm_pair *pair, arm_real *number, arm_real tail[2])
     tail[1] = 0.125;
 }
 
+static arm_real arm_taken(const arm_real (*rows)[2], unsigned row)
+{
+    return rows[row][0] - rows[row][1];
+}
+
 static arm_pair arm_swapped(const arm_pair *pair)
 {
     arm_pair other = *pair;
@@ -157,6 +162,8 @@ arm_real arm_f(void)
     arm_pairs some = {{{3.0, 4.0}, {5.0, 6.0}}, {0.5, 0.25, 0.75}, 2u};
     arm_pairs others;
     arm_real local = 10.0;
+    arm_real *number = &local;
+    arm_real several[2][2] = {{2.0, 0.5}, {4.0, 1.0}};
     arm_pair *const second = &some.list[1];
 
     b.c = 50.0;
@@ -168,6 +175,12 @@ arm_real arm_f(void)
     arm_change(second, &local, &some.x[1]);
     arm_change(&b, &some.x[0], others.x);
     *second = arm_swapped(second);
+    *number += arm_taken((const arm_real (*)[2])several, 1u);
+    number = several[0];
+    *number += arm_taken((const arm_real (*)[2])several[1], 0u) * several[0][0];
+    number = &several[1][1];
+    *number -= arm_taken((const arm_real (*)[2])several, 0u);
+    local += several[1][1];
     return a.c + 2.0 * a.s + 3.0 * b.c + 5.0 * b.s + 7.0 * some.list[0].s + 11.0 * some.list[1].c
             + 13.0 * some.list[1].s + 17.0 * others.list[0].c + 19.0 * others.list[1].s + 23.0 * local
             + 29.0 * some.x[0] + 31.0 * some.x[2] + 37.0 * others.x[0] + 41.0 * others.x[1] + (arm_real)others.count;

@@ -58,12 +58,16 @@ def js_name(name: str) -> str:
 
 @dataclass
 class Scope:
-    """What names stand for at a place of the file: their types, and which an array of one holds, as their address is taken."""
+    """What names stand for at a place of the file: their types, and which are held in an array of one.
+
+    cells     those whose address is taken
+    function  the one whose body this is; empty outside
+    """
 
     types: Types
     names: dict[str, Type]
     cells: frozenset[str] = frozenset()
-    function: str = ""  # the one whose body this is
+    function: str = ""
 
     def inner(self) -> Scope:
         """A block within this one."""
@@ -223,9 +227,11 @@ class Expressions:
     def _cast(self, node: c_ast.Cast) -> Value:
         wanted = self.scope.types.of(node.to_type)
         value = self.value(node.expr)
-        if not isinstance(wanted, Number):
-            return Value(value.text, wanted, value.rank)
-        return converted(value, wanted)
+        if isinstance(wanted, Number):
+            return converted(value, wanted)
+        if isinstance(wanted, PointerTo) and _pointed_at(value.type) == _row_of(wanted.target):
+            return Value(f"[{value.text}]", wanted, ATOM)  # one row, as rows
+        return Value(value.text, wanted, value.rank)
 
     def condition(self, node: c_ast.Node) -> Value:
         return converted(self.value(node), BOOL)
@@ -251,3 +257,15 @@ class Expressions:
             return Value(f"{target.text} {node.op} {self.as_type(node.rvalue, REAL).text}", REAL)
         result = converted(operation(op, target, self.value(node.rvalue)), target.type)
         return Value(f"{target.text} = {result.text}", target.type)
+
+
+def _pointed_at(pointer: Type) -> Type | None:
+    """What the entries of an array or of what a pointer leads to are."""
+    if isinstance(pointer, ArrayOf):
+        return pointer.element
+    return pointer.target if isinstance(pointer, PointerTo) else None
+
+
+def _row_of(rows: Type) -> Type | None:
+    """What the entries of a row are; None where it is no row."""
+    return rows.element if isinstance(rows, ArrayOf) else None
