@@ -77,6 +77,12 @@ class Flat:
     def __len__(self) -> int:
         return len(self.rows)
 
+    def take(self, which: Flags | slice) -> Flat:
+        return Flat(self.rows[which], self.branches[which], self.q[which], self.status[which])
+
+
+SINGULAR_STRETCH = 2.0  # the accuracy promise is doubled at singular and boundary poses
+
 
 def flatten(found: Branches) -> Flat:
     rows, branches = np.nonzero(is_in(found.status, SOLVED))

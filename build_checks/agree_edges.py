@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from build_checks.agree_bench import SOLVED, Bench, any_in_row, flatten, is_in
+from build_checks.agree_bench import SINGULAR_STRETCH, SOLVED, Bench, any_in_row, flatten, is_in
 from build_checks.agree_poses import Degenerate, classify, degenerate, response, right_angles
 from build_checks.agree_sets import check_branch_of, check_known
 from build_checks.agree_solutions import inspect, named
@@ -17,7 +17,6 @@ from build_checks.reference_task import length
 from build_checks.report import Check, Failure
 from codegen.model import Task
 
-_STRETCH = 2.0  # the accuracy promise is doubled at singular and boundary poses
 _SEEDS = 3  # different seeds for every singular pose
 _RANK_LOST = 1e-9  # smallest singular value of a place that is singular but for rounding in float64
 _BENT = 8.0  # units of the number type
@@ -52,7 +51,7 @@ def _solved_edge(bench: Bench, rng: np.random.Generator, q: Array, kind: str) ->
     """
     if len(q) == 0:
         return
-    batch = bench.batch(q, _seeds(bench, rng, q), kind, _STRETCH)
+    batch = bench.batch(q, _seeds(bench, rng, q), kind, SINGULAR_STRETCH)
     found, _ = inspect(bench, batch)
     unsolved = ~any_in_row(is_in(found.status, SOLVED))
     own = bench.c.branch_of(bench.c.rounded(q))
@@ -79,7 +78,7 @@ def _free_joints(bench: Bench, rng: np.random.Generator, places: Degenerate, kin
     many = np.repeat(q, _SEEDS, axis=0)
     _says_singular(bench, many, _seeds(bench, rng, many), kind, False)
     turned = _seeds(bench, rng, q) + np.where(bench.reference.revolute, rng.choice([-7.0, 7.0], q.shape), 0.0)
-    inspect(bench, bench.batch(q, turned, f"{kind}, seeds past the limits", _STRETCH))
+    inspect(bench, bench.batch(q, turned, f"{kind}, seeds past the limits", SINGULAR_STRETCH))
 
 
 def _says_singular(bench: Bench, q: Array, seeds: Array, kind: str, from_itself: bool) -> None:
@@ -88,7 +87,7 @@ def _says_singular(bench: Bench, q: Array, seeds: Array, kind: str, from_itself:
     Undecided: rounding of the pose bends the place by more than an implementation can tell from bent on purpose, or the
     seed lies outside the bounds within which the joint is free. But some places at least must say it.
     """
-    batch = bench.batch(q, seeds, kind, _STRETCH)
+    batch = bench.batch(q, seeds, kind, SINGULAR_STRETCH)
     inspect(bench, batch)
     own = bench.c.branch_of(bench.c.rounded(q))
     back, status = bench.c.inverse(batch.packed, own, batch.seeds)
@@ -113,7 +112,7 @@ def _beside(bench: Bench, rng: np.random.Generator, q: Array) -> None:
     low, high = bench.reference.span()
     moves = rng.normal(size=q.shape) * units * _small(bench, rng, len(q))
     beside = np.clip(q + moves, low, high)
-    batch = bench.batch(beside, _seeds(bench, rng, q), "beside a singular pose or the edge of the reach", _STRETCH)
+    batch = bench.batch(beside, _seeds(bench, rng, q), "beside a singular pose or the edge of the reach", SINGULAR_STRETCH)
     found, _ = inspect(bench, batch)
     check_known(bench, batch, found)
     check_branch_of(bench, bench.exact(beside), batch, np.arange(len(q)))
@@ -134,7 +133,7 @@ def _across_folds(bench: Bench, rng: np.random.Generator, places: Degenerate) ->
         return
     steps = across * _small(bench, rng, len(q)) * rng.choice([-1.0, 1.0], (len(q), 1))
     targets = bench.reading.moved(bench.reference.chain(q), steps[:, :3] * bench.reference.reach, steps[:, 3:])
-    batch = bench.batch(q, _seeds(bench, rng, q), "moved across the edge of the reach", _STRETCH)
+    batch = bench.batch(q, _seeds(bench, rng, q), "moved across the edge of the reach", SINGULAR_STRETCH)
     inspect(bench, replace(batch, packed=bench.c.pack(targets)))
 
 

@@ -85,14 +85,14 @@ def _judge_distinct(
 def _closed(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
     for start in range(0, len(flat), _PART):
         part = slice(start, start + _PART)
-        _closed_part(bench, batch, found, Flat(flat.rows[part], flat.branches[part], flat.q[part], flat.status[part]))
+        _closed_part(bench, batch, found, flat.take(part))
 
 
 def _closed_part(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
     """Solves the pose of each solution again: the two sets must be one."""
     poses = bench.reference.forward(flat.q)
     alike = _read_alike(bench, found, flat, poses)
-    poses, flat = poses.take(alike), Flat(flat.rows[alike], flat.branches[alike], flat.q[alike], flat.status[alike])
+    poses, flat = poses.take(alike), flat.take(alike)
     packed = bench.c.pack(poses)
     again = bench.c.inverse_all(packed, batch.seeds[flat.rows])
     first = Branches(found.q[flat.rows], found.status[flat.rows], found.solved[flat.rows])

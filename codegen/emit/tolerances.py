@@ -14,7 +14,7 @@ from codegen.exact import MP, Angle
 from codegen.model import Arm, JointKind, Task
 from codegen.options import Options
 
-FREE_TURN, SLACK, STEP, EXCESS, FLAT = 40, 4096, 4, 16, 8
+FREE_TURN, SLACK, STEP, EXCESS, FLAT = 32, 4096, 4, 16, 8
 FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
 # by significand bits: of the reach, and an angle, rad: no more than twice what is promised, as at any edge
 MISS = {24: (20, 67), 53: (86, 360)}
