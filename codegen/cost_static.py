@@ -134,22 +134,41 @@ def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
 
 def stage_counts(derivation: Derivation, options: Options) -> list[tuple[OperationCount, int]]:
     """Per stage (what no choice changes first): one run of it, and how many roots its choice has."""
-    unread = InverseText(derivation, options, Constants(options)).unread
-    choices = [step for step in derivation.plan.steps if step.roots > 1]
-    counts = [_held_count(derivation), *(_NOTHING for _ in choices)]
-    done: set[Node] = set()
-    number = 0
-    for step in derivation.plan.steps:
-        number += step.roots > 1
-        own, repeated = _nodes_of(step)
-        for node in _new([*own, *_carried_for_a_free_joint(step, number)], done):
-            counts[node.stage] += counted([node])
-        for node in _new(repeated, done):
-            counts[node.stage] += counted([node]).times(_passes(step) if node.stage == number else 1)
-        counts[number] += _form_count(derivation, step, unread)
-        if step.roots == 4:
-            counts[number - 1] += _search_count(step, options)
-    return list(zip(counts, [1, *(step.roots for step in choices)], strict=True))
+    text = InverseText(derivation, options, Constants(options))
+    made = [_Made(number, frozenset(text.carried)) for number in range(len(text.stages))]
+    counts = [_held_count(derivation), *(_NOTHING for _ in text.stages[1:])]
+    for number, steps in enumerate(text.stages):
+        for step in steps:
+            own, repeated = _nodes_of(step)
+            if step.roots == 4:  # its coefficients stand at the end of the stage before
+                counts[number - 1] += counted(made[number - 1].new(own)) + _search_count(step, options)
+                own = []
+            counts[number] += counted(made[number].new([*own, *_carried_for_a_free_joint(step, number)]))
+            for node in made[number].new(repeated):
+                counts[number] += counted([node]).times(_passes(step) if node.stage == number else 1)
+            counts[number] += _form_count(derivation, step, text.unread)
+    for node in text.carried:
+        counts[node.stage] += counted(made[node.stage].new([node]))
+    return list(zip(counts, [1, *(steps[0].roots for steps in text.stages[1:])], strict=True))
+
+
+class _Made:
+    """The values that one stage makes: what it does not read from the stages before, each once."""
+
+    def __init__(self, number: int, carried: frozenset[Node]) -> None:
+        self._number, self._carried = number, carried
+        self._done: set[Node] = set()
+
+    def new(self, roots: list[Node]) -> list[Node]:
+        found, waiting = [], list(roots)
+        while waiting:
+            node = waiting.pop()
+            read = node.stage < self._number and node in self._carried
+            if not read and node not in self._done:
+                self._done.add(node)
+                found.append(node)
+                waiting += node.args
+        return found
 
 
 def _held_count(derivation: Derivation) -> OperationCount:
@@ -159,12 +178,6 @@ def _held_count(derivation: Derivation) -> OperationCount:
     for index in goal.arm.held_indices:
         total += _offset_count(derivation, index) + OperationCount(sine_cosine_pairs=int(index in goal.held_pairs))
     return total
-
-
-def _new(roots: list[Node], done: set[Node]) -> list[Node]:
-    found = [node for node in reachable(roots) if node not in done]
-    done.update(found)
-    return found
 
 
 def _passes(step: Step) -> int:

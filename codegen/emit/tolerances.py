@@ -17,7 +17,7 @@ from codegen.options import Options
 FREE_TURN, SLACK, STEP, EXCESS, FLAT = 32, 4096, 4, 16, 8
 FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
 # by significand bits: of the reach, and an angle, rad: no more than twice what is promised, as at any edge
-MISS = {24: (20, 67), 53: (86, 360)}
+MISS = {24: (16, 67), 53: (86, 360)}
 RETRACED = {24: (8, 24), 53: (40, 110)}
 ROUGH = 512  # a double root is known to the root of this many roundings
 NEARLY_ALONG = 1024  # below, two nearly equal roots are told apart otherwise

@@ -215,8 +215,15 @@ class Plan:
 
     @property
     def retraced(self) -> bool:
-        """Whether formulas lose digits, so that a solution may have to be brought nearer by steps."""
-        return any(isinstance(step, RefineStep) for step in self.steps)
+        """Whether a solution may have to be brought nearer by steps.
+
+        Formulas lose digits where roots are polished. And where the size of a balance hangs on an earlier root, two folds
+        may meet: the first joint then takes what the pose's rounding leaves, and the second cannot make up for it.
+        """
+        return any(
+            isinstance(step, RefineStep) or (isinstance(step, BalanceStep) and step.size is not None and step.size.stage > 0)
+            for step in self.steps
+        )
 
     @property
     def branches(self) -> int:
