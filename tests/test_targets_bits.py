@@ -21,7 +21,7 @@ from build_checks.emulate_contract import Interface, Portable, TargetInterface, 
 from build_checks.reference import Reference
 from build_checks.targets import AVR, HOST, M0_PLUS, M3, M4F, M7, RV32, Target
 from codegen.armfile import read_arm
-from codegen.options import Options, RealType
+from codegen.options import Arithmetic, Options, RealType
 from codegen.pipeline import generate
 
 ARMS = Path(__file__).parents[1] / "arms"
@@ -38,8 +38,8 @@ each_case = pytest.mark.parametrize(
 
 
 @cache
-def generated(name: str, real: RealType) -> dict[str, str]:
-    return generate(read_arm(ARMS / f"{name}.toml").arm, Options(real=real))
+def generated(name: str, real: RealType, angles: Arithmetic = Arithmetic.REAL) -> dict[str, str]:
+    return generate(read_arm(ARMS / f"{name}.toml").arm, Options(real=real, angles=angles))
 
 
 @cache
@@ -59,9 +59,11 @@ def joint_vectors(name: str, count: int) -> tuple[tuple[float, ...], ...]:
 
 
 @cache
-def on_host(name: str, real: RealType, count: int) -> tuple[tuple[bytes, ...], tuple[Portable, ...]]:
+def on_host(
+    name: str, real: RealType, count: int, angles: Arithmetic
+) -> tuple[tuple[bytes, ...], tuple[Portable, ...]]:
     """The poses, and every result on this machine."""
-    files = generated(name, real)
+    files = generated(name, real, angles)
     interface = read_interface(files, "arm")
     host = TargetInterface(interface, HOST)
     vectors = [host.pack(q) for q in joint_vectors(name, count)]
@@ -102,11 +104,13 @@ def spoilt(pose: bytes, index: int, size: int) -> bytes:
     return struct.pack(f"<12{kind}", *entries)
 
 
-def differing(name: str, real: RealType, target: Target, count: int = VECTORS) -> list[str]:
+def differing(
+    name: str, real: RealType, target: Target, count: int = VECTORS, angles: Arithmetic = Arithmetic.REAL
+) -> list[str]:
     need_target(HOST)
     need_target(target)
-    files = generated(name, real)
-    poses, here = on_host(name, real, count)
+    files = generated(name, real, angles)
+    poses, here = on_host(name, real, count, angles)
     interface = read_interface(files, "arm")
     vectors = [TargetInterface(interface, target).pack(q) for q in joint_vectors(name, count)]
     there = results_on(target, files, interface, vectors, poses)
@@ -119,6 +123,12 @@ def differing(name: str, real: RealType, target: Target, count: int = VECTORS) -
 @pytest.mark.parametrize("name", FEW_ARMS)
 def test_every_result_has_the_same_bits_on_the_target(name: str, target: Target, real: RealType) -> None:
     assert differing(name, real, target) == []
+
+
+@pytest.mark.parametrize("target", [M4F, M0_PLUS, RV32, AVR], ids=lambda target: target.name)
+@pytest.mark.parametrize("name", FEW_ARMS)
+def test_angles_in_whole_numbers_have_the_same_bits_too(name: str, target: Target) -> None:
+    assert differing(name, RealType.FLOAT, target, FEWER_VECTORS, Arithmetic.INTEGER) == []
 
 
 def test_a_fused_multiply_add_would_be_seen() -> None:

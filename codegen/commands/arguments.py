@@ -127,7 +127,9 @@ def _angles_fault(angles: str, real: str, math: str) -> list[Fault]:
     if math == Mathematics.LIBM.value:
         return [Fault("--angles", "says nothing about --math libm", "leave one of the two out")]
     if real == RealType.DOUBLE.c_name:
-        return [Fault("--angles", "whole numbers of 32 bits hold no double", "choose --real float, or leave --angles out")]
+        return [
+            Fault("--angles", "whole numbers of 32 bits hold no double", "choose --real float, or leave --angles out")
+        ]
     return []
 
 
