@@ -31,7 +31,7 @@ from codegen.inverse.plan import (
 )
 from codegen.inverse.tasks import Derivation
 from codegen.model import Arm
-from codegen.options import Options
+from codegen.options import Mathematics, Options
 from codegen.program import Node, Op, reachable
 
 
@@ -99,10 +99,16 @@ def forward_count(arm: Arm, options: Options) -> OperationCount:
     return motion_count(motion, [*pose.position, *(entry for row in pose.rotation for entry in row)])
 
 
-def jacobian_count(arm: Arm, options: Options) -> OperationCount:
+def jacobian_count(arm: Arm, options: Options, derivation: Derivation | None) -> OperationCount:
+    """Where the inverse takes Newton steps, the C makes the pose beside the Jacobian: they need both."""
+    with_pose = derivation is None or derivation.plan.retraced
     motion = MotionText(arm, options, Constants(options))
     _, columns = jacobian_nodes(motion.carrier)
-    return motion_count(motion, [entry for column in columns for vector in column for entry in vector])
+    results = [entry for column in columns for vector in column for entry in vector]
+    if with_pose:
+        pose = pose_nodes(motion.carrier)
+        results += [*pose.position, *(entry for row in pose.rotation for entry in row)]
+    return motion_count(motion, results)
 
 
 def motion_count(motion: MotionText, results: list[Node]) -> OperationCount:
@@ -121,15 +127,30 @@ def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
     stages = stage_counts(derivation, options)
     one = all_branches = _NOTHING
     runs = 1
-    for count, roots in stages:
+    image = _mirror_count(derivation, options)
+    for number, (count, roots) in enumerate(stages):
         runs *= roots
         one += count
-        all_branches += count.times(runs)
+        if image is not None and number == len(stages) - 1:
+            all_branches += (count + image).times(runs // 2)
+        else:
+            all_branches += count.times(runs)
     worst = any(step.roots == 4 for step in derivation.plan.steps)
     if worst:
         check = _reach_check(derivation, options)
         one, all_branches = one + check, all_branches + check.times(runs)
     return InverseCount(one, all_branches, worst)
+
+
+def _mirror_count(derivation: Derivation, options: Options) -> OperationCount | None:
+    """What the mirror image of a solution takes, which changes signs only: its angles. None where there is none."""
+    flips = InverseText(derivation, options, Constants(options)).mirror()
+    if not flips:
+        return None
+    total = _NOTHING
+    for flip in flips:
+        total += _settled_turn(derivation, flip.joint, _settled(options))
+    return total
 
 
 def stage_counts(derivation: Derivation, options: Options) -> list[tuple[OperationCount, int]]:
@@ -143,10 +164,10 @@ def stage_counts(derivation: Derivation, options: Options) -> list[tuple[Operati
             if step.roots == 4:  # its coefficients stand at the end of the stage before
                 counts[number - 1] += counted(made[number - 1].new(own)) + _search_count(step, options)
                 own = []
-            counts[number] += counted(made[number].new([*own, *_carried_for_a_free_joint(step, number)]))
+            counts[number] += counted(made[number].new(own))
             for node in made[number].new(repeated):
                 counts[number] += counted([node]).times(_passes(step) if node.stage == number else 1)
-            counts[number] += _form_count(derivation, step, text.unread)
+            counts[number] += _form_count(derivation, step, text.unread, _settled(options))
     for node in text.carried:
         counts[node.stage] += counted(made[node.stage].new([node]))
     return list(zip(counts, [1, *(steps[0].roots for steps in text.stages[1:])], strict=True))
@@ -190,7 +211,8 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
         case DirectionStep():
             return [node for node in (step.turned,) if node] + [step.x, step.y], []
         case BalanceStep():
-            return [node for node in (step.size, step.flat) if node] + [step.target, step.square, step.x, step.y], []
+            extra = [step.flat] if step.size is None else [step.flat, step.size, step.target]
+            return [node for node in extra if node] + [step.square, step.x, step.y], []
         case SlideStep():
             return [step.numerator, step.denominator], []
         case SlideRootsStep():
@@ -203,20 +225,16 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
             assert_never(step)
 
 
-def _carried_for_a_free_joint(step: Step, number: int) -> list[Node]:
-    """Values that only a joint left free reads, but that an earlier stage prepares every time."""
-    absorbed = step.absorbed if isinstance(step, DirectionStep) else None
-    return [] if absorbed is None else [n for n in reachable([absorbed.x, absorbed.y]) if n.stage < number]
-
-
-def _form_count(derivation: Derivation, step: Step, unread: frozenset[Pair]) -> OperationCount:
+def _form_count(
+    derivation: Derivation, step: Step, unread: frozenset[Pair], settled: OperationCount
+) -> OperationCount:
     """What the form adds to the formulas of its step."""
     match step:
         case DirectionStep():
             unit = _NOTHING if step.pair in unread else UNIT
-            return unit + _settled_turn(derivation, step.joint)
+            return unit + _settled_turn(derivation, step.joint, settled)
         case BalanceStep():
-            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint)
+            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint, settled)
         case SlideStep():
             return _division(step) + _settled_slide(derivation, step.joint)
         case SlideRootsStep():
@@ -232,7 +250,7 @@ def _form_count(derivation: Derivation, step: Step, unread: frozenset[Pair]) -> 
                 changes += OperationCount(additions=1) if isinstance(variable.during, Node) else _TURN_BY
             total = (_NEWTON + changes).times(step.passes)
             for variable in step.variables:
-                total += _settled_variable(derivation, variable)
+                total += _settled_variable(derivation, variable, settled)
             return total
         case _:
             assert_never(step)
@@ -259,23 +277,29 @@ def _offset_count(derivation: Derivation, joint: int) -> OperationCount:
     return OperationCount(additions=int(not derivation.goal.chain.joints[joint].offset.is_exactly(0)))
 
 
-def _settled_turn(derivation: Derivation, joint: int | None) -> OperationCount:
+def _settled(options: Options) -> OperationCount:
+    """What one returned angle takes; the library's arc tangent is handed a sine that is no negative zero."""
+    return SETTLE + OperationCount(arc_tangents=1, additions=int(options.mathematics is Mathematics.LIBM))
+
+
+def _settled_turn(derivation: Derivation, joint: int | None, settled: OperationCount) -> OperationCount:
     """The angle that is returned; a pair whose joint a later step settles, or that is no joint's, has none."""
     if joint is None:
         return _NOTHING
-    return OperationCount(arc_tangents=1) + _offset_count(derivation, joint) + SETTLE
+    some_offset = any(joint.turns and not joint.offset.is_exactly(0) for joint in derivation.goal.chain.joints)
+    return settled + OperationCount(additions=int(some_offset))  # one loop takes the offset off every angle, 0 or not
 
 
 def _settled_slide(derivation: Derivation, joint: int | None) -> OperationCount:
     return _NOTHING if joint is None else _offset_count(derivation, joint)
 
 
-def _settled_variable(derivation: Derivation, variable: Variable) -> OperationCount:
+def _settled_variable(derivation: Derivation, variable: Variable, settled: OperationCount) -> OperationCount:
     if variable.joint >= len(derivation.goal.chain.joints):
         return _NOTHING
     if isinstance(variable.after, Node):
         return _settled_slide(derivation, variable.joint)
-    return _settled_turn(derivation, variable.joint)
+    return _settled_turn(derivation, variable.joint, settled)
 
 
 def _reach_check(derivation: Derivation, options: Options) -> OperationCount:

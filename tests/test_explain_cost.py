@@ -36,6 +36,7 @@ NOT_COUNTED = (  # checks of the input, comparisons, copies, what runs seldom
     "take_pose",
     "past_limit",
     "settle_far",
+    "turned_to",
     "travel",
     "retrace",
 )
@@ -186,18 +187,20 @@ def test_the_counts_are_those_of_the_running_c(arm: Arm, tmp_path: Path) -> None
     inverse = inverse_count(derivation, OPTIONS)
     assert not inverse.worst
     counts, complete = measured(arm, tmp_path, (*NOT_COUNTED, "reached"))
-    assert counts[:2] == [forward_count(arm, OPTIONS), jacobian_count(arm, OPTIONS)]
+    assert counts[:2] == [forward_count(arm, OPTIONS), jacobian_count(arm, OPTIONS, derivation)]
     assert complete
-    left_out = additions_of_choices(derivation)
+    sums, products = operations_of_choices(derivation)
     for done, told, runs in zip(counts[2:], (inverse.one_branch, inverse.all_branches), (1, 2 * c_branches(arm)), strict=True):
-        assert 0 <= told.additions - done.additions <= left_out * runs
-        assert replace(done, additions=told.additions) == told
+        assert 0 <= told.additions - done.additions <= sums * runs
+        assert 0 <= told.multiplications - done.multiplications <= products * runs
+        assert replace(done, additions=told.additions, multiplications=told.multiplications) == told
 
 
-def additions_of_choices(derivation: Derivation) -> int:
-    """Of which the C does only those on the side that it takes."""
+def operations_of_choices(derivation: Derivation) -> tuple[int, int]:
+    """Sums and products of which the C does only those on the side that it takes."""
     nodes = reachable([node for step in derivation.plan.steps for node in step_nodes(step)])
-    return sum(arg.op is Op.SUM for node in nodes if node.op is Op.CHOICE for arg in node.args[1:])
+    sides = reachable([arg for node in nodes if node.op is Op.CHOICE for arg in node.args[1:]])
+    return sum(node.op is Op.SUM for node in sides), sum(node.op is Op.PRODUCT for node in sides)
 
 
 def c_branches(arm: Arm) -> int:

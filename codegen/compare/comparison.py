@@ -179,7 +179,7 @@ def _common(old: Side, new: Side, joints: JointMap, rng: np.random.Generator, co
 def _costs(old: Side, new: Side, options: Options) -> tuple[Cost, ...]:
     rows = [
         Cost("arm_forward", *(forward_count(side.arm, options) for side in (old, new))),
-        Cost("arm_jacobian", *(jacobian_count(side.arm, options) for side in (old, new))),
+        Cost("arm_jacobian", *(jacobian_count(side.arm, options, side.derivation) for side in (old, new))),
     ]
     inverse = [inverse_count(side.derivation, options) if side.derivation else None for side in (old, new)]
     rows.append(Cost("arm_inverse, one branch", *(count.one_branch if count else None for count in inverse)))

@@ -96,11 +96,11 @@ def _mathematics(options: Options) -> dict[str, Any]:
 
 def _operations(arm: Arm, options: Options) -> dict[str, Any]:
     """Counted on the formulas; of an inverse that tracks from its seed there is no count."""
+    derivation = derive(arm)
     found: dict[str, OperationCount] = {
         "forward": forward_count(arm, options),
-        "jacobian": jacobian_count(arm, options),
+        "jacobian": jacobian_count(arm, options, derivation),
     }
-    derivation = derive(arm)
     if derivation is not None:
         inverse = inverse_count(derivation, options)
         found |= {"inverse, one branch": inverse.one_branch, "inverse_all": inverse.all_branches}

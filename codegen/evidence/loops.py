@@ -8,8 +8,11 @@ from dataclasses import dataclass
 
 _FUNCTION = re.compile(r"^(?:\w+ )+\*?(\w+)\([^;{]*\)\n\{", re.M)
 _LOOP = re.compile(r"\b(?:for \(([^\n]*)\) \{|while \(|do \{)")
-_HEAD = re.compile(r"(?:unsigned|int|\w+) (\w+) = (\w+); (?:[^;]*\()?\1 (<=?) (\w+)\)?; (?:\+\+\1|\1\+\+)")
-_NAMED = re.compile(r"#define (\w+)\s+(\d+)u?\b")
+_HEAD = re.compile(r"\w+(?: \w+)* (\w+) = ([^;]+); ([^;]+); (\+\+|--)\1")
+_BOUND = re.compile(r"(\w+) (<=|<|>=|>) ([^()&|]+)")
+_DEFINED = re.compile(r"#define (\w+)\s+(\d+)u?\b")
+_LISTED = re.compile(r"^    ([A-Z][A-Z0-9_]*) = (0x[0-9A-F]+|\d+)u?,?(?:\s|$)", re.M)  # in an enum
+_TERM = re.compile(r"(0x[0-9A-Fa-f]+|\d+)u?")
 
 
 @dataclass(frozen=True, slots=True)
@@ -25,7 +28,8 @@ class Loop:
 def loops_of(files: Mapping[str, str], prefix: str) -> tuple[Loop, ...]:
     """The loops of `<prefix>_kin.c` in the order of the text."""
     text = files[f"{prefix}_kin.c"]
-    named = {name: int(value) for name, value in _NAMED.findall(files[f"{prefix}_kin.h"] + text)}
+    pairs = _DEFINED.findall(files[f"{prefix}_kin.h"] + text) + _LISTED.findall(text)
+    named = {name: int(value, 0) for name, value in pairs}
     return tuple(_loops(text, named))
 
 
@@ -39,16 +43,32 @@ def _loops(text: str, named: dict[str, int]) -> Iterator[Loop]:
 
 
 def _passes(head: str, named: dict[str, int]) -> int | None:
+    """Between the first value of the counter and the bound that is a number; further conditions only end it sooner."""
     found = _HEAD.fullmatch(head)
     if found is None:
         return None
-    start, end = (_number(word, named) for word in (found[2], found[4]))
-    if start is None or end is None:
+    counter, first, condition, step = found.groups()
+    # a counter of an outer loop may be as small as its own first value: 0 bounds the passes
+    start = _number(first, {name: 0 if name.islower() else value for name, value in named.items()})
+    bounds = [_number(bound[3], named) for bound in _BOUND.finditer(condition) if bound[1] == counter]
+    ends = [bound for bound in bounds if bound is not None]
+    if start is None or not ends:
         return None
-    named[found[1]] = end if found[3] == "<=" else end - 1
-    return named[found[1]] - start + 1
+    within = "=" in condition.split(counter, 1)[1][:4]
+    if step == "--":
+        named[counter] = start
+        return start - ends[0] + int(within)
+    named[counter] = ends[0] if within else ends[0] - 1
+    return named[counter] - start + 1
 
 
-def _number(word: str, named: Mapping[str, int]) -> int | None:
-    plain = word.removesuffix("u")
-    return int(plain) if plain.isdigit() else named.get(word)
+def _number(text: str, named: Mapping[str, int]) -> int | None:
+    """A sum of numbers and names."""
+    total = 0
+    for sign, word in re.findall(r"(^|[+-]) ?(\w+)", text.strip()):
+        plain = _TERM.fullmatch(word)
+        value = int(plain[1], 0) if plain else named.get(word)
+        if value is None:
+            return None
+        total += -value if sign == "-" else value
+    return total

@@ -103,7 +103,7 @@ def forward_lines(arm: Arm) -> list[str]:
 
 def _cost_lines(arm: Arm, derivation: Derivation | None) -> list[str]:
     options = Options()
-    rows = [("`arm_forward`", forward_count(arm, options)), ("`arm_jacobian`", jacobian_count(arm, options))]
+    rows = [("`arm_forward`", forward_count(arm, options)), ("`arm_jacobian`", jacobian_count(arm, options, derivation))]
     if derivation is None:
         return cost_lines(rows, [REMARK, "The inverse takes as many steps as its section says."])
     count = inverse_count(derivation, options)
