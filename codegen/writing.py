@@ -44,9 +44,9 @@ def write_files(folder: Path, files: Mapping[str, str]) -> None:
         undo.pop_all()
 
 
-def write_file(path: Path, content: str) -> None:
+def write_file(path: Path, content: str | bytes) -> None:
     """Puts one file into its place, in a folder that is there. A device or a pipe is written to as it is."""
-    data = content.encode("utf-8")
+    data = content if isinstance(content, bytes) else content.encode("utf-8")
     with _refusals(path):
         if path.exists() and not path.is_file() and not path.is_dir():
             path.write_bytes(data)

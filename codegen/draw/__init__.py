@@ -17,6 +17,7 @@ from codegen.draw.units import in_file_units, is_angle, number, unit_size
 from codegen.errors import CallError, Fault
 from codegen.link_product import Floats, quantity_value
 from codegen.model import Arm, JointRow
+from codegen.writing import write_file
 
 FORMATS = {".pdf": "pdf", ".png": "png", ".svg": "svg"}
 
@@ -41,10 +42,7 @@ def draw(
     q = np.array(resting_values(arm) if at is None else list(at), dtype=np.float64)
     _require_count(arm, len(q))
     content, notes = page_bytes(arm, q, picture_format, reach, positions)
-    try:
-        out.write_bytes(content)
-    except OSError as error:
-        raise CallError(Fault(str(out), f"cannot be written: {error.strerror}", "choose another --out")) from None
+    write_file(out, content)
     return (*limit_notes(arm, q), *notes)
 
 
