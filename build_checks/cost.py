@@ -22,6 +22,7 @@ from build_checks.emulate_contract import FUNCTIONS, Interface, TargetInterface,
 from build_checks.emulate_image import Image, compile_objects, link_image
 from build_checks.static_callgraph import read_call_graph
 from build_checks.targets import TARGETS, Target, target_named, why_not_measured
+from codegen.errors import CheckFailedError
 from codegen.options import Options
 
 MEASURED_LEVEL = "-O2"  # instructions, cycles and stack; flash is given at both
@@ -128,9 +129,16 @@ def measure_cost(
     missing = {target.name: _why_not(target, interface) for target in targets}
     here = [target for target in targets if missing[target.name] is None]
     calls = cost_calls(files, interface, poses, libm) if here else None
-    costs = tuple(_measure(files, calls, target, libm) for target in here if calls)
+    costs = []
+    for target in here:
+        assert calls is not None
+        try:
+            costs.append(_measure(files, calls, target, libm))
+        except CheckFailedError as error:  # too much stack, or no end: what does not fit one target may fit the others
+            where = error.faults[0].where.removeprefix(f"{target.title}: ")
+            missing[target.name] = f"{target.title}: not measured: {where} {error.faults[0].what}"
     lines = tuple(line for line in missing.values() if line)
-    return CostReport(options.prefix, interface.real, len(poses), costs, lines)
+    return CostReport(options.prefix, interface.real, len(poses), tuple(costs), lines)
 
 
 def _why_not(target: Target, interface: Interface) -> str | None:

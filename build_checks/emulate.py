@@ -20,7 +20,7 @@ from build_checks.targets import Emulator, Target
 from codegen.errors import CheckFailedError, Fault
 
 _PAINT = 0xA5
-_PAINTED_BYTES = 1536  # of the stack, on every target: the smallest has 8192 bytes of memory in all
+_MOST_PAINTED = 16384  # bytes of the stack, where the target has as many above the arguments
 _ALIGNMENT = 8
 OUTPUT_FILL = 0x5A  # every byte of an output before the call, to see what a function leaves alone
 
@@ -127,7 +127,8 @@ def make_calls(machine: Machine, calls: Iterable[Call], *, count: bool) -> Itera
 def _make(machine: Machine, call: Call, count: bool) -> Result:
     values, places = _place_arguments(machine, call)
     if count:
-        machine.write(_painted(machine).start, bytes([_PAINT]) * _PAINTED_BYTES)
+        painted = _painted(machine)
+        machine.write(painted.start, bytes([_PAINT]) * len(painted))
     value, instructions, cycles = machine.call(call.function, values)
     outputs = tuple(machine.read(address, size) for address, size in places)
     stack = _stack_touched(machine, call) if count else 0
@@ -154,13 +155,14 @@ def _place_arguments(machine: Machine, call: Call) -> tuple[tuple[int, ...], lis
 
 
 def _painted(machine: Machine) -> range:
-    return range(machine.stack - _PAINTED_BYTES, machine.stack)
+    return range(max(machine.memory.stop, machine.stack - _MOST_PAINTED), machine.stack)
 
 
 def _stack_touched(machine: Machine, call: Call) -> int:
     """Bytes from the lowest that lost its paint to the top."""
-    area = machine.read(_painted(machine).start, _PAINTED_BYTES)
+    painted = _painted(machine)
+    area = machine.read(painted.start, len(painted))
     untouched = len(area) - len(area.lstrip(bytes([_PAINT])))
     if untouched == 0:
-        raise CheckFailedError(Fault(call.function, f"used more than {_PAINTED_BYTES} bytes of stack"))
-    return _PAINTED_BYTES - untouched
+        raise CheckFailedError(Fault(call.function, f"used more than {len(painted)} bytes of stack"))
+    return len(painted) - untouched
