@@ -32,7 +32,7 @@ KNOWN = (
     ),
     Known(
         r"_stage_\d",
-        r"arm_unit\(.*shoulder_from_|shoulder = arm_turn\(work->seed|marks \|= MARK_FREE|keep_free\(work, [01]u\)",
+        r"arm_unit\(.*shoulder_from_|shoulder = arm_turn\(work->q|marks \|= MARK_FREE|keep_free\(work, [01]u\)",
         "the links differ in length, so the wrist never comes to stand on the shoulder",
         _LINKS_DIFFER,
     ),

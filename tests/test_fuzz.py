@@ -54,10 +54,10 @@ def test_any_bytes_leave_the_promises_of_every_arm_whole(name: str, real: RealTy
 
 FAULTS = [  # what stands in the C, what is put there, what the target says
     ("    if (!arm_all_", "    if (false && !arm_all_", "broken promise"),
-    ("return ARM_BAD_BRANCH;", "q[0] = seed[0];\n        return ARM_BAD_BRANCH;", "and the joint values are written"),
-    ("if (branch >= ARM_BRANCHES)", "if (branch > ARM_BRANCHES)", "branch 4 is accepted"),
+    ("*work->status = ARM_BAD_BRANCH;", "work->found[0][0] = seed[0];\n        *work->status = ARM_BAD_BRANCH;", "and the joint values are written"),
+    ("if (work->branch >= ARM_BRANCHES)", "if (work->branch > ARM_BRANCHES)", "branch 4 is accepted"),
     ("        ++count;", "        count += branch & 1u;", "inverse_all counts"),
-    ("*branch = tried;", "*branch = tried ^ 1u;", "inverse_nearest"),
+    ("*branch = work.branch;", "*branch = work.branch ^ 1u;", "inverse_nearest"),
 ]
 
 

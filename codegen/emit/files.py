@@ -88,16 +88,20 @@ def rendered(template: str, context: dict[str, object]) -> str:
 
 
 def pruned(template: str, context: dict[str, object]) -> str:
-    """The file without the helpers that nothing in it calls; a helper may be needed by another only."""
+    """The file without the helpers that nothing in it calls, and without the constants that nothing in it reads.
+
+    A helper may be needed by another only.
+    """
     used, p = frozenset(_HELPERS), context["p"]
-    rows: list[tuple[str, str, str]] = context["tolerances"]  # type: ignore[assignment]
+    kept: dict[str, list[tuple[str, str, str]]] = {key: context[key] for key in ("constants", "tolerances")}  # type: ignore[misc]
     while True:
-        text = rendered(template, {**context, "used": used, "uses": used | {"atan2"}, "tolerances": rows})
-        called = frozenset(name for name in used if len(re.findall(rf"\b{p}_{name}\(", text)) > 1)
-        read = [row for row in rows if len(re.findall(rf"\b{row[0]}\b", text)) > 1]
-        if called == used and read == rows:
+        text = rendered(template, {**context, "used": used, "uses": used | {"atan2"}, **kept})
+        code = re.sub(r"/\*.*?\*/", "", text, flags=re.DOTALL)
+        called = frozenset(name for name in used if len(re.findall(rf"\b{p}_{name}\(", code)) > 1)
+        read = {key: [row for row in rows if len(re.findall(rf"\b{row[0]}\b", code)) > 1] for key, rows in kept.items()}
+        if called == used and read == kept:
             return text
-        used, rows = called, read
+        used, kept = called, read
 
 
 def _context(
