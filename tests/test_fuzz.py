@@ -54,7 +54,11 @@ def test_any_bytes_leave_the_promises_of_every_arm_whole(name: str, real: RealTy
 
 FAULTS = [  # what stands in the C, what is put there, what the target says
     ("    if (!arm_all_", "    if (false && !arm_all_", "broken promise"),
-    ("*work->status = ARM_BAD_BRANCH;", "work->found[0][0] = seed[0];\n        *work->status = ARM_BAD_BRANCH;", "and the joint values are written"),
+    (
+        "*work->status = ARM_BAD_BRANCH;",
+        "work->found[0][0] = seed[0];\n        *work->status = ARM_BAD_BRANCH;",
+        "and the joint values are written",
+    ),
     ("if (work->branch >= ARM_BRANCHES)", "if (work->branch > ARM_BRANCHES)", "branch 4 is accepted"),
     ("        ++count;", "        count += branch & 1u;", "inverse_all counts"),
     ("*branch = work.branch;", "*branch = work.branch ^ 1u;", "inverse_nearest"),
