@@ -136,16 +136,41 @@ def agree(
 ) -> AgreeReport:
     """Compiles the generated `files` of `arm` and checks them. Raises when there is no compiler or the C does not
     compile."""
-    settings = settings or Settings()
+    return weighed(find(arm, files, options, settings or Settings(), progress))
+
+
+@dataclass(frozen=True, slots=True)
+class Findings:
+    """What the checks of one shard counted. Those of all shards of a run, together in any order, are the whole run's."""
+
+    run: Run
+    interface: CheckResult
+    results: tuple[CheckResult, ...]
+
+    def together(self, other: Findings) -> Findings:
+        """Every shard looks at the interface for itself; it is one fact of the C and counted once."""
+        interface = self.interface if self.interface.failed else other.interface
+        return Findings(self.run, interface, join_all([*self.results, *other.results]))
+
+
+def find(
+    arm: Arm, files: dict[str, str], options: Options, settings: Settings, progress: Progress | None = None
+) -> Findings:
+    """What `agree` does, before the whole is judged."""
     with compiled(files, options) as library:
         c = Kinematics(library)
         interface = _interface(arm, c)
-        if interface.failed:
-            results: tuple[CheckResult, ...] = (interface,)
-        else:
+        results: tuple[CheckResult, ...] = ()
+        if not interface.failed:
             work = _shard(units(settings, c.numeric), settings.shard)
-            results = join_all([interface, *_run(arm, library, settings, work, progress or _silent)])
-        return AgreeReport(_describe(arm, options, settings, c), tuple(map(_floored, results)))
+            results = join_all(_run(arm, library, settings, work, progress or _silent))
+        return Findings(_describe(arm, options, settings, c), interface, results)
+
+
+def weighed(found: Findings) -> AgreeReport:
+    """The report of all that was found. C with another interface than the contract's is not judged further."""
+    results = () if found.interface.failed else found.results
+    return AgreeReport(found.run, tuple(map(_floored, join_all([found.interface, *results]))))
 
 
 def _floored(result: CheckResult) -> CheckResult:
@@ -214,8 +239,8 @@ def _mapper(arm: Arm, library: Library, settings: Settings) -> Iterator[Mapped]:
     """Runs units in order, on as many processes as are worth starting."""
     processes = settings.processes or _processors()
     if processes == 1 or (settings.samples < _WORTH_PROCESSES and not settings.thorough):
-        _open_bench(arm, library)
-        yield lambda work: map(_run_unit, work)
+        bench = Bench(arm, library)  # not the process's own: other threads of it may check other arms
+        yield lambda work: (_judged(bench, *job) for job in work)
         return
     context = multiprocessing.get_context("spawn")
     with ProcessPoolExecutor(processes, context, _open_bench, (arm, library)) as pool:
@@ -242,9 +267,12 @@ def _open_bench(arm: Arm, library: Library) -> None:
 
 
 def _run_unit(job: tuple[int, Unit]) -> list[CheckResult]:
+    return _judged(_bench[0], *job)
+
+
+def _judged(opened: Bench, seed: int, unit: Unit) -> list[CheckResult]:
     """One unit, judged with a fresh tally."""
-    seed, unit = job
-    bench = _bench[0].fresh()
+    bench = opened.fresh()
     place = zlib.crc32(unit.work.encode())
     rng = np.random.default_rng(np.random.SeedSequence(seed, spawn_key=(place, unit.index)))
     with np.errstate(all="ignore"):  # what comes out is judged, whatever the arithmetic met on the way

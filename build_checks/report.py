@@ -89,11 +89,22 @@ class CheckResult:
 def _worse(first: Worst | None, second: Worst | None) -> Worst | None:
     if first is None or second is None:
         return first or second
-    return second if second.error > first.error else first
+    return max(first, second, key=_badness)
+
+
+def _badness(worst: Worst) -> tuple[float, str]:
+    """An error that is no number is as large as can be. Equal errors are told apart by their joint values."""
+    return math.inf if math.isnan(worst.error) else worst.error, repr(worst)
+
+
+def _kept(first: Failure | None, second: Failure | None) -> Failure | None:
+    if first is None or second is None:
+        return first or second
+    return min(first, second, key=repr)
 
 
 def join(first: CheckResult, second: CheckResult) -> CheckResult:
-    """Both together; of two failures the first stands."""
+    """Both together, the same in either order: of two failures, or of equal errors, the text decides which stands."""
     return CheckResult(
         first.check,
         first.cases + second.cases,
@@ -101,7 +112,7 @@ def join(first: CheckResult, second: CheckResult) -> CheckResult:
         first.undecided + second.undecided,
         _worse(first.position, second.position),
         _worse(first.angle, second.angle),
-        first.failure or second.failure,
+        _kept(first.failure, second.failure),
         first.lacking + second.lacking,
     )
 

@@ -27,6 +27,10 @@ class LinkwrightError(Exception):
         super().__init__("\n".join(str(fault) for fault in faults))
         self.faults = faults
 
+    def __reduce__(self) -> tuple[type[LinkwrightError], tuple[Fault, ...]]:
+        """Pickled whole: an exception's own way would turn the faults into the text that is shown."""
+        return type(self), self.faults
+
 
 class ArmFileError(LinkwrightError):
     """The arm file is faulty; holds every fault found in it."""

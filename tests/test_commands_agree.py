@@ -113,17 +113,12 @@ def parts(tmp_path: Path) -> list[Path]:
 
 
 def test_parts_join_to_the_report_of_the_whole_run(parts: list[Path]) -> None:
-    """In any order. Which of equal worst cases is kept may differ, the figures may not; every part looks at the
-    interface for itself."""
+    """In any order; every part looks at the interface for itself."""
     joined = json.loads(call("agree", "--merge", *reversed(parts), "--json").out)
     whole = json.loads(call("agree", PLOTTER, *FEW, "--json").out)
     assert joined["run"] == whole["run"]
     assert joined["checks"][0] == whole["checks"][0] | {"cases": 3}
-    for one, other in zip(joined["checks"][1:], whole["checks"][1:], strict=True):
-        for key in ("check", "cases", "failed", "undecided"):
-            assert one[key] == other[key], other["check"]
-        for key in ("position", "angle"):
-            assert (one[key] or {}).get("error") == (other[key] or {}).get("error"), other["check"]
+    assert joined["checks"][1:] == whole["checks"][1:]
 
 
 def test_each_part_does_a_share_of_the_work(parts: list[Path]) -> None:

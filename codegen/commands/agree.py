@@ -30,9 +30,17 @@ Thorough = Annotated[
 Report = Annotated[Path | None, typer.Option("--report", metavar="FILE.json", help="Also write every figure as JSON.")]
 JUnit = Annotated[Path | None, typer.Option("--junit", metavar="FILE.xml", help="Also write the checks as JUnit XML.")]
 WhichPart = Annotated[
-    str, typer.Option("--shard", metavar="i/n", help="Do the i-th of n parts of the work, for n machines.")
+    str | None, typer.Option("--shard", metavar="i/n", help="Do the i-th of n parts of the work, for n machines.")
 ]
 Merge = Annotated[bool, typer.Option("--merge", help="Join the reports of all parts of one run.")]
+Scheduler = Annotated[
+    str | None,
+    typer.Option(
+        "--scheduler",
+        metavar="ADDRESS",
+        help='Do the parts on the workers of a running dask.distributed scheduler; needs "linkwright[cluster]".',
+    ),
+]
 
 
 def agree(
@@ -42,8 +50,9 @@ def agree(
     thorough: Thorough = 0,
     report: Report = None,
     junit: JUnit = None,
-    shard: WhichPart = "1/1",
+    shard: WhichPart = None,
     merge: Merge = False,
+    scheduler: Scheduler = None,
     as_json: AsJson = False,
     real: Real = "float",
     math: Math = "own",
@@ -61,17 +70,26 @@ def agree(
       linkwright agree arms/vial_picker.toml --samples 1000000 --report agreement.json
       linkwright agree arms/vial_picker.toml --shard 1/4 --report part1.json
       linkwright agree --merge part1.json part2.json part3.json part4.json
+      linkwright agree arms/vial_picker.toml --samples 100000000 --scheduler tcp://192.168.1.20:8786
     """
+    _only_one_way(shard, merge, scheduler)
     if merge:
         part = _merged(arm)
     else:
         from build_checks.agree import Settings
 
-        settings = Settings(samples, seed, thorough, shard=_shard(shard))
-        part = _run(wanted(_only(arm), real, math, prefix, angle_error, angles), settings)
+        settings = Settings(samples, seed, thorough, shard=_shard("1/1" if shard is None else shard))
+        part = _run(wanted(_only(arm), real, math, prefix, angle_error, angles), settings, scheduler)
     _hand_out(part, as_json, report, junit)
     if not part.report.agreed:
         raise typer.Exit(1)
+
+
+def _only_one_way(shard: str | None, merge: bool, scheduler: str | None) -> None:
+    if scheduler is not None and (shard is not None or merge):
+        other = "--merge" if merge else "--shard"
+        hint = "leave one of the two out; a scheduler gets all parts and joins them"
+        raise CallError(Fault("--scheduler", f"cannot be used with {other}", hint))
 
 
 def _only(paths: list[Path]) -> Path:
@@ -88,15 +106,22 @@ def _shard(text: str) -> Shard:
     return part, parts
 
 
-def _run(what: Wanted, settings: Settings) -> Part:
+def _run(what: Wanted, settings: Settings, scheduler: str | None) -> Part:
     """Generates and checks; shows how far it is."""
     from build_checks.agree import agree as check
     from build_checks.report_merge import Part, digest_of
 
+    if scheduler is not None:
+        from build_checks.agree_cluster import Job, agree_on_cluster, require_distributed
+
+        require_distributed()
     files = what.generated()
     progress = Progress("checking")
     try:
-        report = check(what.file.arm, files, what.options, settings, progress)
+        if scheduler is None:
+            report = check(what.file.arm, files, what.options, settings, progress)
+        else:
+            report = agree_on_cluster(scheduler, Job(what.file.arm, files, what.options, settings), progress)
     finally:
         progress.end()
     return Part(what.file.path, report, settings.shard, digest_of(files))
