@@ -12,6 +12,8 @@ from build_checks.compile import AnyArray
 from build_checks.reference import Array, Flags
 from build_checks.report import Check, Failure
 
+_EXTREMES = 64
+
 
 def check_atan2(bench: Bench, rng: np.random.Generator, size: int) -> None:
     """Random arguments, and all pairs of zeros, ones, infinities and NaN of both signs."""
@@ -20,10 +22,16 @@ def check_atan2(bench: Bench, rng: np.random.Generator, size: int) -> None:
 
 
 def _random(bench: Bench, rng: np.random.Generator, size: int) -> None:
-    """Half of them of similar size, half of any size."""
+    """Half of them of similar size, half of any size, and some whose sum overflows or whose digits run out."""
     magnitudes = 10.0 ** np.concatenate(
         (rng.uniform(-3, 3, (size // 2, 2)), rng.uniform(-30, 30, (size - size // 2, 2)))
     )
+    limits = np.finfo(bench.c.real)
+    extremes = rng.choice([0.9 * float(limits.max), 0.9 * float(limits.tiny)], (_EXTREMES, 1)) * rng.uniform(
+        0.1, 1.0, (_EXTREMES, 2)
+    )
+    magnitudes = np.concatenate((magnitudes, extremes))
+    size = len(magnitudes)
     y, x = (bench.c.rounded(column) for column in (magnitudes * rng.choice([-1.0, 1.0], (size, 2))).T)
     angles = bench.c.atan2(y, x).astype(np.float64)
     wanted = np.arctan2(y.astype(np.float64), x.astype(np.float64))

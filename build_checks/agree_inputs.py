@@ -122,7 +122,7 @@ def touched(values: AnyArray) -> Flags:
 
 
 def _bad_joints(bench: Bench, batch: Batch) -> None:
-    """NaN and infinities in the joint values of forward kinematics and of the Jacobian."""
+    """NaN and infinities in the joint values of forward kinematics, of the Jacobian, and of the branch they lie on."""
     for joint in range(bench.c.joints):
         for value in _NOT_NUMBERS:
             q = batch.seeds.copy()
@@ -130,8 +130,9 @@ def _bad_joints(bench: Bench, batch: Batch) -> None:
             poses, status = bench.c.forward(q)
             matrices, jacobian_status = bench.c.jacobian(q)
             accepted = (status != Status.BAD_INPUT) | (jacobian_status != Status.BAD_INPUT)
+            accepted |= bench.c.branch_of(q) < bench.c.branches
             moved = touched(poses) | touched(matrices)
-            kind = f"{value} in joint {joint + 1} of forward and Jacobian"
+            kind = f"{value} in joint {joint + 1} of forward, Jacobian and branch_of"
             _judge_joints(bench, kind, q, accepted, moved)
 
 

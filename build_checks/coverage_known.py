@@ -36,6 +36,24 @@ KNOWN = (
         "the links differ in length, so the wrist never comes to stand on the shoulder",
         _LINKS_DIFFER,
     ),
+    Known(
+        r"_keep_free",
+        r"",
+        "the links differ in length, so no pose leaves a joint free",
+        frozenset({"tray_scara"}),
+    ),
+    Known(
+        r"_stage_1",
+        r"exceeds\(known->waist_size|abs\(-D2\) > LEAST_LENGTH|waist = arm_turn\(work->q",
+        "the shoulder's offset keeps the wrist's centre away from the waist's axis; no vector asks for a pose just there",
+        frozenset({"bench_six"}),
+    ),
+    Known(
+        r"_reached",
+        r"return length_good && angle_good;",
+        "a root that is clamped there is one of lengths: the wrist then takes up the whole rotation",
+        frozenset({"bench_six"}),
+    ),
 )
 
 

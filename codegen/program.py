@@ -91,6 +91,9 @@ class Builder:
         """A named measured number; `text` says what it is."""
         return self._intern(("constant", name), op=Op.CONSTANT, value=MP.mpf(value), name=name, text=text or name)
 
+    def constant_named(self, name: str) -> Node | None:
+        return self.nodes.get(("constant", name))
+
     def input(self, name: str, stage: int = 0) -> Node:
         return self._intern(("input", name), op=Op.INPUT, name=name, stage=stage)
 

@@ -134,7 +134,8 @@ class Scope:
             return self.names[node]
         match node.op:
             case Op.CONSTANT:
-                return self.constants.text(node)
+                named = self._negated(node)
+                return self.constants.text(node) if named is None else f"-{self.constants.text(named)}"
             case Op.INPUT:
                 return self.names.get(node, node.name)
             case Op.SUM:
@@ -151,9 +152,19 @@ class Scope:
                 test, above, otherwise = (self._factor(arg, tight=True) for arg in node.args)
                 return f"({test} > {literal(0, self.options.real)}) ? {above} : {otherwise}"
 
+    def _negated(self, node: Node) -> Node | None:
+        """The constant with a name of its own that this one is the negative of."""
+        found = re.fullmatch(r"-\(?(\w+)\)?", node.label)
+        return self.builder.constant_named(found[1]) if found and not node.structural else None
+
     def _sum(self, node: Node) -> str:
         parts = []
         for k, (sign, arg) in enumerate(zip(node.signs, node.args, strict=True)):
+            flipped = self._without_minus(arg)
+            if flipped is not None:
+                sign, text = -sign, flipped
+                parts.append(f"{'-' if sign < 0 else '+'} {text}" if k else f"{'-' if sign < 0 else ''}{text}")
+                continue
             text = self._factor(arg, tight=arg.op is Op.SUM or arg.op is Op.CHOICE)
             if k == 0 and sign > 0 and arg.op is Op.SUM:
                 parts.append(self.text(arg))  # added up from the left anyway
@@ -162,6 +173,21 @@ class Scope:
             else:
                 parts.append(f"{'-' if sign < 0 else '+'} {text}")
         return " ".join(parts)
+
+    def _without_minus(self, node: Node) -> str | None:
+        """The negative of a term that begins with a minus: a constant, or a product with one; None for others."""
+        if node in self.names:
+            return None
+        if node.op is Op.CONSTANT:
+            text = self.text(node)
+            return text[1:] if text.startswith("-") else None
+        if node.op is not Op.PRODUCT:
+            return None
+        texts = [self._factor(arg) for arg in node.args]
+        minus = [text.startswith("(-") and arg.op is Op.CONSTANT for text, arg in zip(texts, node.args, strict=True)]
+        if sum(minus) != 1:
+            return None
+        return " * ".join(text[2:-1] if gone else text for text, gone in zip(texts, minus, strict=True))
 
     def factor(self, node: Node) -> str:
         """The node as a factor of a product, everything it needs being named first."""

@@ -149,6 +149,7 @@ def _context(
         "held_mask": f"0x{sum(1 << index for index in derivation.goal.arm.held_indices):X}",
         "known_fields": inverse.known_fields(),
         "work_fields": inverse.work_fields(),
+        "sliding": [k for k, row in enumerate(arm.joints) if row.kind is not JointKind.REVOLUTE],
         "turning": any(row.kind is JointKind.REVOLUTE for row in arm.joints),
         "offsets": any(joint.offset for joint in joints),
         "reach": reach,
