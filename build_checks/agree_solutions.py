@@ -77,13 +77,25 @@ def named(status: int) -> str:
 
 
 def _round_trip(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
-    """A random pose may be singular, too: for solutions that say so the promise is the one of such poses."""
+    """A random pose may be singular or at the edge of the reach, too: then the promise is the one of such poses.
+
+    Solutions say that they are singular; that one lies at an edge, its smallest singular value tells.
+    """
     if batch.stretch > 1.0:
         _trips(bench, batch, found, flat)
         return
     singular: Flags = flat.status == Status.SINGULAR
+    beyond = np.flatnonzero(~singular & ~_within_budget(bench, batch, flat))
+    singular[beyond] = bench.reading.smallest_singular(flat.q[beyond]) < bench.blur
     _trips(bench, batch, found, flat.take(~singular))
     _trips(bench, replace(batch, stretch=SINGULAR_STRETCH), found, flat.take(singular))
+
+
+def _within_budget(bench: Bench, batch: Batch, flat: Flat) -> Flags:
+    position, angle = bench.reading.errors(batch.poses.take(flat.rows), bench.reference.chain(flat.q))
+    position_budget, angle_budget = bench.budgets(batch, flat.rows, flat.q)
+    within: Flags = (position <= position_budget) & (angle <= angle_budget)
+    return within
 
 
 def _trips(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
