@@ -6,5 +6,5 @@ from pathlib import Path
 
 _BESIDE = Path(__file__).resolve().parent.parent
 TEMPLATES = _BESIDE / "templates_c"
-PAGE_TEMPLATES = _BESIDE / "templates_page"
+PAGE_TEMPLATES = Path(__file__).parent / "page" / "templates"
 ARMS = _BESIDE / "arms"

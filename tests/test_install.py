@@ -17,7 +17,7 @@ from pathlib import Path
 import pytest
 
 ROOT = Path(__file__).resolve().parent.parent
-SHIPPED = ("codegen", "templates_c", "templates_page", "arms", "build_checks")
+SHIPPED = ("codegen", "templates_c", "arms", "build_checks")
 SUFFIXES = (".py", ".toml", ".j2", ".css", ".js", ".c", ".h", ".ld")
 # Import name where it is not the distribution's.
 DISTRIBUTIONS = {"elftools": "pyelftools", "markdown_it": "markdown-it-py"}
