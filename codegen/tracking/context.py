@@ -13,7 +13,7 @@ from codegen.options import Options, RealType
 from codegen.tracking.settings import SEARCH_STEPS
 from codegen.tracking.shape import ArmShape
 from codegen.tracking.starts import HELD_BACK, TrackingTables
-from codegen.tracking.steps_context import FINISHING, LEGS, MOST_LOOSE, unit_of
+from codegen.tracking.steps_context import FINISHING, most_loosening, unit_of
 
 ATTEMPTS = 4
 ASIDE = 0.2
@@ -88,11 +88,10 @@ class MostSteps:
 def most_steps(tables: TrackingTables, options: Options) -> MostSteps:
     """Of tracking from the seed, with all its attempts, and of the whole search.
 
-    A start takes its steps, one look for a free joint, and one look half way to each solution known. Each joint that
-    the pose leaves free goes to its seed in legs, each with a look and its own steps, and one more track at the end.
+    A start takes its steps, one look for a free joint, and one look half way to each solution known.
     """
     each = SEARCH_STEPS + FINISHING[options.real] + 1
-    loosening = MOST_LOOSE * ((LEGS + 2) * (each + 1) + each + 1)
+    loosening = most_loosening(each)
     tracked = ATTEMPTS * each + 1
     searched = tracked + len(tables.starts) * (each + 1 + tables.branches)
     return MostSteps(tracked, tracked + loosening, searched, searched + (len(tables.starts) + 1) * loosening)

@@ -62,13 +62,24 @@ class StepsContext:
 
     @property
     def most(self) -> int:
-        """Evaluations of the Jacobian from one place at the very worst, where the pose leaves no joint free."""
-        return self.search_steps + self.finishing_steps + 1
+        """Evaluations of the Jacobian from one place at the very worst, where the pose leaves no joint free: the steps,
+        and one look for a free joint."""
+        return self._each + 1
 
     @property
     def most_free(self) -> int:
-        """The same where the pose leaves joints free: each goes to its seed in legs, each with a look and its own steps."""
-        return self.most + self.most_loose * ((self.legs + 2) * (self.most + 1) + self.most + 1) + 1
+        """The same where the pose leaves joints free."""
+        return self.most + most_loosening(self._each)
+
+    @property
+    def _each(self) -> int:
+        return self.search_steps + self.finishing_steps + 1
+
+
+def most_loosening(each: int) -> int:
+    """What free joints add, `each` being the evaluations of one track: every joint goes to its seed in legs, each leg with
+    a look and its own steps, then comes one more track and a look for the next."""
+    return MOST_LOOSE * ((LEGS + 2) * (each + 1) + each + 1)
 
 
 def steps_context(arm: Arm, shape: ArmShape, options: Options, search_steps: int) -> StepsContext:
