@@ -16,6 +16,7 @@ from typing import assert_never
 from codegen.emit.expression import Constants
 from codegen.emit.inverse_text import InverseText
 from codegen.emit.motion_text import MotionText
+from codegen.emit.tolerances import within_one_turn
 from codegen.forward import jacobian_nodes, pose_nodes
 from codegen.geometry import Pair
 from codegen.inverse.plan import (
@@ -132,6 +133,7 @@ def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
         runs *= roots
         one += count
         if image is not None and number == len(stages) - 1:
+            one += _half_turns(derivation, options)
             all_branches += (count + image).times(runs // 2)
         else:
             all_branches += count.times(runs)
@@ -143,14 +145,20 @@ def inverse_count(derivation: Derivation, options: Options) -> InverseCount:
 
 
 def _mirror_count(derivation: Derivation, options: Options) -> OperationCount | None:
-    """What the mirror image of a solution takes, which changes signs only: its angles. None where there is none."""
+    """What the mirror image of a solution takes: half turns of its angles. None where there is none."""
     flips = InverseText(derivation, options, Constants(options)).mirror()
     if not flips:
         return None
     total = _NOTHING
     for flip in flips:
-        total += _settled_turn(derivation, flip.joint, _settled(options))
+        total += OperationCount(additions=int(flip.cosine)) + _noted_turn(derivation, flip.joint)
     return total
+
+
+def _half_turns(derivation: Derivation, options: Options) -> OperationCount:
+    """What the second solution of the last stage takes more than its first where it alone is wanted."""
+    flips = InverseText(derivation, options, Constants(options)).mirror()
+    return OperationCount(additions=sum(flip.cosine for flip in flips))
 
 
 def stage_counts(derivation: Derivation, options: Options) -> list[tuple[OperationCount, int]]:
@@ -167,7 +175,7 @@ def stage_counts(derivation: Derivation, options: Options) -> list[tuple[Operati
             counts[number] += counted(made[number].new(own))
             for node in made[number].new(repeated):
                 counts[number] += counted([node]).times(_passes(step) if node.stage == number else 1)
-            counts[number] += _form_count(derivation, step, text.unread, _settled(options))
+            counts[number] += _form_count(derivation, step, text.unread, options)
     for node in text.carried:
         counts[node.stage] += counted(made[node.stage].new([node]))
     return list(zip(counts, [1, *(steps[0].roots for steps in text.stages[1:])], strict=True))
@@ -226,15 +234,15 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
 
 
 def _form_count(
-    derivation: Derivation, step: Step, unread: frozenset[Pair], settled: OperationCount
+    derivation: Derivation, step: Step, unread: frozenset[Pair], options: Options
 ) -> OperationCount:
     """What the form adds to the formulas of its step."""
     match step:
         case DirectionStep():
             unit = _NOTHING if step.pair in unread else UNIT
-            return unit + _settled_turn(derivation, step.joint, settled)
+            return unit + _settled_turn(derivation, step.joint, options)
         case BalanceStep():
-            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint, settled)
+            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint, options)
         case SlideStep():
             return _division(step) + _settled_slide(derivation, step.joint)
         case SlideRootsStep():
@@ -250,7 +258,7 @@ def _form_count(
                 changes += OperationCount(additions=1) if isinstance(variable.during, Node) else _TURN_BY
             total = (_NEWTON + changes).times(step.passes)
             for variable in step.variables:
-                total += _settled_variable(derivation, variable, settled)
+                total += _settled_variable(derivation, variable, options)
             return total
         case _:
             assert_never(step)
@@ -277,29 +285,35 @@ def _offset_count(derivation: Derivation, joint: int) -> OperationCount:
     return OperationCount(additions=int(not derivation.goal.chain.joints[joint].offset.is_exactly(0)))
 
 
-def _settled(options: Options) -> OperationCount:
-    """What one returned angle takes; the library's arc tangent is handed a sine that is no negative zero."""
-    return SETTLE + OperationCount(arc_tangents=1, additions=int(options.mathematics is Mathematics.LIBM))
-
-
-def _settled_turn(derivation: Derivation, joint: int | None, settled: OperationCount) -> OperationCount:
-    """The angle that is returned; a pair whose joint a later step settles, or that is no joint's, has none."""
+def _settled_turn(derivation: Derivation, joint: int | None, options: Options) -> OperationCount:
+    """
+    The angle that is returned; a pair whose joint a later step settles, or that is no joint's, has none. The library's
+    arc tangent is handed a sine that is no negative zero.
+    """
     if joint is None:
         return _NOTHING
-    some_offset = any(joint.turns and not joint.offset.is_exactly(0) for joint in derivation.goal.chain.joints)
-    return settled + OperationCount(additions=int(some_offset))  # one loop takes the offset off every angle, 0 or not
+    arc = OperationCount(arc_tangents=1, additions=int(options.mathematics is Mathematics.LIBM))
+    return arc + _noted_turn(derivation, joint)
+
+
+def _noted_turn(derivation: Derivation, joint: int) -> OperationCount:
+    """Its offset taken off, and held against its seed where its limits leave more than one turn of it."""
+    arm = derivation.goal.arm
+    if joint >= len(derivation.goal.chain.joints):
+        return SETTLE
+    return _offset_count(derivation, joint) + (_NOTHING if within_one_turn(arm, joint) else SETTLE)
 
 
 def _settled_slide(derivation: Derivation, joint: int | None) -> OperationCount:
     return _NOTHING if joint is None else _offset_count(derivation, joint)
 
 
-def _settled_variable(derivation: Derivation, variable: Variable, settled: OperationCount) -> OperationCount:
+def _settled_variable(derivation: Derivation, variable: Variable, options: Options) -> OperationCount:
     if variable.joint >= len(derivation.goal.chain.joints):
         return _NOTHING
     if isinstance(variable.after, Node):
         return _settled_slide(derivation, variable.joint)
-    return _settled_turn(derivation, variable.joint, settled)
+    return _settled_turn(derivation, variable.joint, options)
 
 
 def _reach_check(derivation: Derivation, options: Options) -> OperationCount:

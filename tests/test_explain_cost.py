@@ -17,6 +17,8 @@ from build_checks.compile import Status
 from build_checks.reference import Array, Reference
 from codegen.armfile import read_arm
 from codegen.cost_static import InverseCount, OperationCount, forward_count, inverse_count, jacobian_count
+from codegen.emit.expression import Constants
+from codegen.emit.inverse_text import InverseText
 from codegen.inverse.tasks import Derivation, derive, step_nodes
 from codegen.model import Arm
 from codegen.options import Mathematics, Options, RealType
@@ -197,10 +199,11 @@ def test_the_counts_are_those_of_the_running_c(arm: Arm, tmp_path: Path) -> None
 
 
 def operations_of_choices(derivation: Derivation) -> tuple[int, int]:
-    """Sums and products of which the C does only those on the side that it takes."""
+    """Sums and products of which the C does only those on the side that it takes; half turns it takes for one root only."""
     nodes = reachable([node for step in derivation.plan.steps for node in step_nodes(step)])
     sides = reachable([arg for node in nodes if node.op is Op.CHOICE for arg in node.args[1:]])
-    return sum(node.op is Op.SUM for node in sides), sum(node.op is Op.PRODUCT for node in sides)
+    half_turns = sum(flip.cosine for flip in InverseText(derivation, OPTIONS, Constants(OPTIONS)).mirror())
+    return sum(node.op is Op.SUM for node in sides) + half_turns, sum(node.op is Op.PRODUCT for node in sides)
 
 
 def c_branches(arm: Arm) -> int:

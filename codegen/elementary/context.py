@@ -70,6 +70,7 @@ class MathsContext:
     near_text: str
     quarter_pi: Printed
     half_pi: Printed
+    three_quarters_pi: Printed
     pi: Printed
     turn_unit: Printed
     upscale: Printed
@@ -116,6 +117,7 @@ def maths_context(options: Options) -> MathsContext:
             near_text=str(_NEAR[real]),
             quarter_pi=number(mp.pi / 4),
             half_pi=number(mp.pi / 2),
+            three_quarters_pi=number(3 * mp.pi / 4),
             pi=number(mp.pi),
             turn_unit=number(mp.mpf(2) ** -30),
             upscale=number(2 ** (real.bits + 1)),

@@ -17,7 +17,7 @@ from codegen.emit.expression import Constants
 from codegen.emit.inverse_text import InverseText, StageText
 from codegen.emit.motion_text import MotionText
 from codegen.emit.numbers import literal
-from codegen.emit.tolerances import limit_texts, slowness, tolerance_rows
+from codegen.emit.tolerances import limit_texts, slowness, tolerance_rows, within_one_turn
 from codegen.inverse.plan import BY_SIDE
 from codegen.inverse.tasks import Derivation
 from codegen.model import Arm, JointKind
@@ -30,7 +30,7 @@ if TYPE_CHECKING:
 
 _HELPERS = (
     "abs", "sqrt", "root", "exceeds", "angle_of", "sin_cos", "is_finite", "turn", "unit", "keep", "turns",
-    "settle_turn", "settle_slide", "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn",
+    "settle_turn", "opposite", "settle_slide", "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn",
     "turn_roots", "slide_roots", "keep_free", "turn_number", "slide_number", "quartic_roots", "newton2",
     "turn_by",
 )  # fmt: skip
@@ -144,13 +144,16 @@ def _context(
         "jacobian": jacobian,
         "stages": [_stage_context(stage) for stage in stages],
         "levels": [_level_context(stage) for stage in reversed(stages[1:])],
-        "mirror": inverse.mirror(),
+        "mirror": [{"joint": flip.joint, "image": flip.image(options.prefix)} for flip in inverse.mirror()],
+        "half_turned": any(flip.cosine for flip in inverse.mirror()),
         "mirror_mask": f"0x{sum(1 << flip.joint for flip in inverse.mirror()):X}",
         "held_mask": f"0x{sum(1 << index for index in derivation.goal.arm.held_indices):X}",
         "known_fields": inverse.known_fields(),
         "work_fields": inverse.work_fields(),
+        **_one_turn(arm),
         "sliding": [k for k, row in enumerate(arm.joints) if row.kind is not JointKind.REVOLUTE],
         "turning": any(row.kind is JointKind.REVOLUTE for row in arm.joints),
+        "turning_joints": _turning_joints(arm, joints),
         "offsets": any(joint.offset for joint in joints),
         "reach": reach,
         "reach_rotation": any(re.search(r"\br\[", line) for line in reach),
@@ -161,6 +164,22 @@ def _context(
         "reads_position": [entry for entry in check.reads if entry.startswith("p")],
         "plane_lines": check.lines,
     }
+
+
+def _turning_joints(arm: Arm, joints: list[JointText]) -> list[dict[str, object]]:
+    return [
+        {"number": k, "bit": f"0x{1 << k:X}", "offset": text.offset}
+        for k, (row, text) in enumerate(zip(arm.joints, joints, strict=True))
+        if row.kind is JointKind.REVOLUTE
+    ]
+
+
+def _one_turn(arm: Arm) -> dict[str, object]:
+    """The turning joints whose limits leave less than a whole turn: all of them, none, or a mask."""
+    turning = [k for k, row in enumerate(arm.joints) if row.kind is JointKind.REVOLUTE]
+    within = [k for k in turning if within_one_turn(arm, k)]
+    mask = f"0x{sum(1 << k for k in within):X}"
+    return {"one_turn": "all" if within == turning else "some" if within else "none", "one_turn_mask": mask}
 
 
 def words(options: Options) -> dict[str, object]:

@@ -1,8 +1,8 @@
 """Whether the second solution of a stage is the mirror image of its first.
 
 A wrist's two solutions are (a, b, c) and (a + pi, -b, c + pi): the root changes its sign, and every cosine and sine made
-from it changes its sign or stays. Rounding to nearest is the same on both sides of zero, so the image has the very bits
-that computing it would give.
+from it changes its sign or stays. So the angles of the second solution are those of the first, negated or half a turn
+on: no arc tangent is taken twice.
 """
 
 from __future__ import annotations
@@ -23,6 +23,13 @@ class Flip:
     joint: int
     cosine: bool
     sine: bool
+
+    def image(self, prefix: str) -> str:
+        """The joint's angle in the second solution, in C, from its angle in the first."""
+        own = f"angle[{self.joint}]"
+        if not self.cosine:
+            return f"-{own}"
+        return f"{prefix}_opposite({own if self.sine else '-' + own})"
 
 
 def mirror_of(steps: list[Step]) -> tuple[Flip, ...] | None:

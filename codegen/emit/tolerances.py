@@ -21,6 +21,7 @@ MISS = {24: (16, 67), 53: (86, 360)}
 RETRACED = {24: (8, 24), 53: (40, 110)}
 ROUGH = 512  # a double root is known to the root of this many roundings
 NEARLY_ALONG = 1024  # below, two nearly equal roots are told apart otherwise
+_ROUNDED_AT_MOST = 1e-3  # rad: more than rounding ever moves an angle within one turn
 FAR = 4096  # times the reach: beyond it no answer is worth having, and products of four lengths still have a value
 
 
@@ -96,3 +97,12 @@ def limit_texts(arm: Arm, index: int, options: Options) -> tuple[str, str]:
         return literal(-(10**30), options.real), literal(10**30, options.real)
     low, high = (x.value() if isinstance(x, Angle) else x for x in limits)
     return literal(low, options.real), literal(high, options.real)
+
+
+def within_one_turn(arm: Arm, index: int) -> bool:
+    """Whether a turning joint's limits leave less than a whole turn, whatever rounding adds to it."""
+    limits = arm.joints[index].limits
+    if limits is None:
+        return False
+    low, high = (x.value() if isinstance(x, Angle) else x for x in limits)
+    return bool(high - low < 2 * MP.pi - _ROUNDED_AT_MOST)
