@@ -177,7 +177,7 @@ uint64_t scan_software(uint64_t seed, uint64_t count)
         if ((turn & 1u) != 0u) {  /* neighbours: quotients next to 1 */
             large.word = small.word + ((uint32_t)(state >> 60));
         }
-        wrong += (own_quotient(small, large) != small.real / large.real);
+        wrong += (own_ratio(small, large) != small.real / large.real);
         whole = (int32_t)(uint32_t)(state >> 32) >> (turn % 31u);
         wrong += (own_real_of(whole, 127u) != (own_real)whole / 1073741824.0f);
     }

@@ -189,11 +189,17 @@ class Kinematics:
         self._call("check_jacobian", (self.rounded(q),), (matrices, statuses))
         return matrices[:-1], _wide(statuses)
 
-    def inverse(self, poses: AnyArray, branches: Integers, seeds: AnyArray) -> tuple[AnyArray, Integers]:
-        """Joint values [N, n] and statuses [N] of one branch of each packed pose."""
+    def inverse(
+        self, poses: AnyArray, branches: Integers, seeds: AnyArray, *, in_place: bool = False
+    ) -> tuple[AnyArray, Integers]:
+        """Joint values [N, n] and statuses [N] of one branch of each packed pose; `in_place`: written over the seeds."""
         q, statuses = self._canaries(len(poses), self.joints), _unwritten(len(poses))
         numbers = np.ascontiguousarray(branches, dtype=np.uintc)
-        self._call("check_inverse", (self.rounded(poses), numbers, self.rounded(seeds)), (q, statuses))
+        given = self.rounded(seeds)
+        if in_place:
+            q[:-1] = given
+            given = q[:-1]
+        self._call("check_inverse", (self.rounded(poses), numbers, given), (q, statuses))
         return q[:-1], _wide(statuses)
 
     def inverse_all(self, poses: AnyArray, seeds: AnyArray) -> Branches:
@@ -202,11 +208,17 @@ class Kinematics:
         self._call("check_inverse_all", (self.rounded(poses), self.rounded(seeds)), (q, statuses, solved))
         return Branches(q[:-1], _wide(statuses), _wide(solved))
 
-    def inverse_nearest(self, poses: AnyArray, seeds: AnyArray) -> tuple[AnyArray, Integers, Integers]:
-        """Joint values [N, n], branches [N] and statuses [N]."""
+    def inverse_nearest(
+        self, poses: AnyArray, seeds: AnyArray, *, in_place: bool = False
+    ) -> tuple[AnyArray, Integers, Integers]:
+        """Joint values [N, n], branches [N] and statuses [N]; `in_place`: written over the seeds."""
         q, statuses = self._canaries(len(poses), self.joints), _unwritten(len(poses))
         branches = np.full(len(poses) + 1, CANARY_BRANCH, dtype=np.uintc)
-        self._call("check_inverse_nearest", (self.rounded(poses), self.rounded(seeds)), (q, branches, statuses))
+        given = self.rounded(seeds)
+        if in_place:
+            q[:-1] = given
+            given = q[:-1]
+        self._call("check_inverse_nearest", (self.rounded(poses), given), (q, branches, statuses))
         return q[:-1], _wide(branches), _wide(statuses)
 
     def branch_of(self, q: AnyArray) -> Integers:

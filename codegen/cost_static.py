@@ -19,6 +19,7 @@ from codegen.emit.motion_text import MotionText
 from codegen.emit.tolerances import within_one_turn
 from codegen.forward import jacobian_nodes, pose_nodes
 from codegen.geometry import Pair
+from codegen.inverse.known_length import known_length
 from codegen.inverse.plan import (
     BalanceStep,
     DirectionStep,
@@ -50,6 +51,9 @@ class OperationCount:
     def __add__(self, other: OperationCount) -> OperationCount:
         return OperationCount(*(getattr(self, f.name) + getattr(other, f.name) for f in fields(self)))
 
+    def minus(self, other: OperationCount) -> OperationCount:
+        return self + other.times(-1)
+
     def times(self, count: int) -> OperationCount:
         return OperationCount(*(getattr(self, f.name) * count for f in fields(self)))
 
@@ -66,6 +70,7 @@ class InverseCount:
 _NOTHING = OperationCount()
 UNIT = OperationCount(additions=1, multiplications=4, divisions=1, roots=1)  # (x, y) brought to length 1
 SETTLE = OperationCount(additions=1)  # how far a returned angle is from its seed
+SHARED_ROOT = OperationCount(multiplications=2, divisions=1)  # the same where its length is known
 TIDY = OperationCount(additions=2, multiplications=5)  # a pair of almost length 1 brought to length 1
 _NEWTON = OperationCount(additions=7, multiplications=16, divisions=1)  # two equations in two unknowns
 _TURN_BY = OperationCount(additions=2, multiplications=2) + UNIT
@@ -167,15 +172,17 @@ def stage_counts(derivation: Derivation, options: Options) -> list[tuple[Operati
     made = [_Made(number, frozenset(text.carried)) for number in range(len(text.stages))]
     counts = [_held_count(derivation), *(_NOTHING for _ in text.stages[1:])]
     for number, steps in enumerate(text.stages):
-        for step in steps:
-            own, repeated = _nodes_of(step)
+        for place, step in enumerate(steps):
+            length = known_length(step, steps[:place])
+            own, repeated = _nodes_of(step) if length is None else ([length.x, length.y], [])
             if step.roots == 4:  # its coefficients stand at the end of the stage before
                 counts[number - 1] += counted(made[number - 1].new(own)) + _search_count(step, options)
                 own = []
             counts[number] += counted(made[number].new(own))
             for node in made[number].new(repeated):
                 counts[number] += counted([node]).times(_passes(step) if node.stage == number else 1)
-            counts[number] += _form_count(derivation, step, text.unread, options)
+            form = _form_count(derivation, step, text.unread, options)
+            counts[number] += form if length is None else form + SHARED_ROOT.minus(UNIT)
     for node in text.carried:
         counts[node.stage] += counted(made[node.stage].new([node]))
     return list(zip(counts, [1, *(steps[0].roots for steps in text.stages[1:])], strict=True))

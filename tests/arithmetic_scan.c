@@ -1,5 +1,5 @@
 /*
- * Holds products, sums and differences in whole numbers against the processor's own, bit by bit; any NaN is like another.
+ * Holds products, quotients, sums and differences in whole numbers against the processor's own, bit by bit; any NaN is like another.
  * Compiled behind the functions themselves.
  */
 #include <stddef.h>
@@ -62,7 +62,8 @@ uint64_t scan_arithmetic(uint64_t from, uint64_t until, uint32_t *worst)
             const volatile float a = number(a_word);
             const volatile float b = number(b_word);
 
-            if (!alike(arm_product(a, b), a * b) || !alike(arm_sum(a, b), a + b) || !alike(arm_difference(a, b), a - b)) {
+            if (!alike(arm_product(a, b), a * b) || !alike(arm_sum(a, b), a + b) || !alike(arm_difference(a, b), a - b)
+                || !alike(arm_quotient(a, b), a / b)) {
                 ++wrong;
                 worst[0] = a_word;
                 worst[1] = b_word;

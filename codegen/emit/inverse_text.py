@@ -213,8 +213,7 @@ class InverseText:
         printer = Statements(scope, self.goal, self.options, self.unread, self.kept, retraced)
         if number == 0:
             printer.held_joints()
-        for step in steps:
-            printer.step(step)
+        printer.steps(steps)
         if prepared is not None:
             printer.prepare(prepared)
         for node in outgoing:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
 
@@ -10,6 +11,7 @@ from codegen.emit.numbers import literal
 from codegen.emit.tolerances import SLACK
 from codegen.geometry import Pair
 from codegen.inverse.goal import Goal
+from codegen.inverse.known_length import KnownLength, known_length
 from codegen.inverse.plan import (
     Absorption,
     BalanceStep,
@@ -90,12 +92,17 @@ class Statements:
     def put(self, line: str) -> None:
         self.scope.put(line)
 
-    def step(self, step: Step) -> None:
+    def steps(self, steps: Sequence[Step]) -> None:
+        """The steps of one stage."""
+        for number, step in enumerate(steps):
+            self.step(step, known_length(step, steps[:number]))
+
+    def step(self, step: Step, length: KnownLength | None = None) -> None:
         for line in _comment_lines(step.note):
             self.put(line)
         match step:
             case DirectionStep():
-                self._direction(step)
+                self._direction(step, length)
             case BalanceStep():
                 self._balance(step)
             case SlideStep():
@@ -147,7 +154,10 @@ class Statements:
         first = ("-" if terms[0][0] == "-" else "") + terms[0][1]
         return f"{self.p}_turn({' '.join([first, *(f'{s} {t}' for s, t in terms[1:])])})"
 
-    def _direction(self, step: DirectionStep) -> None:
+    def _direction(self, step: DirectionStep, length: KnownLength | None) -> None:
+        if length is not None:
+            self._direction_of_known_length(step, length)
+            return
         x, y, name = self.scope.value(step.x), self.scope.value(step.y), self._name(step.pair)
         least = LEASTS.get(step.least)
         if least is None and step.pair in self.unread:
@@ -170,6 +180,21 @@ class Statements:
             self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{")
             self.put("    /* the pose leaves it free: it keeps its seed */")
             self._keep_seed(step.joint, step.seed, name, step.absorbed)
+        self._store(name, step.joint)
+        if step.absorbed is not None:
+            self._store(self._name(step.absorbed.pair), step.absorbed.joint)
+
+    def _direction_of_known_length(self, step: DirectionStep, length: KnownLength) -> None:
+        name, root = self._name(step.pair), f"{self._name(length.balance.pair)}_root"
+        sides = [self.scope.factor(side) for side in (length.x, length.y)]
+        x, y = (f"{'-' if sign < 0 else ''}{side}" for sign, side in zip(length.signs, sides, strict=True))
+        self.put(f"{self.p}_pair {name};")
+        self.put(f"if ({self.p}_exceeds({self.p}_abs({root}), {LEASTS[Least.ANGLE]})) {{  /* the length, with its sign */")
+        self.put(f"    const {self.p}_real scale = {literal(1, self.options.real)} / {root};")
+        self.put(f"    {name}.c = {x} * scale;")
+        self.put(f"    {name}.s = {y} * scale;")
+        self.put("} else {  /* the pose leaves it free: it keeps its seed */")
+        self._keep_seed(step.joint, step.seed, name, step.absorbed)
         self._store(name, step.joint)
         if step.absorbed is not None:
             self._store(self._name(step.absorbed.pair), step.absorbed.joint)
