@@ -46,7 +46,7 @@ def test_every_two_exponents(flags: tuple[str, ...], tmp_path: Path) -> None:
         ("(digits == 0x80u) && ((x.word & 1u) != 0u)", "(digits == 0x80u)"),  # half way: up
         ("exponent <= 27u", "exponent <= 24u"),  # a subnormal addend left out
         ("(small.word == large.word)", "(small.word > large.word)"),  # infinity less infinity
-        ("(digits + 1u) : digits;", "digits : digits;"),
+        ("(digits + 1u) >> 1", "digits >> 1"),  # quotients cut off
         ("1 - exponent", "0 - exponent"),  # subnormal results twice as large
     ],
 )
