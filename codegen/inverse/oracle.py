@@ -51,6 +51,13 @@ class Oracle:
             return bool(abs(node.value) < _NOTHING)
         return all(abs(self._value(node, values)) < _NOTHING for values in self._values)
 
+    def is_constant(self, node: Node) -> bool:
+        """Whether it has one value whatever the pose."""
+        if node.is_constant:
+            return True
+        first, *others = (self._value(node, values) for values in self._values)
+        return all(abs(value - first) < _NOTHING for value in others)
+
     def sample(self, node: Node) -> Real:
         """The value at the first random point."""
         return node.value if node.is_constant else self._value(node, self._values[0])

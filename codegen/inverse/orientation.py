@@ -93,11 +93,14 @@ def solve_slides(
     """One, two or three slides along known directions that add up to `gap`.
 
     Each takes the part of the gap that the others behind it cannot reach, along the direction across them; what is left
-    goes to the next (backward stable, and a slide that keeps its seed leaves its part to the others).
+    goes to the next (backward stable, and a slide that keeps its seed leaves its part to the others). Two slides that no
+    turn makes parallel come last, where there are such: they make up for the first wherever it is free.
 
     normal  for two slides: the direction that neither needs to reach
     """
     space = solver.space
+    order = _order(solver, axes)
+    uses, axes = tuple(uses[k] for k in order), [axes[k] for k in order]
     across = _across(solver, axes, normal)
     if across is None or any(solver.oracle.vanishes(space.dot(a, n)) for a, n in zip(axes, across, strict=True)):
         return False
@@ -107,6 +110,17 @@ def solve_slides(
         value = solver.slide(use, space.dot(gap, direction), space.dot(axis, direction), f"{what}: {name}")
         gap = space.minus(gap, space.scaled(axis, value))
     return True
+
+
+def _order(solver: Solver, axes: list[Vector]) -> list[int]:
+    """The slides as they come, or the one first without which the other two always span a plane."""
+    space = solver.space
+    for first in range(len(axes)) if len(axes) == 3 else ():
+        others = [k for k in range(3) if k != first]
+        normal = space.cross(axes[others[0]], axes[others[1]])
+        if solver.oracle.is_constant(space.dot(normal, normal)) and not solver.oracle.vanishes(*normal):
+            return [first, *others]
+    return list(range(len(axes)))
 
 
 def _across(solver: Solver, axes: list[Vector], normal: Vector | None) -> list[Vector] | None:
