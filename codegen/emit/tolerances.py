@@ -52,7 +52,7 @@ def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[t
         row("LEAST_LENGTH", FREE[options.real.bits] * u * reach, "m, a distance from an axis below which it is zero"),
         row("LEAST_ANGLE", FREE_TURN * u, "the same for entries of unit vectors"),
         row("SLACK", SLACK * u, "how negative a square may be before its root is out of reach"),
-        row("WIDE_SLACK", 64 * SLACK * u, "the same where what misses is brought nearer"),
+        row("WIDE_SLACK", _root(SLACK * u), "the same behind another root, known to half its digits where that one is double"),
         row("FLAT", FLAT * u, "how large it may be and still be zero but for rounding"),
         row("LEAST_ROUGH", _root(ROUGH * u), "part of a unit vector that a double root leaves unknown"),
         row("NEARLY_ALONG", NEARLY_ALONG * u, "squared sine of the angle between two lines that hardly cross"),
