@@ -72,7 +72,8 @@ UNIT = OperationCount(additions=1, multiplications=4, divisions=1, roots=1)  # (
 SETTLE = OperationCount(additions=1)  # how far a returned angle is from its seed
 SHARED_ROOT = OperationCount(multiplications=2, divisions=1)  # the same where its length is known
 TIDY = OperationCount(additions=2, multiplications=5)  # a pair of almost length 1 brought to length 1
-_NEWTON = OperationCount(additions=7, multiplications=16, divisions=1)  # two equations in two unknowns
+DOUBT = OperationCount(divisions=1, roots=1)  # how far off an angle may be
+_NEWTON = OperationCount(additions=7, multiplications=19, divisions=1)  # two equations in two unknowns
 _TURN_BY = OperationCount(additions=2, multiplications=2) + UNIT
 _SEARCH_STEPS = {24: 30, 53: 60}  # of one root of a polynomial, by the bits of the number type
 _MOST_CROSSINGS = 6  # that one polynomial of fourth degree can note, double ones included
@@ -224,7 +225,8 @@ def _nodes_of(step: Step) -> tuple[list[Node], list[Node]]:
     """What a step reads once, and what it reads in every pass."""
     match step:
         case DirectionStep():
-            return [node for node in (step.turned,) if node] + [step.x, step.y], []
+            read = step.rough or step.doubt is not None
+            return [*([step.turned] if read and step.turned is not None else []), step.x, step.y], []
         case BalanceStep():
             extra = [step.flat] if step.size is None else [step.flat, step.size, step.target]
             return [node for node in extra if node] + [step.square, step.x, step.y], []
@@ -247,9 +249,12 @@ def _form_count(
     match step:
         case DirectionStep():
             unit = _NOTHING if step.pair in unread else UNIT
-            return unit + _settled_turn(derivation, step.joint, options)
+            return unit + DOUBT.times(int(step.doubt is not None)) + _settled_turn(derivation, step.joint, options)
         case BalanceStep():
-            return OperationCount(roots=1) + _balance_count(step) + TIDY + _settled_turn(derivation, step.joint, options)
+            to_length = UNIT if step.doubts else TIDY
+            doubts = DOUBT.times(int(step.doubt is not None)) + OperationCount(additions=len(step.doubts))
+            own = OperationCount(roots=1) + _balance_count(step) + to_length + doubts
+            return own + _settled_turn(derivation, step.joint, options)
         case SlideStep():
             return _division(step) + _settled_slide(derivation, step.joint)
         case SlideRootsStep():

@@ -14,7 +14,7 @@ from codegen.options import Options
 if TYPE_CHECKING:
     from codegen.tracking.steps_context import StepsContext
 
-_RETRACING_STEPS = 4  # from a place that is nearly right
+_RETRACING_STEPS = 8  # from a place that is nearly right; near a root of four they shrink what is left by a third only
 
 
 def generate(arm: Arm, options: Options, source: Source | None = None) -> dict[str, str]:

@@ -22,9 +22,11 @@ from codegen.options import Options, RealType
 from codegen.pipeline import generate
 
 FOLDER = Path(__file__).parent / "fixtures" / "odd_arms"
-# on these two the elbow's fold, or a free joint, may coincide with a place where the elimination degenerates
+# on these the elbow's fold, or a free joint, may coincide with a place where the elimination degenerates
 COUPLED = ("offset_wrist", "parallel_wrist")
-WHOLE = sorted(path.stem for path in FOLDER.glob("*.toml") if path.stem not in COUPLED)
+# two folds in one place: float leaves more unknown of the second than there is of it
+FOLDED = "flat_crank"
+WHOLE = sorted(path.stem for path in FOLDER.glob("*.toml") if path.stem not in (*COUPLED, FOLDED))
 SAMPLES = 1000
 
 each_real = pytest.mark.parametrize(
@@ -52,7 +54,15 @@ def test_only_places_where_two_things_degenerate_at_once_are_lost(name: str, rea
     report = report_of(name, real)
     failed = {result.check: result for result in report.results if result.failed}
     assert failed.keys() <= {Check.EDGE, Check.FREE_JOINT}, to_text(report)
-    assert all(result.failed <= 0.015 * result.cases for result in failed.values()), to_text(report)
+    assert all(result.failed <= 0.005 * result.cases for result in failed.values()), to_text(report)
+
+
+@each_real
+def test_a_fold_hides_no_fold_behind_it(real: RealType) -> None:
+    """A joint whose equation is smaller than what the fold before it leaves unknown is looked for from its seed."""
+    edges = next(result for result in report_of(FOLDED, real).results if result.check is Check.EDGE)
+    assert edges.cases > 30
+    assert edges.failed == 0, edges.failure
 
 
 @pytest.mark.parametrize("name", COUPLED)

@@ -32,7 +32,7 @@ _HELPERS = (
     "abs", "sqrt", "root", "exceeds", "angle_of", "sin_cos", "is_finite", "turn", "unit", "keep", "turns",
     "settle_turn", "opposite", "settle_slide", "signed_root", "within", "all_usable", "tidy", "clean_rotation", "other_turn",
     "turn_roots", "slide_roots", "keep_free", "turn_number", "slide_number", "quartic_roots", "newton2",
-    "turn_by",
+    "turn_by", "doubt",
 )  # fmt: skip
 
 
@@ -139,7 +139,7 @@ def _context(
         "branches": derivation.plan.branches,
         "maths": maths_context(options),
         "constants": constants.declarations(),
-        "tolerances": tolerance_rows(arm, options, steps is not None),
+        "tolerances": tolerance_rows(arm, options, derivation.plan.approximate),
         "forward": forward,
         "jacobian": jacobian,
         "stages": [_stage_context(stage) for stage in stages],

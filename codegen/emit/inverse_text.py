@@ -67,6 +67,7 @@ class InverseText:
         self._find_carried()
         reached = set(reachable([node for _, node in self.reach_misses()]))
         leaves = {**{leaf: name for leaf, (name, _) in self.leaves.items()}, **self.held}
+        self.pair_stems = {_stem(name) for name in leaves.values() if name != _stem(name)}
         self.kept = Kept(
             frozenset(self.known), frozenset(_stem(name) for leaf, name in leaves.items() if leaf in reached)
         )
@@ -270,7 +271,7 @@ class InverseText:
 
     def _declared(self, stem: str) -> str:
         p = self.options.prefix
-        return f"{p}_real {stem};" if stem.endswith("_slide") else f"{p}_pair {stem};"
+        return f"{p}_pair {stem};" if stem in self.pair_stems else f"{p}_real {stem};"
 
     def _joint_pairs(self) -> dict[int, tuple[str, Pair]]:
         """Per turning joint of the arm the pair that its angle is found from, and what it is called."""
@@ -340,6 +341,8 @@ def made_known(step: Step) -> list[Pair | Node]:
     """The values that a step makes known, temporary ones included."""
     if hasattr(step, "pair"):
         made: list[Pair | Node] = [step.pair]
+        if isinstance(step, DirectionStep | BalanceStep) and step.doubt is not None:
+            made.append(step.doubt)
         if isinstance(step, BalanceStep):
             made.append(step.root)
         if isinstance(step, QuarticStep):

@@ -34,6 +34,7 @@ SQUARED = {  # the same for squares
     Least.LENGTH: "LEAST_LENGTH * LEAST_LENGTH",
     Least.AREA: "LEAST_LENGTH * LEAST_LENGTH * REACH * REACH",
 }
+LINEAR = {Least.ANGLE_SQUARED: Least.ANGLE, Least.LENGTH_SQUARED: Least.LENGTH}  # of what is one of the factors
 LEASTS = {
     Least.ANGLE: "LEAST_ANGLE",
     Least.ANGLE_SQUARED: "LEAST_ANGLE * LEAST_ANGLE",
@@ -47,20 +48,22 @@ def step_roots(step: Step) -> list[Node]:
     """The values that a step's statements read."""
     match step:
         case DirectionStep():
-            own = [step.x, step.y] if step.turned is None else [step.turned, step.x, step.y]
+            read = step.rough or step.doubt is not None
+            own = [step.turned, step.x, step.y] if read and step.turned is not None else [step.x, step.y]
             return own if step.absorbed is None else [*own, step.absorbed.x, step.absorbed.y]
         case BalanceStep():
             extra = [node for node in (step.size, step.flat) if node is not None]
             target = [] if step.size is None or step.target.is_exactly(0) else [step.target]
-            return [*extra, *target, step.square, step.x, step.y]
+            return [*extra, *target, *step.doubts, step.square, step.x, step.y]
         case SlideStep():
             return [step.numerator, step.denominator]
         case SlideRootsStep():
-            return [step.flat, step.middle, step.square]
+            return [*step.doubts, step.flat, step.middle, step.square]
         case QuarticStep():
             return [] if step.det is None or step.det.is_constant else [step.det]
         case RefineStep():
-            return [*step.scales, *step.residuals, *step.slopes[0], *step.slopes[1]]
+            side = [] if step.side is None else [step.side]
+            return [*side, *step.scales, *step.residuals, *step.slopes[0], *step.slopes[1]]
         case _:
             return []
 
@@ -165,7 +168,7 @@ class Statements:
             self._store(name, step.joint)
             return
         self.put(f"{self.p}_pair {name};")
-        if step.turned is not None:
+        if step.rough:
             self._direction_or_seed(step, name, (x, y))
         elif least is None:
             self.put(f"(void){self.p}_unit({x}, {y}, {self.zero}, &{name});")
@@ -180,6 +183,8 @@ class Statements:
             self.put(f"if (!{self.p}_unit({x}, {y}, {least}, &{name})) {{")
             self.put("    /* the pose leaves it free: it keeps its seed */")
             self._keep_seed(step.joint, step.seed, name, step.absorbed)
+        if not step.rough:
+            self._doubt(step.doubt, step.turned, step.least)
         self._store(name, step.joint)
         if step.absorbed is not None:
             self._store(self._name(step.absorbed.pair), step.absorbed.joint)
@@ -202,13 +207,21 @@ class Statements:
     def _direction_or_seed(self, step: DirectionStep, name: str, target: tuple[str, str]) -> None:
         """What an approximate root may make up out of rounding is not read."""
         assert step.turned is not None
-        size = "LEAST_ROUGH * LEAST_ROUGH" + (" * REACH * REACH" if step.least is Least.LENGTH else "")
-        self.put(f"if ({self.scope.value(step.turned)} > {size}) {{")
+        turned, length = self.scope.value(step.turned), step.least is Least.LENGTH
+        if step.doubt is not None:
+            self.put(f"{self.p}_real {step.doubt.name};")
+        self.put(f"if ({turned} > LEAST_ROUGH * LEAST_ROUGH{' * REACH * REACH' if length else ''}) {{")
         self.put(f"    (void){self.p}_unit({target[0]}, {target[1]}, {self.zero}, &{name});")
+        if step.doubt is not None:
+            self.put(f"    {step.doubt.name} = {self.p}_doubt({turned}, LEAST_ROUGH{' * REACH' if length else ''});")
         self.put("} else {  /* it hardly moves what it is to be found from: it starts at its seed */")
         self.put(f"    {name} = {self._seed_pair(step.seed)};")
         self.put("    work->marks |= MARK_EDGE | MARK_NEARLY_FREE;")
+        if step.doubt is not None:
+            self.put(f"    {step.doubt.name} = FAR;  /* any */")
         self.put("}")
+        if step.doubt is not None:
+            self._store(step.doubt.name)
 
     def _keep_seed(self, joint: int | None, seed: SeedAngle, name: str, absorbed: Absorption | None = None) -> None:
         self.put("    work->marks |= MARK_FREE | MARK_EDGE;")
@@ -248,13 +261,36 @@ class Statements:
         for side in (step.x, step.y):
             self._ready_without(side, step.root)
         if step.size is None:
-            self._root(name, square, self.slack, flat)
+            self._root(name, square, self._slack(step.doubts), flat)
             self.put(f"{name}.c = {self.scope.text(step.x)};")
             self.put(f"{name}.s = {self.scope.text(step.y)};")
-            self.put(f"{self.p}_tidy(&{name});")
+            self._bring_to_length(step, name)
         else:
             self._balance_or_free(step, name, (square, flat))
+        self._doubt(step.doubt, step.size, step.least, f"{name}_hidden" if _may_be_hidden(step) else "")
         self._store(name, step.joint)
+
+    def _bring_to_length(self, step: BalanceStep, name: str) -> None:
+        """Of a pair whose length is 1 but for rounding, or but for what earlier joints leave in doubt."""
+        if step.doubts:
+            self.put(f"(void){self.p}_unit({name}.c, {name}.s, {self.zero}, &{name});")
+        else:
+            self.put(f"{self.p}_tidy(&{name});")
+
+    def _doubt(self, doubt: Node | None, square: Node | None, least: Least, hidden: str = "") -> None:
+        """How far off an angle may be that was found from a direction; its squared length is given."""
+        if doubt is None or square is None:
+            return
+        text = f"{self.p}_doubt({self.scope.value(square)}, {LEASTS[LINEAR.get(least, least)]})"
+        text = f"{hidden} ? FAR : {text}" if hidden else text
+        self.put(f"const {self.p}_real {doubt.name} = {text};")
+        self._store(doubt.name)
+
+    def _slack(self, doubts: tuple[Node, ...]) -> str:
+        """How negative a square may be in parts of what it can be."""
+        if not doubts:
+            return self.slack
+        return f"({' + '.join([self.slack, *(self.scope.value(doubt) for doubt in doubts)])})"
 
     def _flat(self, step: BalanceStep | SlideRootsStep) -> str:
         if step.flat is None or step.flat.is_exactly(0):
@@ -276,22 +312,38 @@ class Statements:
         square, flat = values
         target = self.scope.value(step.target)
         size, least, least_square = self.scope.value(step.size), LEASTS[step.least], SQUARED[step.least]
-        self.put(f"if ({self.p}_exceeds({size}, {least_square})) {{")
-        self.scope.indent += "    "
-        slack = f"{self.slack} * {size}"
+        slack = f"{self._slack(step.doubts)} * {size}"
         if not step.target.is_exactly(0):
             slack += f" + {least} * {self.p}_abs({target})"
+        if _may_be_hidden(step):
+            self.put(f"const {self.p}_real {name}_slack = {slack};")
+            slack = f"{name}_slack"
+            self._seed_where_hidden(step, name, (square, size))
+            self.put(f"}} else if ({self.p}_exceeds({size}, {least_square})) {{")
+        else:
+            self.put(f"if ({self.p}_exceeds({size}, {least_square})) {{")
+        self.scope.indent += "    "
         self._root(name, square, slack, flat)
         self.put(f"const {self.p}_real scale = {literal(1, self.options.real)} / {size};")
         self.put(f"{name}.c = ({self.scope.text(step.x)}) * scale;")
         self.put(f"{name}.s = ({self.scope.text(step.y)}) * scale;")
-        self.put(f"{self.p}_tidy(&{name});")
+        self._bring_to_length(step, name)
         self.scope.indent = self.scope.indent[4:]
         if not step.target.is_exactly(0):
             self.put(f"}} else if ({self.p}_abs({target}) > {least}) {{")
             self.put("    return false;  /* out of reach */")
         self.put("} else {  /* the pose leaves it free: it keeps its seed */")
         self._keep_seed(step.joint, step.seed, name)
+
+    def _seed_where_hidden(self, step: BalanceStep, name: str, values: tuple[str, str]) -> None:
+        """Where an earlier root at its own fold leaves more unknown than A, B and C amount to; a branch left open."""
+        square, size = values
+        rough = " * ".join(["LEAST_ROUGH"] * 2 + ["REACH"] * {Least.ANGLE: 0, Least.LENGTH: 2}.get(step.least, 4))
+        self.put(f"const bool {name}_hidden = ({square} < -{name}_slack)")
+        self.put(f"        && {self.p}_within({square}, {rough}) && {self.p}_within({size}, {rough});")
+        self.put(f"if ({name}_hidden) {{  /* rounding hides it: it starts at its seed */")
+        self.put(f"    {name} = {self._seed_pair(step.seed)};")
+        self.put("    work->marks |= MARK_EDGE | MARK_NEARLY_FREE;")
 
     def _root(self, name: str, square: str, slack: str, flat: str) -> None:
         self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {flat}, second, &{name}_root)) {{")
@@ -336,7 +388,7 @@ class Statements:
         name, root = step.value.name, step.root.name
         square, middle = self.scope.value(step.square), self.scope.value(step.middle)
         self.put(f"{self.p}_real {root};")
-        slack = f"{self.slack} * REACH * REACH"
+        slack = f"{self._slack(step.doubts)} * REACH * REACH"
         self.put(f"if (!{self.p}_signed_root(work, {square}, {slack}, {self._flat(step)}, second, &{root})) {{")
         self.put("    return false;  /* out of reach */")
         self.put("}")
@@ -386,24 +438,30 @@ class Statements:
             self._start_variable(variable)
         scales = ", ".join(self.scope.value(node) for node in step.scales)
         self.put(f"const {self.p}_real scales[2] = {{{scales}}};")
+        if step.side is not None:
+            self.put(f"{self.p}_real determinant = {self.zero};")
         self.put(f"for (int pass = 0; pass < {step.passes}; ++pass) {{")
         self.scope.indent += "    "
         known = dict(self.scope.names)
         first, second = (self.scope.value(node) for node in step.residuals)
         slopes = [self.scope.value(node) for row in step.slopes for node in row]
         self.put(f"{self.p}_real change[2];")
-        self.put(f"{self.p}_newton2({', '.join([*slopes, first, second])}, scales, change);")
+        result = "(void)" if step.side is None else "determinant = "
+        self.put(f"{result}{self.p}_newton2({', '.join([*slopes, first, second])}, scales, change);")
         for k, variable in enumerate(step.variables):
             self._change_variable(variable, k)
         self.scope.names = known
         self.scope.indent = self.scope.indent[4:]
         self.put("}")
-        self._stay_near(step.variables[1])
+        self._stay_near(step.variables[1], step.side)
         for variable in step.variables:
             self._finish_variable(variable)
 
-    def _stay_near(self, variable: Variable) -> None:
-        """The root of the outer joint was one: polishing must not have run to another."""
+    def _stay_near(self, variable: Variable, side: Node | None) -> None:
+        """The root of the outer joint was one: polishing must not have run to another, which lies on the other side."""
+        if side is not None:
+            self._stay_on_side(variable, self.scope.text(side))
+            return
         if isinstance(variable.during, Pair):
             assert isinstance(variable.before, Pair)
             before, after = self._name(variable.before), self._name(variable.during)
@@ -415,6 +473,18 @@ class Statements:
             far = f"{distance} > {literal(Fraction(1, 8), self.options.real)} * REACH"
         self.put(f"if ({far}) {{  /* it ran to another root: there is none here */")
         self.put("    return false;")
+        self.put("}")
+
+    def _stay_on_side(self, variable: Variable, side: str) -> None:
+        assert isinstance(variable.before, Pair)
+        assert isinstance(variable.during, Pair)
+        before, after = self._name(variable.before), self._name(variable.during)
+        self.put(f"const {self.p}_real kept = {before}.c * {after}.c + {before}.s * {after}.s;")
+        nearly = literal(1 - 4 * SLACK * self.options.real.rounding, self.options.real)
+        least = literal(_KEPT, self.options.real)
+        wrong = f"(({side}) * determinant < {self.zero})" if " " in side else f"({side} * determinant < {self.zero})"
+        self.put(f"if ((kept < {nearly}) && ((kept < {least}) || {wrong})) {{")
+        self.put("    return false;  /* it ran to another root: there is none here */")
         self.put("}")
 
     def _start_variable(self, variable: Variable) -> None:
@@ -443,6 +513,14 @@ class Statements:
             self.put(f"const {self.p}_real {name} = {variable.during.name};")
             self._settle_slide(variable.joint, name)
             self._store(name)
+
+
+_KEPT = Fraction(31, 32)  # cosine of how far polishing may move a root, which rounding does near a fold of two folds
+
+
+def _may_be_hidden(step: BalanceStep) -> bool:
+    """Whether what an earlier root leaves unknown may be more than A, B and C amount to."""
+    return step.size is not None and step.size.stage > 0 and not step.target.is_exactly(0)
 
 
 def _leaves_of(node: Node) -> set[Node]:

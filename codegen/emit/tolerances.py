@@ -16,8 +16,9 @@ from codegen.options import Options
 
 FREE_TURN, SLACK, STEP, EXCESS, FLAT = 32, 4096, 4, 16, 8
 FREE = {24: 16, 53: 32}  # a pose in double is often computed in double: its own rounding counts
-# by significand bits: of the reach, and an angle, rad: no more than twice what is promised, as at any edge
-MISS = {24: (16, 67), 53: (86, 360)}
+# by significand bits: of the reach, and an angle, rad: with the rounding of the joint values no more than twice what is
+# promised, as at any edge
+MISS = {24: (16, 60), 53: (86, 320)}
 RETRACED = {24: (8, 24), 53: (40, 110)}
 ROUGH = 512  # a double root is known to the root of this many roundings
 NEARLY_ALONG = 1024  # below, two nearly equal roots are told apart otherwise
@@ -35,12 +36,12 @@ def reach_of(arm: Arm) -> Fraction:
     return total or Fraction(1)
 
 
-def tolerance_rows(arm: Arm, options: Options, retraced: bool = False) -> list[tuple[str, str, str]]:
-    """(name, literal, comment). `retraced`: a solution that misses is not given up but brought nearer."""
+def tolerance_rows(arm: Arm, options: Options, approximate: bool = False) -> list[tuple[str, str, str]]:
+    """(name, literal, comment). `approximate`: a solution from approximate roots is brought nearer where it need not be."""
     u, reach = options.real.rounding, reach_of(arm)
     high, low = _full_turn(options)
     spread = MP.sqrt(2) if arm.task is Task.POSE else MP.mpf(1)  # a small turn's share in the entries of its matrix
-    miss, turn = (RETRACED if retraced else MISS)[options.real.bits]
+    miss, turn = (RETRACED if approximate else MISS)[options.real.bits]
 
     def row(name: str, value: object, comment: str) -> tuple[str, str, str]:
         return name, literal(value, options.real), comment

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import assert_never
 
-from codegen.emit.tolerances import NEARLY_ALONG, reach_of
+from codegen.emit.tolerances import NEARLY_ALONG, ROUGH, reach_of
 from codegen.explain.formula import Line, Sheet
 from codegen.explain.markdown import block
 from codegen.explain.singular import free_text, merging_text
@@ -188,6 +189,12 @@ class StepText:
             f"{along[RealType.FLOAT]:.3g}",
             f"in float; {along[RealType.DOUBLE]:.3g} in double: a squared sine below which two lines hardly cross",
         )
+        rough = {real: math.sqrt(ROUGH * real.rounding) for real in RealType}
+        self.sheet.say(
+            "LEAST_ROUGH",
+            f"{rough[RealType.FLOAT]:.3g}",
+            f"in float; {rough[RealType.DOUBLE]:.3g} in double: part of a unit vector that a double root leaves unknown",
+        )
         return [
             f"The equation rises through roots on the positive side where `{name}_det` is positive, and falls through them "
             f"where it is negative. Where it vanishes, roots come in equal pairs that differ in the other joint: below, "
@@ -273,7 +280,7 @@ def _numbering(step: QuarticStep | SlideQuarticStep, digits: Digits) -> str:
         return (
             f"Bit {digits[0]} is the side of the Jacobian that a root lies on: the sign of the determinant of the slopes of "
             f"the two equations that {step.angle} came from, 0 where it is positive. It changes where the arm folds, and "
-            f"nowhere else. Bit {digits[1]} counts the roots of one side in rising order, from an angle of -143.13 degrees."
+            f"nowhere else. Bit {digits[1]} counts the roots of one side in rising order, from an angle of -142.93 degrees."
         )
     return (
         f"Bit {digits[0]} is 0 where the left side rises through zero as {step.angle} grows, 1 where it falls; "

@@ -43,6 +43,8 @@ def solve_direction2(solver: Solver, problem: DirectionProblem, what: str) -> bo
     name = solver.label(first.joint.index)
     space.named(turned, f"{name}_from", f"{what}, before {name} turns it")
     solver.turn_onto(first, turned, way.v, Least.ANGLE_SQUARED, f"{what}: {name} turns it to its place")
+    if not balance.exact:
+        solver.never_free()
     _absorb_tilt(solver, way)
     return True
 

@@ -42,8 +42,11 @@ class DirectionStep:
 
     joint  the joint that it settles; None for the angle of a group, or where a later step settles the joint
     Where x and y both vanish the pose leaves the angle free: it keeps its seed.
-    turned the squared size of what the joint turns, where that comes from an approximate root: no larger than such a
-           root leaves unknown, it says nothing of the joint, which then starts from its seed
+    turned the squared size of what the joint turns, by which its direction may be off
+    rough  that comes from an approximate root: no larger than such a root leaves unknown, it says nothing of the joint,
+           which then starts from its seed
+    doubt  how far off the angle may be by rounding alone, rad, and 1 where it is free; made known by the step, and there
+           only where a later root hangs on it
     """
 
     joint: int | None
@@ -56,6 +59,8 @@ class DirectionStep:
     note: str
     absorbed: Absorption | None = None
     turned: Node | None = None
+    rough: bool = False
+    doubt: Node | None = None
     roots: int = 1
 
 
@@ -69,6 +74,8 @@ class BalanceStep:
     side    A s - B c
     flat    times a few roundings: a square up to this is zero but for rounding, and taking it as zero costs no accuracy;
             None where the square keeps its digits down to zero and every one of them counts
+    doubt   as in DirectionStep
+    doubts  of earlier joints: their rounding alone may make the square negative by so much of what it can be
     """
 
     joint: int | None
@@ -86,6 +93,8 @@ class BalanceStep:
     meaning: str
     note: str
     flat: Node | None = None
+    doubt: Node | None = None
+    doubts: tuple[Node, ...] = ()
     roots: int = 2
 
 
@@ -106,7 +115,8 @@ class SlideStep:
 class SlideRootsStep:
     """middle +- sqrt(square): two roots, by the sign of value - middle.
 
-    flat  times a few roundings: a square up to this is zero but for rounding (BalanceStep)
+    flat    times a few roundings: a square up to this is zero but for rounding (BalanceStep)
+    doubts  as there, of the reach squared
     """
 
     joint: int
@@ -119,6 +129,7 @@ class SlideRootsStep:
     meaning: str
     note: str
     flat: Node
+    doubts: tuple[Node, ...] = ()
     roots: int = 2
 
 
@@ -184,6 +195,7 @@ class RefineStep:
 
     slopes  d residual / d variable
     scales  squared sizes that slopes of the two equations have on this arm: against these the steps are damped
+    side    the sign that the determinant of the slopes has at the root wanted, where that is known
     """
 
     variables: tuple[Variable, Variable]
@@ -191,6 +203,7 @@ class RefineStep:
     slopes: tuple[tuple[Node, Node], tuple[Node, Node]]
     note: str
     scales: tuple[Node, Node]
+    side: Node | None = None
     passes: int = 5
     roots: int = 1
 
@@ -214,14 +227,21 @@ class Plan:
     structure: tuple[str, ...] = ()
 
     @property
+    def approximate(self) -> bool:
+        """Whether some root is an approximate one of a quartic, polished."""
+        return any(isinstance(step, RefineStep) for step in self.steps)
+
+    @property
     def retraced(self) -> bool:
         """Whether a solution may have to be brought nearer by steps.
 
         Formulas lose digits where roots are polished. And where the size of a balance hangs on an earlier root, two folds
-        may meet: the first joint then takes what the pose's rounding leaves, and the second cannot make up for it.
+        may meet: the first joint then takes what the pose's rounding leaves, and the second cannot make up for it. So it is
+        where a joint is nearly free, and a later root hangs on it.
         """
-        return any(
-            isinstance(step, RefineStep) or (isinstance(step, BalanceStep) and step.size is not None and step.size.stage > 0)
+        return self.approximate or any(
+            (isinstance(step, BalanceStep) and step.size is not None and step.size.stage > 0)
+            or (isinstance(step, BalanceStep | SlideRootsStep) and bool(step.doubts))
             for step in self.steps
         )
 

@@ -148,6 +148,8 @@ def _two_turns(solver: Solver, way: PlaneElimination, what: str) -> bool:
     normal = space.times(solver.motion(inner).rotation, plane.normal)
     normal = space.times(segment.cores[0].middle.rotation, normal)
     solver.turn_onto(segment.uses[0], normal, way.problem.goal.normal, Least.ANGLE_SQUARED, what)
+    if way.outer.kind == "quartic":
+        solver.start_at_seed_below(Least.ANGLE)
     return True
 
 

@@ -84,7 +84,9 @@ def polish(solver: Solver, pairing: Pairing, what: str) -> None:
     )
     residuals, slopes = _newton(solver, pairing, (variables[0].during, variables[1].during))
     note = f"{what}: polish both roots on the two equations they came from"
-    solver.refine(RefineStep(variables, residuals, slopes, note, _scales(solver, pairing)))
+    if side is not None and inner.sign < 0:
+        side = solver.builder.neg(side)
+    solver.refine(RefineStep(variables, residuals, slopes, note, _scales(solver, pairing), side))
     for use, variable in zip((inner, outer), variables, strict=True):
         if isinstance(variable.after, Pair):
             solver.pairs[use.joint.index] = variable.after
@@ -114,10 +116,14 @@ def _scales(solver: Solver, pairing: Pairing) -> tuple[Node, Node]:
 
 
 def _reach(solver: Solver) -> Node:
+    return _tolerance(solver, "REACH")
+
+
+def _tolerance(solver: Solver, name: str) -> Node:
     """A tolerance of the generated C."""
-    reach = solver.builder.input("REACH")
-    solver.oracle.declare_real(reach)
-    return reach
+    value = solver.builder.input(name)
+    solver.oracle.declare_real(value)
+    return value
 
 
 def _number_roots(solver: Solver, pairing: Pairing) -> Node | None:
@@ -154,7 +160,7 @@ def _inner_from_outer(solver: Solver, pairing: Pairing, side: Node | None, what:
         apart = _clearly_apart(solver, equations, pairing.det)
         z_x, z_y = b.choice(apart, z_x, other[0]), b.choice(apart, z_y, other[1])
     solver.turn_onto(inner, known, (z_x, z_y, known[2]), Least.NOTHING, note, settles=False)
-    solver.start_at_seed_below(turned, Least.ANGLE if equations[0].least is Least.ANGLE else Least.LENGTH)
+    solver.start_at_seed_below(Least.ANGLE if equations[0].least is Least.ANGLE else Least.LENGTH)
     return solver.pairs[inner.joint.index]
 
 
@@ -170,8 +176,7 @@ def _clearly_apart(solver: Solver, equations: list[Equation], det: Node) -> Node
     lengths, their rounding counts.
     """
     b = solver.builder
-    nearly_along = b.input(NEARLY_ALONG)  # a tolerance, too
-    solver.oracle.declare_real(nearly_along)
+    nearly_along = _tolerance(solver, NEARLY_ALONG)
     link = b.half(b.half(_reach(solver)))  # a length that lengths of this arm may have
     sizes = b.add(_across(solver, equations[1]), b.mul(b.square(link), _across(solver, equations[0])))
     return b.sub(b.square(det), b.mul(nearly_along, sizes))
@@ -183,23 +188,37 @@ def _by_one_equation(
     """A positive multiple of Z from the equation that says more; it has two roots, told apart by `side`.
 
     Where the two equations are nearly one, the outer joint's roots come in nearly equal pairs, which differ by Z alone:
-    the sign of det(J) is that of (a x Z) (C_other' - k C'), with a_other = k a.
+    the sign of det(J) is that of (a x Z) (C_other' - k C'), with a_other = k a. At a fold that sign is rounding's: where one
+    of the two fits the other equation far better, it is the one.
     """
     b = solver.builder
     first, second = equations
     across = b.sub(b.mul(first.a[0], second.a[0]), b.neg(b.mul(first.a[1], second.a[1])))  # their scalar product
 
-    def solved(equation: Equation, value: Node, own_slope: Node, other_slope: Node, turn: int) -> tuple[Node, Node]:
+    def solved(k: int, turn: int) -> tuple[Node, Node]:
+        equation, value, own_slope, other_slope = equations[k], values[k], slopes[k], slopes[1 - k]
         size = _across(solver, equation)
         height = b.sqrt(b.sub(b.mul(size, turned), b.square(value)))
         bend = b.sub(b.mul(other_slope, size), b.mul(across, own_slope))
         sign = b.mul(b.integer(turn), side)
-        signed = b.mul(height, b.choice(bend, sign, b.neg(sign)))
         a_x, a_y = equation.a[0], equation.a[1]
+        by_side = b.choice(bend, sign, b.neg(sign))
+        signed = b.mul(height, fitting(k, height, size, by_side))
         return b.sub(b.mul(a_x, value), b.mul(a_y, signed)), b.add(b.mul(a_y, value), b.mul(a_x, signed))
 
-    by_first = solved(first, values[0], slopes[0], slopes[1], 1)
-    by_second = solved(second, values[1], slopes[1], slopes[0], -1)
+    def fitting(k: int, height: Node, size: Node, by_side: Node) -> Node:
+        """The sign of the height with which the other equation, too, holds: what it misses by is base +- rise."""
+        a, other = equations[k].a, equations[1 - k]
+        base = b.sub(b.mul(across, values[k]), b.mul(values[1 - k], size))
+        slant = b.sub(b.mul(a[0], other.a[1]), b.mul(a[1], other.a[0]))
+        rise = b.size(b.mul(height, slant))
+        one = b.integer(1)
+        by_fit = b.choice(b.mul(base, slant), b.neg(one), one)
+        far_better = b.sub(rise, b.mul(b.integer(8), b.size(b.sub(b.size(base), rise))))
+        rough = b.mul(b.square(_tolerance(solver, "LEAST_ROUGH")), b.mul(b.square(size), b.mul(_across(solver, other), turned)))
+        return b.choice(b.sub(b.square(rise), rough), b.choice(far_better, by_fit, by_side), by_side)
+
+    by_first, by_second = solved(0, 1), solved(1, -1)
     enough = b.half(b.half(b.half(b.integer(1))))
     says_more = b.sub(_across(solver, first), b.square(enough))
     return b.choice(says_more, by_first[0], by_second[0]), b.choice(says_more, by_first[1], by_second[1])

@@ -121,23 +121,31 @@ class Solver:
         return self.space.slide_z(self.own_slide(use))
 
     # -- forms -------------------------------------------------------------------------------------------------------
-    def direction(self, use: Use, x: Node, y: Node, least: Least, note: str, settles: bool = True) -> Pair:
+    def direction(
+        self, use: Use, x: Node, y: Node, least: Least, note: str, settles: bool = True, turned: Node | None = None
+    ) -> Pair:
         """The joint from (c, s) along (x, y)."""
         if use.sign < 0:
             y = self.builder.neg(y)
         name = self.label(use.joint.index)
         pair = self.new_pair(name if settles else f"{name}_rough")
         joint = use.joint.index if settles and self.is_real(use) else None
-        self.steps.append(DirectionStep(joint, name, pair, x, y, least, self.seed_of(use), note))
+        self.steps.append(DirectionStep(joint, name, pair, x, y, least, self.seed_of(use), note, turned=turned))
         self.pairs[use.joint.index] = pair
         return self.own_pair(use)
 
-    def start_at_seed_below(self, turned: Node, least: Least) -> None:
+    def start_at_seed_below(self, least: Least) -> None:
         """The direction just found says nothing where the squared size of what it turns is as small as a rough root's
         error."""
         step = self.steps[-1]
         assert isinstance(step, DirectionStep)
-        self.steps[-1] = replace(step, turned=turned, least=least)
+        self.steps[-1] = replace(step, rough=True, least=least)
+
+    def never_free(self) -> None:
+        """What the joint just solved turns is never near its axis: rounding leaves it in no doubt."""
+        step = self.steps[-1]
+        assert isinstance(step, DirectionStep)
+        self.steps[-1] = replace(step, turned=None)
 
     def absorb(self, use: Use, x: Node, y: Node) -> None:
         """Where the joint just solved keeps its seed, `use`, solved before it, goes along (x, y) instead."""
@@ -300,4 +308,5 @@ class Solver:
         b = self.builder
         x = b.add(b.mul(source[0], goal[0]), b.mul(source[1], goal[1]))
         y = b.sub(b.mul(source[0], goal[1]), b.mul(source[1], goal[0]))
-        return self.direction(use, x, y, least, note, settles)
+        turned = b.add(b.square(source[0]), b.square(source[1]))
+        return self.direction(use, x, y, least, note, settles, turned)

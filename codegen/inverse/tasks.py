@@ -7,10 +7,11 @@ heading or pitch becomes a rotation that the parallel axes can reach.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from codegen.geometry import Matrix, Pair, Rigid, Vector
 from codegen.inverse.commuting import orders
+from codegen.inverse.doubt import with_doubts
 from codegen.inverse.goal import Goal, completed_rotation, goal_of, virtual_roll
 from codegen.inverse.groups import at_rest, common_normal, frame_about, planar_normal, turned_about
 from codegen.inverse.plan import Least, Plan
@@ -90,7 +91,10 @@ def derive(arm: Arm) -> Derivation | None:
         cost = (_quartics(derivation.plan), _operations(derivation.plan))
         if best is None or cost < best[0]:
             best = (cost, derivation)
-    return best[1] if best else None
+    if best is None:
+        return None
+    derivation = best[1]
+    return replace(derivation, plan=with_doubts(derivation.plan, derivation.goal, derivation.known_values()))
 
 
 def _quartics(plan: Plan) -> int:
@@ -115,7 +119,7 @@ def step_nodes(step: object) -> list[Node]:
                 gather(item)
 
     for name in step.__dataclass_fields__:  # type: ignore[attr-defined]
-        if name not in ("side", "known", "bit"):
+        if name not in ("side", "known", "bit", "turned", "doubt", "doubts"):
             gather(getattr(step, name))
     return found
 
