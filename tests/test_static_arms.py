@@ -20,7 +20,7 @@ from codegen.pipeline import generate
 ARMS = Path(__file__).parents[1] / "arms"
 FEW_ARMS = ("bench_six", "tray_scara", "vial_picker")
 MORE_ARMS = tuple(sorted(path.stem for path in ARMS.glob("*.toml") if path.stem not in FEW_ARMS))
-MOST_STACK = 384  # bytes on the Cortex-M4F, what the six-joint arm needs at worst now; the aim is 300 and is not met
+MOST_STACK = 432  # bytes on the Cortex-M4F, what the six-joint arm needs at worst now; the aim is 300 and is not met
 
 each_real = pytest.mark.parametrize("real", RealType, ids=lambda real: real.c_name)
 each_check = pytest.mark.parametrize("check", CHECKS, ids=lambda check: check.name)
