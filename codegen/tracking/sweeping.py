@@ -19,7 +19,8 @@ from codegen.tracking.shape import shape_of
 from codegen.tracking.trial import Trial
 from codegen.tracking.walking import Walk
 
-SAMPLES = (64, 128, 256)  # of one branch: the fewest that miss nothing, and twice as many of them to be sure
+COARSE = 32  # samples of one branch, by which ways are compared: so few tell them apart
+SAMPLES = (64, 128, 256)  # the fewest of these that miss nothing, and twice as many of them to be sure
 MOST_BRANCHES = 8
 _STEP_COST = 8  # samples that cost as much as one step
 
@@ -85,14 +86,10 @@ def prepare_sweep(arm: Arm, effort: SweepEffort = SweepEffort()) -> Swept | None
     search = Search(arm, shape, effort.seed)
     trial = Trial(search, effort.choosing_poses, effort.choosing_starts)
     reach = float(shape.reach)
-    tried = [_try(trial, Placing(sweep, reach), SAMPLES[0]) for sweep in ways]
+    tried = [_try(trial, Placing(sweep, reach), COARSE) for sweep in ways]
     best = min(range(len(ways)), key=lambda k: (tried[k].order, k))
-    placing, samples = Placing(ways[best], reach), 2 * SAMPLES[0]
-    missed = tried[best].missed
-    for count in SAMPLES[1:]:
-        if missed == 0:
-            break
-        missed, samples = _try(trial, placing, count).missed, 2 * count
+    placing = Placing(ways[best], reach)
+    samples = 2 * next((count for count in SAMPLES[:-1] if not _try(trial, placing, count).missed), SAMPLES[-1])
     measured = _try(Trial(search, effort.measuring_poses, effort.dense_starts), placing, samples)
     return Swept(
         ways[best],

@@ -25,7 +25,7 @@ FOLD_STEPS = 8
 FOLD_SAMPLES = 4
 LEAST_SHARE = 0.1  # of a bracket that a closing step takes off
 NARROW = 0.05  # what may be left under a root, or missing, where a branch nearly ends
-MOST_LAUNCHES = 96  # of one pose
+MOST_LAUNCHES = 64  # of one pose
 _TURN = 2 * 3.141592653589793
 _PER_SAMPLE = 2 * FOLD_SAMPLES + 4  # launches that one sample can lead to, for their order
 
