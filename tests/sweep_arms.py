@@ -64,4 +64,12 @@ SEVEN_HELD = arm_of(
      ("-80", "0.09", "0.1"), ("0", "0", "0.1")],
     held=("joint3",),
 )  # fmt: skip
-SWEPT = {arm.name: arm for arm in (SHOULDER_AND_WRIST, ODD_TWISTS, MEETING_LAST, TWO_MEETING, WITH_A_SLIDE, SEVEN_HELD)}
+TWO_PARALLEL = arm_of(  # axes 1 and 2, and 3 and 4; no two meet
+    "two_parallel",
+    [("0", "0.4", "0.3"), ("71", "0.3", "0.05"), ("0", "0.35", "0.1"), ("-83", "0.1", "0.12"), ("56", "0.08", "0.1"),
+     ("0", "0.05", "0.1")],
+)  # fmt: skip
+SWEPT = {
+    arm.name: arm
+    for arm in (SHOULDER_AND_WRIST, ODD_TWISTS, MEETING_LAST, TWO_MEETING, TWO_PARALLEL, WITH_A_SLIDE, SEVEN_HELD)
+}

@@ -28,6 +28,7 @@ class SweepContext:
     branches: int
     samples: int
     closing_steps: int
+    valley_steps: int
     fold_steps: int
     fold_samples: int
     launches: int
@@ -42,6 +43,7 @@ def sweep_context(swept: Swept, options: Options, constants: Constants) -> Sweep
         branches=swept.sweep.plan.branches,
         samples=swept.samples,
         closing_steps=walking.CLOSING_STEPS,
+        valley_steps=walking.VALLEY_STEPS,
         fold_steps=walking.FOLD_STEPS,
         fold_samples=walking.FOLD_SAMPLES,
         launches=walking.MOST_LAUNCHES,

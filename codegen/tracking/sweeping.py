@@ -20,7 +20,8 @@ from codegen.tracking.trial import Trial
 from codegen.tracking.walking import Walk
 
 COARSE = 32  # samples of one branch, by which ways are compared: so few tell them apart
-SAMPLES = (64, 128, 256)  # the fewest of these that miss nothing, and twice as many of them to be sure
+SAMPLES = (64, 128)  # the fewer of these if they miss nothing, and twice as many of them to be sure
+MOST_SAMPLES = 512
 MOST_BRANCHES = 8
 _STEP_COST = 8  # samples that cost as much as one step
 
@@ -89,8 +90,11 @@ def prepare_sweep(arm: Arm, effort: SweepEffort = SweepEffort()) -> Swept | None
     tried = [_try(trial, Placing(sweep, reach), COARSE) for sweep in ways]
     best = min(range(len(ways)), key=lambda k: (tried[k].order, k))
     placing = Placing(ways[best], reach)
-    samples = 2 * next((count for count in SAMPLES[:-1] if not _try(trial, placing, count).missed), SAMPLES[-1])
+    samples = 2 * (SAMPLES[0] if not _try(trial, placing, SAMPLES[0]).missed else SAMPLES[1])
     measured = _try(Trial(search, effort.measuring_poses, effort.dense_starts), placing, samples)
+    while measured.missed and samples < MOST_SAMPLES:
+        samples *= 2  # and measured on other poses
+        measured = _try(Trial(search, effort.measuring_poses, effort.dense_starts), placing, samples)
     return Swept(
         ways[best],
         samples,

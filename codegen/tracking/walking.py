@@ -3,7 +3,8 @@
 Along a branch the equation that is left over is sampled all the way round the swept joint. A start is made
 
     between two samples with different signs, after some steps of closing in (regula falsi, kept off the ends),
-    at a sample that is nearer to zero than both its neighbours, where two roots may touch,
+    at a sample that is nearer to zero than both its neighbours, where two roots may touch: on both sides of the least
+    place, where halving finds that it lies beyond zero,
     at the end of a branch, where it folds back into another one: found by halving, and sampled towards it as the square
     root goes that vanishes there,
     at a sample where a branch nearly ends or nearly begins.
@@ -21,13 +22,15 @@ from codegen.tracking.lanes import Flags, Lane, LanePoses, LaneVector
 from codegen.tracking.placing import Numbers, Placing, Samples, joined
 
 CLOSING_STEPS = 4
+VALLEY_STEPS = 6
 FOLD_STEPS = 8
 FOLD_SAMPLES = 4
 LEAST_SHARE = 0.1  # of a bracket that a closing step takes off
 NARROW = 0.05  # what may be left under a root, or missing, where a branch nearly ends
 MOST_LAUNCHES = 64  # of one pose
 _TURN = 2 * 3.141592653589793
-_PER_SAMPLE = 2 * FOLD_SAMPLES + 4  # launches that one sample can lead to, for their order
+_PER_END = 2 * FOLD_SAMPLES + 4  # launches that the end of a branch can lead to, for their order
+_PER_SAMPLE = 2 * _PER_END + 4
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,13 +92,13 @@ class Walk:
 
     def _examine(self, before: Samples, last: Samples, now: Samples, which: _Which) -> None:
         """What happens from the last sample to this one."""
-        ahead = now.angle + np.where(now.angle < last.angle, _TURN, 0.0)
-        now = replace(now, angle=ahead)
+        before = replace(before, angle=before.angle - np.where(before.angle > last.angle, _TURN, 0.0))
+        now = replace(now, angle=now.angle + np.where(now.angle < last.angle, _TURN, 0.0))
         there, still = last.spare >= 0.0, now.spare >= 0.0
         self._close_in(last, now, there & still & signs_differ(last, now), which, 0)
-        self._fold(last, now, there & ~still, which)
-        self._fold(now, last, still & ~there, which)
-        self._launch(last, valley(before, last, now), which, _PER_SAMPLE - 2)
+        self._fold((before, last, now), there & ~still, which, 0)
+        self._fold((now, last, before), there & ~(before.spare >= 0.0), which, _PER_END)
+        self._look_into((before, last, now), valley(before, last, now), which, _PER_SAMPLE - 4)
         self._launch(last, nearly_ends(before, last, now), which, _PER_SAMPLE - 1)
 
     def _at(self, which: _Which, angle: Lane) -> Samples:
@@ -116,26 +119,46 @@ class Walk:
             low, high = middle.where(left, low), high.where(left, middle)
         self._launch(middle, np.ones(len(lanes), dtype=np.bool_), which, later)
 
-    def _fold(self, inside: Samples, outside: Samples, chosen: Flags, which: _Which) -> None:
+    def _look_into(self, row: tuple[Samples, Samples, Samples], chosen: Flags, which: _Which, later: int) -> None:
+        """A valley: halved from either side by turns."""
         lanes = np.flatnonzero(chosen)
         if not len(lanes):
             return
         which = which.take(lanes)
-        inside, outside = inside.take(lanes), outside.take(lanes)
+        left, low, right = (samples.take(lanes) for samples in row)
+        still = np.ones(len(lanes), dtype=np.bool_)
+        for step in range(VALLEY_STEPS):
+            edge, other = (left, right) if step % 2 == 0 else (right, left)
+            probe = self._at(which, 0.5 * (edge.angle + low.angle))
+            crossing = still & (probe.spare >= 0.0) & signs_differ(probe, low)
+            self._close_in(low, probe, crossing, which, later)
+            self._close_in(probe, edge, crossing, which, later + 1)
+            still &= ~crossing
+            lower = (probe.spare >= 0.0) & (np.abs(probe.miss) < np.abs(low.miss))
+            other, edge, low = low.where(lower, other), edge.where(lower, probe), probe.where(lower, low)
+            left, right = (edge, other) if step % 2 == 0 else (other, edge)
+        self._launch(low, still, which, later)
+
+    def _fold(self, row: tuple[Samples, Samples, Samples], chosen: Flags, which: _Which, later: int) -> None:
+        """The branch ends between the middle one of three places in a row and the last one."""
+        lanes = np.flatnonzero(chosen)
+        if not len(lanes):
+            return
+        which = which.take(lanes)
+        behind, inside, outside = (samples.take(lanes) for samples in row)
         edge, beyond = inside.angle, outside.angle
         for _ in range(FOLD_STEPS):
             middle = 0.5 * (edge + beyond)
             there = self._at(which, middle).spare >= 0.0
             edge, beyond = np.where(there, middle, edge), np.where(there, beyond, middle)
-        before, last = inside, inside
+        before, last = behind, inside
         for k in range(1, FOLD_SAMPLES + 1):
             left = 1.0 - k / FOLD_SAMPLES
             now = self._at(which, edge + (inside.angle - edge) * (left * left))
-            self._close_in(last, now, signs_differ(last, now), which, 2 * k)
-            if k > 1:
-                self._launch(last, valley(before, last, now), which, 2 * k + 1)
+            self._close_in(last, now, signs_differ(last, now), which, later + 2 * k)
+            self._look_into((before, last, now), valley(before, last, now), which, later + 2 * k)
             before, last = last, now
-        self._launch(last, np.ones(len(lanes), dtype=np.bool_), which, 2 * FOLD_SAMPLES + 2)
+        self._launch(last, np.ones(len(lanes), dtype=np.bool_), which, later + 2 * FOLD_SAMPLES + 2)
 
     def _launch(self, samples: Samples, chosen: Flags, which: _Which, later: int) -> None:
         lanes = np.flatnonzero(chosen)
@@ -157,9 +180,9 @@ class Walk:
 
 def most_placed(branches: int, samples: int) -> int:
     """Samples of one pose at the very worst: the first two of a branch are taken again at its end, and whatever takes more
-    samples than one ends with a launch; the last launch may be followed by the rest of a fold."""
-    each = FOLD_STEPS + FOLD_SAMPLES + CLOSING_STEPS
-    rest = FOLD_STEPS + FOLD_SAMPLES * (1 + CLOSING_STEPS)
+    samples than one ends with a launch; the last launch may be followed by the rest of two folds."""
+    each = FOLD_STEPS + FOLD_SAMPLES + VALLEY_STEPS + CLOSING_STEPS
+    rest = 2 * FOLD_STEPS + 2 * FOLD_SAMPLES * (1 + VALLEY_STEPS + 2 * CLOSING_STEPS)
     return branches * (samples + 2) + MOST_LAUNCHES * each + rest
 
 
