@@ -69,6 +69,11 @@ TWO_PARALLEL = arm_of(  # axes 1 and 2, and 3 and 4; no two meet
     [("0", "0.4", "0.3"), ("71", "0.3", "0.05"), ("0", "0.35", "0.1"), ("-83", "0.1", "0.12"), ("56", "0.08", "0.1"),
      ("0", "0.05", "0.1")],
 )  # fmt: skip
+ONE_PAIR = arm_of(  # axes 4 and 5 meet, and nothing else is special: every plan has a quartic
+    "one_pair",
+    [("73", "0.31", "0.22"), ("-41", "0.52", "-0.13"), ("112", "-0.24", "0.33"), ("58", "0", "0.12"),
+     ("-97", "0.15", "0.27"), ("36", "0.23", "-0.18")],
+)  # fmt: skip
 SWEPT = {
     arm.name: arm
     for arm in (SHOULDER_AND_WRIST, ODD_TWISTS, MEETING_LAST, TWO_MEETING, TWO_PARALLEL, WITH_A_SLIDE, SEVEN_HELD)
