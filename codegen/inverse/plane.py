@@ -17,7 +17,8 @@ from codegen.inverse.planar import axes_now
 from codegen.inverse.polish import Pairing, polish
 from codegen.inverse.polynomial import Algebra, Poly, PolyVector
 from codegen.inverse.segment import Segment, core_of
-from codegen.inverse.solver import Solver
+from codegen.inverse.solver import Balance, Solver
+from codegen.program import Node
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,8 +144,12 @@ def _two_turns(solver: Solver, way: PlaneElimination, what: str) -> bool:
         )
         if solver.oracle.vanishes(det):
             problem = DirectionProblem(segment.part(0, 2), plane.normal, way.problem.goal.normal)
-            return solve_direction2(solver, problem, what)
-        _inner_from_both(solver, way, plane, what)
+            if solve_direction2(solver, problem, what):
+                return True
+            if not _inner_from_offset(solver, way, plane, what):
+                return False
+        else:
+            _inner_from_both(solver, way, plane, what)
     normal = space.times(solver.motion(inner).rotation, plane.normal)
     normal = space.times(segment.cores[0].middle.rotation, normal)
     solver.turn_onto(segment.uses[0], normal, way.problem.goal.normal, Least.ANGLE_SQUARED, what)
@@ -153,7 +158,9 @@ def _two_turns(solver: Solver, way: PlaneElimination, what: str) -> bool:
     return True
 
 
-def _inner_from_both(solver: Solver, way: PlaneElimination, plane: Plane, what: str) -> None:
+def _inner_equations(solver: Solver, way: PlaneElimination, plane: Plane) -> tuple[list[Equation], list[Node]]:
+    """What the first joint cannot change, with the plane before it known but for the inner joint; and what is left of the
+    right sides as that one turns."""
     space, b = solver.space, solver.builder
     first, core = way.problem.segment.uses[0], way.problem.segment.cores[0]
     algebra = Algebra(b, turns=True)
@@ -169,5 +176,24 @@ def _inner_from_both(solver: Solver, way: PlaneElimination, plane: Plane, what: 
         solver, first, core, constant, algebra.constant(offset), (goal.normal, moved), algebra
     )
     rhs = [b.sub(e.rhs.coefficient((0, 0), space.zero), b.mul(e.a[2], plane.normal[2])) for e in equations]
+    return equations, rhs
+
+
+def _inner_from_both(solver: Solver, way: PlaneElimination, plane: Plane, what: str) -> None:
+    equations, rhs = _inner_equations(solver, way, plane)
     z_x, z_y = solved_for_z(solver, (equations[0], equations[1]), rhs[0], rhs[1])
     solver.turn_onto(way.problem.segment.uses[1], plane.normal, (z_x, z_y, plane.normal[2]), Least.NOTHING, what)
+
+
+def _inner_from_offset(solver: Solver, way: PlaneElimination, plane: Plane, what: str) -> bool:
+    """Parallel axes: the tilt says nothing of the inner joint, the plane's distance alone gives it, two roots."""
+    equations, rhs = _inner_equations(solver, way, plane)
+    b, a, n = solver.builder, equations[1].a, plane.normal
+    cosine_part = b.add(b.mul(a[0], n[0]), b.mul(a[1], n[1]))
+    sine_part = b.sub(b.mul(a[1], n[0]), b.mul(a[0], n[1]))
+    if solver.oracle.vanishes(cosine_part, sine_part):
+        return False
+    inner = way.problem.segment.uses[1]
+    note = f"{what}: {solver.label(inner.joint.index)} by the distance of the plane"
+    solver.balance(inner, Balance(cosine_part, sine_part, rhs[1], Least.LENGTH), note)
+    return True

@@ -88,13 +88,18 @@ def derive(arm: Arm) -> Derivation | None:
     """The cheapest plan: fewest quartics, then fewest operations; None where no closed form is found."""
     best: tuple[tuple[int, int], Derivation] | None = None
     for derivation in derivations(arm):
-        cost = (_quartics(derivation.plan), _operations(derivation.plan))
+        cost = plan_cost(derivation.plan)
         if best is None or cost < best[0]:
             best = (cost, derivation)
     if best is None:
         return None
     derivation = best[1]
     return replace(derivation, plan=with_doubts(derivation.plan, derivation.goal, derivation.known_values()))
+
+
+def plan_cost(plan: Plan) -> tuple[int, int]:
+    """What plans are compared by: quartics, operations."""
+    return _quartics(plan), _operations(plan)
 
 
 def _quartics(plan: Plan) -> int:
@@ -127,9 +132,9 @@ def step_nodes(step: object) -> list[Node]:
 def _attempts(arm: Arm) -> Iterator[Attempt]:
     match arm.task:
         case Task.POSE:
-            yield from _pose_attempts(arm, _pose_problem)
+            yield from _pose_attempts(arm, pose_problem)
         case Task.POINT_AXIS:
-            yield from _pose_attempts(arm, _axis_problem)
+            yield from _pose_attempts(arm, axis_problem)
         case Task.POINT:
             yield _point
         case Task.POINT_PITCH:
@@ -158,7 +163,7 @@ def _pose_attempt(problem_of: Callable[[Goal], PoseProblem], strategy: Strategy,
     return attempt
 
 
-def _pose_problem(goal: Goal) -> PoseProblem:
+def pose_problem(goal: Goal) -> PoseProblem:
     space = goal.space
     before, segment, behind = goal.segment()
     wanted = Rigid(goal.rotation, goal.position)
@@ -169,7 +174,7 @@ def _pose_problem(goal: Goal) -> PoseProblem:
     return PoseProblem(segment, last)
 
 
-def _axis_problem(goal: Goal) -> PoseProblem:
+def axis_problem(goal: Goal) -> PoseProblem:
     """Five joints and a free turn about the tool's z axis."""
     space, solver = goal.space, goal.solver
     before, segment, behind = goal.segment()

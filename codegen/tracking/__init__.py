@@ -7,7 +7,14 @@ lanes, turns  arithmetic on many starts at once, bit for bit alike on every mach
 batch         the steps of the generated C on lanes
 search        random starts and poses, and which solutions each start finds
 starts        the table of starts and its measured share of all solutions
-context       all of it as strings for the templates `tracking*.c.j2`
+beside        starts on both sides of a solution near which another one may lie
+placing       a sweep: where the other joints stand for a value of the swept joint, on lanes
+walking       the places of a sweep from which the steps are to start
+trial         random poses, searched densely, to measure sweeps by
+sweeping      the joint that an arm is swept by, how finely, and its measured share of all solutions
+prepared      which of the two an arm gets
+placing_text  the plan of a sweep as C
+context       all of it as strings for the templates `tracking*.c.j2`; sweep_context for `tracking_sweep.c.j2`
 files         the two generated files
 
 Tried and left: starts whose first and last joint are set by the pose, and residuals divided by the distance to the

@@ -49,12 +49,16 @@ class Batch:
         self.shape = shape
         self._links = [[[float(link[i, j]) for j in range(4)] for i in range(3)] for link in shape.links]
         self._length_scale = float(shape.length_scale)
-        self._units = [1.0 if shape.turning[i] else float(shape.slide_unit) for i in shape.free]
+        self.units = [1.0 if shape.turning[i] else float(shape.slide_unit) for i in shape.free]
         self._plane = [[float(entry) for entry in vector] for vector in shape.plane]
 
     def poses(self, q: LaneVector) -> LanePoses:
         """Tool poses at joint values q: one lane array per joint."""
         return self._placed(q).tool
+
+    def rows(self, q: LaneVector, target: LanePoses) -> list[LaneVector]:
+        """How the unknowns change the residuals at q: rows[i][j]."""
+        return self._rows(q, target)[0]
 
     def tracked(self, target: LanePoses, q: LaneVector) -> tuple[LaneVector, Flags, npt.NDArray[np.intp]]:
         """Steps from q towards the target: where each lane ends, whether it is a solution, and its steps."""
@@ -81,7 +85,7 @@ class Batch:
         for entry in move:
             largest = np.maximum(largest, np.abs(entry))
         share = LARGEST_MOVE / np.maximum(largest, LARGEST_MOVE)
-        for joint, unit, entry in zip(self.shape.free, self._units, move, strict=True):
+        for joint, unit, entry in zip(self.shape.free, self.units, move, strict=True):
             q[joint][active] += entry * share * unit
 
     def _placed(self, q: LaneVector) -> _Placed:
@@ -132,7 +136,7 @@ class Batch:
     def _columns(self, placed: _Placed) -> tuple[list[LaneVector], list[LaneVector]]:
         """Per free joint: velocity of the tool point (scaled) and angular velocity, for one unit of the joint."""
         linear, spin = [], []
-        for joint, unit in zip(self.shape.free, self._units, strict=True):
+        for joint, unit in zip(self.shape.free, self.units, strict=True):
             axis = placed.axes[joint]
             velocity = axis
             if self.shape.turning[joint]:

@@ -12,8 +12,10 @@ from codegen.model import Arm, Task
 from codegen.options import Options, RealType
 from codegen.tracking.settings import SEARCH_STEPS
 from codegen.tracking.shape import ArmShape
-from codegen.tracking.starts import HELD_BACK, TrackingTables
+from codegen.tracking.starts import HELD_BACK, Measured, TrackingTables
 from codegen.tracking.steps_context import FINISHING, most_loosening, unit_of
+from codegen.tracking.sweeping import Swept
+from codegen.tracking.walking import MOST_LAUNCHES, most_placed
 
 ATTEMPTS = 4
 ASIDE = 0.2
@@ -77,31 +79,39 @@ def tracking_context(arm: Arm, tables: TrackingTables, options: Options) -> Trac
 
 @dataclass(frozen=True, slots=True)
 class MostSteps:
-    """Evaluations of the Jacobian at the very worst; `free`: more of them where the pose leaves joints free."""
+    """Evaluations of the Jacobian at the very worst; `free`: more of them where the pose leaves joints free.
+
+    placed  places of a sweep at the very worst; 0 where there is none
+    """
 
     tracked: int
     tracked_free: int
     searched: int
     searched_free: int
+    placed: int = 0
 
 
 def most_steps(tables: TrackingTables, options: Options) -> MostSteps:
     """Of tracking from the seed, with all its attempts, and of the whole search.
 
-    A start takes its steps, one look for a free joint, and one look half way to each solution known.
+    A start takes its steps, one look for a free joint, and one look half way to each solution known. A solution of a sweep
+    takes one more look for another beside it, and perhaps two starts.
     """
     each = SEARCH_STEPS + FINISHING[options.real] + 1
     loosening = most_loosening(each)
     tracked = ATTEMPTS * each + 1
-    searched = tracked + len(tables.starts) * (each + 1 + tables.branches)
-    return MostSteps(tracked, tracked + loosening, searched, searched + (len(tables.starts) + 1) * loosening)
+    starts = len(tables.starts) if tables.swept is None else MOST_LAUNCHES + 2 * tables.branches
+    looks = 0 if tables.swept is None else tables.branches
+    searched = tracked + starts * (each + 1 + tables.branches) + looks
+    placed = 0 if tables.swept is None else most_placed(tables.swept.sweep.plan.branches, tables.swept.samples)
+    return MostSteps(tracked, tracked + loosening, searched, searched + (starts + 1) * loosening, placed)
 
 
 def branch_text(tables: TrackingTables, options: Options) -> tuple[str, ...]:
     """What the header says of this kind of inverse: what a branch number means, what is found, what it costs."""
     branches = f"{options.prefix.upper()}_BRANCHES"
     most, measured = most_steps(tables, options), tables.measured
-    found = f"{measured.found} of {measured.solutions} solutions ({100 * measured.share:.2f} %)"
+    found = f"{measured.found} of {measured.solutions} solutions ({percent(measured)} %)"
     bound = (
         f"  {branches} is a proven bound; the most solutions seen at one pose were {tables.most_found}."
         if tables.proven
@@ -111,12 +121,37 @@ def branch_text(tables: TrackingTables, options: Options) -> tuple[str, ...]:
         "Inverse: numeric, for no closed form is known for this arm. Damped Newton steps with the exact Jacobian.",
         "  branch 0  the solution tracked from the seed: the one for a control loop. A few steps from a near seed,",
         f"            {most.tracked} at the very worst, {most.tracked_free} where the pose leaves joints free.",
-        f"  branch b  of the others, looked for from {len(tables.starts)} starts, the b-th to be reached from the",
-        f"            seed: it names a solution only within one call. {measured.mean_steps} steps on average,",
-        f"            {most.searched} at the very worst, {most.searched_free} where the pose leaves joints free.",
+        *(_table_text(tables, most) if tables.swept is None else _sweep_text(tables.swept, most)),
         f"  Found: {found} of {measured.poses} random poses, against a dense search.",
         bound,
         f"  {options.prefix}_inverse_nearest looks no further than branch 0 where that is certainly the nearest.",
+    )
+
+
+def percent(measured: Measured) -> str:
+    """Of all solutions those that were found, rounded down: 100.00 means that none was missed."""
+    hundredths = 10000 * measured.found // measured.solutions if measured.solutions else 10000
+    return f"{hundredths // 100}.{hundredths % 100:02}"
+
+
+def _table_text(tables: TrackingTables, most: MostSteps) -> tuple[str, ...]:
+    return (
+        f"  branch b  of the others, looked for from {len(tables.starts)} starts, the b-th to be reached from the",
+        f"            seed: it names a solution only within one call. {tables.measured.mean_steps} steps on average,",
+        f"            {most.searched} at the very worst, {most.searched_free} where the pose leaves joints free.",
+    )
+
+
+def _sweep_text(swept: Swept, most: MostSteps) -> tuple[str, ...]:
+    branches, label = swept.sweep.plan.branches, swept.sweep.label
+    return (
+        "  branch b  of the others the b-th to be reached from the seed: it names a solution only within one call.",
+        f"            They are looked for by a sweep: {label} goes all the way round, and at {swept.samples} places",
+        f"            on each of {branches} branches the other joints follow in closed form, with one equation left over.",
+        "            Steps start where that is nearly met.",
+        f"            {swept.mean_steps} steps and {swept.mean_placed} places on average;",
+        f"            at the very worst {most.searched} steps, {most.searched_free} where the pose leaves joints free,",
+        f"            and {most.placed} places.",
     )
 
 

@@ -14,9 +14,11 @@ from codegen.model import Arm
 from codegen.options import Options
 from codegen.tracking.context import tracking_context
 from codegen.tracking.links import small_chain
+from codegen.tracking.prepared import prepared
 from codegen.tracking.settings import SEARCH_STEPS
-from codegen.tracking.starts import TrackingTables, prepare_starts
+from codegen.tracking.starts import TrackingTables
 from codegen.tracking.steps_context import steps_context
+from codegen.tracking.sweep_context import sweep_context
 
 
 class TrackedMotion(MotionText):
@@ -34,7 +36,7 @@ def tracked_files(
     arm: Arm, options: Options, source: emit.Source, tables: TrackingTables | None = None
 ) -> dict[str, str]:
     """`<prefix>_kin.c` and `<prefix>_kin.h` of an arm without a closed form."""
-    context = _context(arm, tables or prepare_starts(arm), options, source)
+    context = _context(arm, tables or prepared(arm), options, source)
     p = options.prefix
     return {
         f"{p}_kin.h": emit.rendered("kin.h.j2", context),
@@ -47,6 +49,7 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
     constants = Constants(options)
     forward = TrackedMotion(arm, options, constants).forward()
     core = TrackedMotion(arm, options, constants).core()
+    sweep = None if tables.swept is None else sweep_context(tables.swept, options, constants)
     return {
         **emit.words(options),
         "arm": {
@@ -68,5 +71,6 @@ def _context(arm: Arm, tables: TrackingTables, options: Options, source: emit.So
         "forward": forward,
         "core": core,
         "t": tracking,
+        "w": sweep,
         "s": steps_context(arm, tables.shape, options, SEARCH_STEPS),
     }

@@ -44,7 +44,7 @@ class Search:
 
     def __init__(self, arm: Arm, shape: ArmShape, seed: int) -> None:
         self.shape = shape
-        self._batch = Batch(shape)
+        self.batch = Batch(shape)
         self._random = random.Random(seed)
         self._ranges = [_range(row, float(shape.reach)) for row in arm.joints]
         self.steps = tuple(TURN_STEP if shape.turning[i] else self._slide_step(i) for i in shape.free)
@@ -64,36 +64,35 @@ class Search:
 
     def run(self, poses: int, starts: Sequence[Start]) -> Searched:
         """Every start tracked to each of so many fresh poses."""
-        true_values = self._true_values(poses)
+        true_values = self.true_values(poses)
         count = len(starts)
         lanes = [np.repeat(values, count) for values in true_values]
-        target = self._batch.poses(lanes)
+        target = self.batch.poses(lanes)
         for k, joint in enumerate(self.shape.free):
             lanes[joint] = np.tile(np.array([start[k] * float(self.steps[k]) for start in starts]), poses)
-        ends, solved, steps = self._tracked(target, lanes)
-        solved &= self._within(ends)
+        ends, solved, steps = self.tracked(target, lanes)
         found = [
-            self._hits(ends[:, p * count : (p + 1) * count], solved[p * count : (p + 1) * count]) for p in range(poses)
+            self.hits(ends[:, p * count : (p + 1) * count], solved[p * count : (p + 1) * count]) for p in range(poses)
         ]
         return Searched(np.concatenate(found), steps.reshape(poses, count), max(len(hits) for hits in found))
 
-    def _true_values(self, poses: int) -> list[npt.NDArray[np.float64]]:
+    def true_values(self, poses: int) -> list[npt.NDArray[np.float64]]:
         """Per joint, held ones too, a random value for each pose."""
         return [
             np.array([low + (high - low) * self._random.random() for _ in range(poses)]) for low, high in self._ranges
         ]
 
-    def _tracked(self, target: LanePoses, q: LaneVector) -> tuple[Table, Flags, npt.NDArray[np.intp]]:
-        """(free joint values [free, lanes], solved, steps), block by block."""
+    def tracked(self, target: LanePoses, q: LaneVector) -> tuple[Table, Flags, npt.NDArray[np.intp]]:
+        """(free joint values [free, lanes], solved, steps), block by block. A slide past its range is no solution."""
         count = len(q[0])
         ends = np.empty((len(self.shape.free), count))
         solved, steps = np.empty(count, dtype=np.bool_), np.empty(count, dtype=np.intp)
         for first in range(0, count, _BLOCK):
             lanes = np.arange(first, min(first + _BLOCK, count))
-            values, solved[lanes], steps[lanes] = self._batch.tracked(target.take(lanes), [entry[lanes] for entry in q])
+            values, solved[lanes], steps[lanes] = self.batch.tracked(target.take(lanes), [entry[lanes] for entry in q])
             for k, joint in enumerate(self.shape.free):
                 ends[k, lanes] = values[joint]
-        return ends, solved, steps
+        return ends, solved & self._within(ends), steps
 
     def _within(self, ends: Table) -> Flags:
         """No slide past its range."""
@@ -104,7 +103,7 @@ class Search:
                 within &= (ends[k] >= lowest) & (ends[k] <= highest)
         return within
 
-    def _hits(self, ends: Table, solved: Flags) -> Flags:
+    def hits(self, ends: Table, solved: Flags) -> Flags:
         """[solution, start] of one pose."""
         turning = np.array([self.shape.turning[joint] for joint in self.shape.free])[:, None]
         units = np.where(turning, 1.0, float(self.shape.slide_unit))

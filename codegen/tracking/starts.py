@@ -23,6 +23,7 @@ import numpy.typing as npt
 from codegen.model import Arm, Task
 from codegen.tracking.search import Search, Searched
 from codegen.tracking.shape import ArmShape, shape_of
+from codegen.tracking.sweeping import Swept
 
 MOST_STARTS = 160
 ALLOWED_MISS = 0.002  # expected of random starts; the promise is 0.005
@@ -72,6 +73,7 @@ class TrackingTables:
     most_found  solutions of one pose, over all poses that were searched
     branches    the most solutions that one pose has, as far as is known
     proven      whether `branches` is a proven bound, or rests on the search
+    swept       how one joint is swept instead; there are no starts then
     """
 
     shape: ArmShape
@@ -81,6 +83,7 @@ class TrackingTables:
     branches: int
     proven: bool
     measured: Measured
+    swept: Swept | None = None
 
 
 @cache
