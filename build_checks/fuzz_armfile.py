@@ -42,12 +42,10 @@ def fuzz_reader(examples: Sequence[Path], runs: int, *, seed: int = 1, corpus: P
         for path in examples:
             (corpus / path.name).write_bytes(path.read_bytes())
         (folder / "words.dict").write_text("".join(f"{_quoted(word)}\n" for word in _WORDS))
-        limits = [f"-runs={runs}", f"-seed={seed}", f"-max_len={_LONGEST}", f"-timeout={_SECONDS}", "-dict=words.dict"]
-        command = [sys.executable, "-m", "build_checks.fuzz_armfile_target", str(folder / "arm.toml")]
-        done = subprocess.run(
-            [*command, *limits, "-print_final_stats=1", str(corpus)],
-            cwd=folder, capture_output=True, text=True, check=False, errors="replace",
-        )  # fmt: skip
+        limits = [f"-runs={runs}", f"-seed={seed}", f"-max_len={_LONGEST}", f"-timeout={_SECONDS}"]
+        places = [f"-dict={folder / 'words.dict'}", f"-artifact_prefix={folder}/", str(corpus)]
+        command = [sys.executable, "-m", "build_checks.fuzz_armfile_target", *limits, "-print_final_stats=1", *places]
+        done = subprocess.run(command, capture_output=True, text=True, check=False, errors="replace")
         return FuzzResult(_executions(done.stderr), "" if done.returncode == 0 else _told(done.stdout + done.stderr))
 
 

@@ -95,7 +95,7 @@ def test_any_bytes_give_an_arm_or_a_refusal(tmp_path: Path) -> None:
     assert len(list(tmp_path.iterdir())) > len(EXAMPLES)  # paths through the reader are told apart
 
 
-def test_a_reader_that_breaks_its_promise_is_found(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_a_reader_that_breaks_its_promise_is_found(monkeypatch: pytest.MonkeyPatch) -> None:
     """Whatever else it raises, and a fault that does not name the file."""
     from codegen import armfile
     from codegen.errors import ArmFileError, Fault
@@ -105,11 +105,11 @@ def test_a_reader_that_breaks_its_promise_is_found(tmp_path: Path, monkeypatch: 
 
     monkeypatch.setattr(armfile, "read_arm", refuse_without_a_place)
     with pytest.raises(AssertionError, match="does not name the file"):
-        check_outcome(tmp_path / "arm.toml", b"")
+        check_outcome(b"")
 
     def stumble(_: Path) -> None:
         raise KeyError("arm")
 
     monkeypatch.setattr(armfile, "read_arm", stumble)
     with pytest.raises(KeyError):
-        check_outcome(tmp_path / "arm.toml", b"")
+        check_outcome(b"")
