@@ -352,13 +352,12 @@ class Statements:
 
     def _slide(self, step: SlideStep) -> None:
         name = step.value.name
-        numerator = self.scope.value(step.numerator)
         joint = step.joint
         if step.denominator.is_constant:
-            quotient = self.scope.builder.div(step.numerator, step.denominator)
-            self.put(f"const {self.p}_real {name} = {self.scope.text(quotient)};")
+            self.put(f"const {self.p}_real {name} = {self._scaled(step.numerator, step.denominator)};")
             self._settle_slide(joint, name)
         else:
+            numerator = self.scope.value(step.numerator)
             denominator = self.scope.value(step.denominator)
             self.put(f"{self.p}_real {name};")
             self.put(f"if ({self.p}_abs({denominator}) > LEAST_ANGLE) {{")
@@ -375,6 +374,14 @@ class Statements:
                 self.put(f"    {name} = {self.zero};")
             self.put("}")
         self._store(name)
+
+    def _scaled(self, numerator: Node, denominator: Node) -> str:
+        """A quotient by a constant, which may go into every term: then the numerator as such is read nowhere."""
+        quotient = self.scope.builder.div(numerator, denominator)
+        if quotient is numerator and self.scope.uses[numerator] > 1:
+            return self.scope.value(numerator)
+        self.scope.ready(quotient)
+        return self.scope.text(quotient)
 
     def _slide_text(self, joint: int, name: str) -> str:
         value = self._with_offset(name, self.goal.chain.joints[joint].offset, "-")
