@@ -143,7 +143,7 @@ def fuzz(
             [str(program), *limits, "-artifact_prefix=failed-", "corpus"],
             cwd=folder, capture_output=True, text=True, check=False, errors="replace",
         )  # fmt: skip
-        _keep(folder.glob("failed-*"), keep)
+        keep_files(folder.glob("failed-*"), keep)
         return FuzzResult(_executions(done.stderr), "" if done.returncode == 0 else telling_lines(done.stderr))
 
 
@@ -153,7 +153,8 @@ def telling_lines(text: str) -> str:
     return "\n".join(lines[:_SHOWN_LINES]) or text[-_SHOWN:]
 
 
-def _keep(found: Iterable[Path], keep: Path | None) -> None:
+def keep_files(found: Iterable[Path], keep: Path | None) -> None:
+    """Copies the inputs that failed into the folder `keep`, where there is one."""
     if keep is not None:
         keep.mkdir(parents=True, exist_ok=True)
         for path in sorted(found):

@@ -16,7 +16,7 @@ import tempfile
 from collections.abc import Sequence
 from pathlib import Path
 
-from build_checks.fuzz import FuzzResult
+from build_checks.fuzz import FuzzResult, keep_files
 
 _LONGEST = 2048  # bytes of an input
 _SECONDS = 20  # an input that takes longer counts as a hang
@@ -30,10 +30,12 @@ _WORDS = (
 )  # fmt: skip
 
 
-def fuzz_reader(examples: Sequence[Path], runs: int, *, seed: int = 1, corpus: Path | None = None) -> FuzzResult:
+def fuzz_reader(
+    examples: Sequence[Path], runs: int, *, seed: int = 1, corpus: Path | None = None, keep: Path | None = None
+) -> FuzzResult:
     """Calls the reader `runs` times, from the arm files `examples` on, in a process of its own.
 
-    Inputs that reached something new are kept in `corpus`, for a later run to start from.
+    Inputs that reached something new are kept in `corpus`, for a later run to start from; one that fails in `keep`.
     """
     with tempfile.TemporaryDirectory(prefix="linkwright-fuzz-") as name:
         folder = Path(name)
@@ -43,9 +45,10 @@ def fuzz_reader(examples: Sequence[Path], runs: int, *, seed: int = 1, corpus: P
             (corpus / path.name).write_bytes(path.read_bytes())
         (folder / "words.dict").write_text("".join(f"{_quoted(word)}\n" for word in _WORDS))
         limits = [f"-runs={runs}", f"-seed={seed}", f"-max_len={_LONGEST}", f"-timeout={_SECONDS}"]
-        places = [f"-dict={folder / 'words.dict'}", f"-artifact_prefix={folder}/", str(corpus)]
+        places = [f"-dict={folder / 'words.dict'}", f"-artifact_prefix={folder}/failed-", str(corpus)]
         command = [sys.executable, "-m", "build_checks.fuzz_armfile_target", *limits, "-print_final_stats=1", *places]
         done = subprocess.run(command, capture_output=True, text=True, check=False, errors="replace")
+        keep_files(folder.glob("failed-*"), keep)
         return FuzzResult(_executions(done.stderr), "" if done.returncode == 0 else _told(done.stdout + done.stderr))
 
 
@@ -71,8 +74,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     parser.add_argument("--runs", type=int, default=100_000)
     parser.add_argument("--seed", type=int, default=1)
     parser.add_argument("--corpus", type=Path, help="folder that keeps the inputs which reached something new")
+    parser.add_argument("--keep", type=Path, help="folder for an input that fails")
     wanted = parser.parse_args(arguments)
-    result = fuzz_reader(sorted(wanted.arms.glob("*.toml")), wanted.runs, seed=wanted.seed, corpus=wanted.corpus)
+    examples = sorted(wanted.arms.glob("*.toml"))
+    result = fuzz_reader(examples, wanted.runs, seed=wanted.seed, corpus=wanted.corpus, keep=wanted.keep)
     print(f"arm file reader: {result.executions:,} executions, {result.failure or 'nothing found'}")
     return int(bool(result.failure))
 

@@ -29,7 +29,16 @@ LABEL_PATTERN = "[A-Za-z0-9_]([A-Za-z0-9 _.-]*[A-Za-z0-9_])?"
 def did_you_mean(word: str, accepted: Iterable[str]) -> str:
     """A hint with the accepted word that is closest, or "" when none is."""
     close = closest(word, accepted)
-    return f'did you mean "{close}"?' if close else ""
+    return f"did you mean {quoted(close)}?" if close else ""
+
+
+def quoted(word: str) -> str:
+    """A word of the file as a message shows it: in quotes, short, whatever it holds."""
+    return f'"{shortened("".join(sign if sign.isprintable() else repr(sign)[1:-1] for sign in word))}"'
+
+
+def shortened(text: str) -> str:
+    return text if len(text) <= 60 else f"{text[:57]}..."
 
 
 def closest(word: str, accepted: Iterable[str]) -> str:

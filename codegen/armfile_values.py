@@ -12,7 +12,7 @@ from decimal import Decimal
 from fractions import Fraction
 
 from codegen.armfile_keys import ANGLE_UNITS, LENGTH_UNITS, METRES, Key, Table, Unit
-from codegen.armfile_names import did_you_mean, identifier_problem, label_problem
+from codegen.armfile_names import did_you_mean, identifier_problem, label_problem, quoted, shortened
 from codegen.armfile_numbers import exact_number, exact_radians
 from codegen.errors import Fault
 from codegen.exact import Angle
@@ -64,12 +64,8 @@ def shown(value: object) -> str:
     if isinstance(value, int) and value.bit_length() > 200:
         return "an integer of very many digits"
     if isinstance(value, str):
-        return f'"{_shortened("".join(sign if sign.isprintable() else repr(sign)[1:-1] for sign in value))}"'
-    return _shortened(str(value))
-
-
-def _shortened(text: str) -> str:
-    return text if len(text) <= 60 else f"{text[:57]}..."
+        return quoted(value)
+    return shortened(str(value))
 
 
 @dataclass(frozen=True, slots=True)
@@ -238,7 +234,7 @@ def _advice(name: str, value: object) -> str:
         return "leave limits out when the joint has none"
     if not isinstance(value, str) or isinstance(exact_number(_decimal(value)), str):
         return ""
-    return f"write {name} = {value} without quotes"
+    return f"write {name} = {value.strip()} without quotes"
 
 
 def _decimal(text: str) -> Decimal | None:

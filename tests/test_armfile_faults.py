@@ -42,6 +42,14 @@ def test_the_file_that_every_row_changes_is_good(tmp_path: Path) -> None:
     assert read_arm(tmp_path / "arm.toml").warnings == ()
 
 
+def test_names_that_cannot_be_printed_are_shown_by_their_codes(tmp_path: Path) -> None:
+    """A name of the file in a hint, too: a soft hyphen would not be seen, a line feed would break the message."""
+    text = GOOD.replace('[[joint]]\nname = "arm link"', 'held = ["arm\\u00ADlin"]\n[[joint]]\nname = "arm\\u00ADlink"')
+    found = "\n".join(str(fault) for fault in faults(tmp_path, text))
+    assert 'did you mean "arm\\xadlink"?' in found
+    assert found.replace("\n", "").isprintable()
+
+
 # Lines added to the second joint, and the whole message.
 JOINT_FAULTS = [
     ("aplha = 1", 'unknown key "aplha"\n  hint: did you mean "alpha"?'),
@@ -52,6 +60,7 @@ JOINT_FAULTS = [
         'd = "150"',
         'd = "150" is not a number; a number in metres, at most 10000, is accepted\n  hint: write d = 150 without',
     ),
+    ('d = "\\t150\\n"', "hint: write d = 150 without"),
     ('d = "pi/2"', 'd = "pi/2" is not a number; a number in metres, at most 10000, is accepted'),
     ("d = true", "d = true is not a number"),
     ("d = [1]", "d = [1] is not a number"),
