@@ -19,6 +19,7 @@ from codegen.model import Task
 
 _SEEDS = 3  # different seeds for every singular pose
 _RANK_LOST = 1e-9  # smallest singular value of a place that is singular but for rounding in float64
+_HARDLY = (-4.5, -1.0)  # decades of the share of an axis that states an angle
 _BENT = 8.0  # units of the number type
 _ENOUGH = 16  # places of which one at least is bent by less
 
@@ -163,6 +164,10 @@ def check_unstated(bench: Bench, rng: np.random.Generator, size: int) -> None:
         return Failure(what, bench.details(batch, row, statuses=found.status[row], joints_found=flat.q[index]))
 
     bench.tally.judge(Check.EDGE_TRIP, ~(position <= 2 * allowed), describe)
+    share = 10.0 ** rng.uniform(*_HARDLY, (size, 1))
+    rotation[:, :, axis] = np.sqrt(1.0 - share**2) * rotation[:, :, axis] + share * chain.tool.rotation[:, :, axis]
+    packed = bench.c.pack(Poses(rotation, chain.tool.position))
+    inspect(bench, replace(batch, packed=packed, kind="a pose that hardly states its angle"))
 
 
 def check_unreachable(bench: Bench, rng: np.random.Generator, size: int) -> None:

@@ -20,6 +20,7 @@ from codegen.model import Task
 
 _NOT_NUMBERS = (np.nan, np.inf, -np.inf)
 _REFUSED, _ACCEPTED = 1.05e-3, 0.95e-3  # either side of the contract's 1e-3, clear of rounding
+_DECADES = 10.0  # of a little drift
 _REGULAR = 0.05  # smallest singular value of the poses used here, where there are such
 
 
@@ -249,6 +250,8 @@ def _drifted(bench: Bench, rng: np.random.Generator, batch: Batch) -> None:
     if bench.reading.task in (Task.POINT, Task.PLANE_POINT, Task.PLANE_POSE):
         return  # nothing of the rotation is read, or which part of it is left open
     stretch = _ACCEPTED * rng.uniform(-1.0, 1.0, (len(batch), 3, 3)) * np.where(np.eye(3) > 0, 1.0, 0.5)
+    little = 10.0 ** rng.uniform(-_DECADES, 0.0, (len(batch), 1, 1))  # lengths change with the square: right angles only
+    stretch = np.where(rng.random((len(batch), 1, 1)) < 0.5, stretch, little * np.where(np.eye(3) > 0, 0.0, stretch))
     stretch = 0.5 * (stretch + stretch.swapaxes(1, 2))  # symmetric: the nearest rotation stays what it was
     packed = _packed(bench, batch, batch.poses.rotation @ (np.eye(3) + stretch))
     drifted = replace(batch, packed=packed, kind="a drifted rotation")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from build_checks.agree_bench import Bench, plain, worst
+from build_checks.agree_bench import SOLVED, Bench, is_in, plain, worst
 from build_checks.agree_sets import check_sets
 from build_checks.agree_solutions import inspect
 from build_checks.compile import AnyArray, Kinematics, Status
@@ -13,6 +13,9 @@ from build_checks.reference_task import length, rotation_vector
 from build_checks.report import Check, Failure
 
 _MOST_DECADES = 4.0  # of turns, of a joint without limits
+_BEYOND = {np.float32: 5.0, np.float64: 17.0}  # decades of turns
+_MOST_DECADES_BETWEEN = 3.0
+_BESIDE = (25.0, 40.0)  # units of the number type, of the seed: clear of the rounding that is allowed to either turn
 FAR_TURNS = 5.0  # seeds and joint values of the far poses reach this many turns to either side
 
 
@@ -35,8 +38,12 @@ def check_far_turns(bench: Bench, rng: np.random.Generator, size: int) -> None:
     q = bench.random_joints(rng, size)
     check_forward(bench, bench.exact(_far(bench, rng, q)), summed=True)
     check_forward(bench, bench.exact(_farthest(bench, rng, q)))
+    check_forward(bench, bench.exact(_beyond(bench, rng, q)), summed=True)
     batch = bench.batch(q, _far(bench, rng, bench.random_joints(rng, size)), "seeds several turns away")
-    inspect(bench, batch)
+    found, _ = inspect(bench, batch)
+    any_branch = np.argmax(rng.random(found.status.shape) * is_in(found.status, SOLVED), axis=1)
+    one = found.q[np.arange(size), any_branch].astype(np.float64)
+    inspect(bench, bench.batch(q, _between_turns(bench, rng, one), "seeds between two turns, many turns away"))
 
 
 def _farthest(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
@@ -44,6 +51,20 @@ def _farthest(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
     unlimited = bench.reference.revolute & np.isinf(bench.reference.lower) & np.isinf(bench.reference.upper)
     turns = 10.0 ** rng.uniform(0.0, _MOST_DECADES, q.shape) * rng.choice([-1.0, 1.0], q.shape)
     return np.where(unlimited, q + 2 * np.pi * turns, q)
+
+
+def _beyond(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
+    """Turning joints farther than any promise of accuracy but that of the number type itself."""
+    turns = 10.0 ** rng.uniform(_MOST_DECADES, _BEYOND[bench.c.real.type], q.shape) * rng.choice([-1.0, 1.0], q.shape)
+    return np.where(bench.reference.revolute, q + 2 * np.pi * turns, q)
+
+
+def _between_turns(bench: Bench, rng: np.random.Generator, q: Array) -> Array:
+    """Seeds half a turn more than many turns away, but for a little more than rounding: there miscounted turns show."""
+    turns = np.round(10.0 ** rng.uniform(0.0, _MOST_DECADES_BETWEEN, q.shape)) * rng.choice([-1.0, 1.0], q.shape)
+    seeds = q + 2 * np.pi * (turns + 0.5)
+    beside = bench.budget.unit * rng.uniform(*_BESIDE, q.shape) * rng.choice([-1.0, 1.0], q.shape)
+    return np.where(bench.reference.revolute, seeds + np.abs(seeds) * beside, q)
 
 
 def _far(bench: Bench, rng: np.random.Generator, q: Array) -> Array:

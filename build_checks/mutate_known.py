@@ -22,7 +22,36 @@ class Known:
     reason: str
 
 
-KNOWN: tuple[Known, ...] = ()
+KNOWN: tuple[Known, ...] = (
+    Known(
+        (Kind.BRANCH,),
+        r"_branch_of$",
+        r"_all_usable\(q\)",
+        "",
+        "the interface names no branch for joint values that are none; that the C does is asked for by the fuzz target",
+    ),
+    Known(
+        (Kind.BRANCH,),
+        r"_far_turn$",
+        r"exponent >= 184u",
+        "",
+        "beyond 2^57 rad no digit of an angle is below a turn, so any turn is right; a sanitizer sees the wide shift",
+    ),
+    Known(
+        (Kind.SEED, Kind.INDEX, Kind.SIGN),
+        r"_stage_0$",
+        r"heading = \w+_turn\(work->seed",
+        "",
+        "a pose that states no heading may be solved with any: that of the seed is a courtesy",
+    ),
+    Known(
+        (Kind.CONSTANT,),
+        r"_clean_rotation$",
+        r"\* given\[",
+        "",
+        "the rotation is brought to the nearest true one, which a common factor of all entries does not change",
+    ),
+)
 
 
 def why_equivalent(mutant: Mutant, line: str) -> str:

@@ -195,7 +195,7 @@ def _motion_difference(bench: Bench, inputs: Inputs, right: Results, other: Resu
 def _angle_difference(bench: Bench, right: AnyArray, other: AnyArray) -> Difference:
     if _equal(right, other):
         return Difference.NONE
-    wrong = (np.isnan(right) != np.isnan(other)) | (np.signbit(right) != np.signbit(other))
+    wrong = (np.isnan(right) != np.isnan(other)) | ((np.signbit(right) != np.signbit(other)) & ~np.isnan(right))
     wrong |= np.abs(right.astype(np.float64) - other) > 2 * bench.budget.ulps * np.spacing(np.abs(right))
     return Difference.REAL if wrong.any() else Difference.ROUNDING
 
