@@ -79,7 +79,10 @@ def _data(folder: Path) -> list[str]:
 def _run_agree(arm_file: Path, options: Options, samples: int, seed: int, folder: Path) -> None:
     """The counters are written when the process ends, beside the compiler's notes."""
     compiler = folder / "counting-cc"
-    compiler.write_text('#!/bin/sh\ngcc "$@" -O0 --coverage && cp ./*.gcno "$GCOV_PREFIX"\n')
+    # without attributes, which only tell what to inline: or each place of a call would count for itself
+    compiler.write_text(
+        '#!/bin/sh\ngcc "$@" -O0 --coverage "-D__attribute__(what)=" && cp ./*.gcno "$GCOV_PREFIX"\n', encoding="utf-8"
+    )
     compiler.chmod(0o755)
     words = [str(arm_file.resolve()), options.real.c_name, options.mathematics.value, options.prefix, samples, seed]
     command = [sys.executable, "-c", _AGREE, *map(str, words)]

@@ -49,6 +49,41 @@ KNOWN = (
         frozenset({"bench_six"}),
     ),
     Known(
+        r"_stage_1",
+        r"signed_root\(work, known->waist_square, SLACK \* known->waist_square",
+        "the square is that of the distance from the waist's axis, which is not negative",
+        frozenset({"vial_picker"}),
+    ),
+    Known(
+        r"_settle_turns",
+        r"if \(\(joints & 0x\w+u\) != 0u\) \{",
+        "the joints of the last stage are found anew for every solution, and no pose leaves one of them free",
+        frozenset({"bench_six", "vial_picker", "tray_scara"}),
+    ),
+    Known(
+        r"_settle_far",
+        r"exceeds\(value, range->upper\)",
+        "the limits lie evenly about zero: a turn within them has been found before",
+        frozenset({"tray_scara"}),
+    ),
+    Known(
+        r"_signed_root",
+        r"exceeds\(square, flat\)",
+        "the rounded square goes up in steps, of which the first above zero is already larger, by less than its rounding",
+        frozenset({"tray_scara", "vial_picker"}),
+    ),
+    Known(
+        r"_near_turn",
+        r"for \(int pass = 0; pass < 5; \+\+pass\)",
+        "four passes take off all 52 binary digits above 2^16, so that the fifth breaks off",
+    ),
+    Known(
+        r"_is_better",
+        r"== \w+_SINGULAR\)",
+        "no pose leaves a joint free, so no solution is singular in that way",
+        frozenset({"tray_scara"}),
+    ),
+    Known(
         r"_reached",
         r"return length_good && angle_good;",
         "a root that is clamped there is one of lengths: the wrist then takes up the whole rotation",
