@@ -92,7 +92,7 @@ def functions_text(options: Options, portable_root: bool = False) -> str:
         context = replace(context, roots=())
     uses = FUNCTIONS if context.own else FUNCTIONS - {"exceeds"}
     words = {"p": options.prefix, "P": options.prefix.upper(), "maths": context, "uses": uses}
-    includes = "".join(f"#include {include}\n" for include in context.includes)
+    includes = "".join(f"#include {include}\n" for include in ("<stdbool.h>", *context.includes))
     p, real = options.prefix, options.real.c_name
     declared = f"typedef {real} {p}_real;\n{p}_real {p}_atan2({p}_real y, {p}_real x);\n\n"
     return includes + "\n" + declared + environment().get_template("maths.c.j2").render(words)

@@ -175,6 +175,29 @@ def test_a_misra_rule_is_checked(planted: Planted) -> None:
     assert planted.rule in {finding.rule for finding in misra_findings(planted.files)}
 
 
+def test_what_is_taken_for_a_false_alarm_hides_no_true_one() -> None:
+    need("MISRA C:2012")
+    helper = "static arm_real arm_half(arm_real value)\n{\n    return 0.5f * value;\n}\n"
+    cast = "const arm_real (*rows)[3];\n    rows = (const arm_real (*)[3])pose->r;\n    pose->p[0] = rows[0][0];"
+    constants = "enum {\n    ARM_MARK = 1\n};"
+    silent = with_body(f"{cast} pose->p[1] = (arm_real)ARM_MARK;", before=constants)
+    assert {"17.7", "2.4"}.isdisjoint(finding.rule for finding in misra_findings(silent))
+    planted = with_body(f"{cast}\n    arm_half(q[0]);", before=f"{helper}\nenum arm_tag {{ ARM_MARK = 1 }};")
+    assert {"17.7", "2.4"} <= {finding.rule for finding in misra_findings(planted)}
+
+
+def test_a_file_that_the_checker_cannot_look_into_is_a_finding() -> None:
+    need("MISRA C:2012")
+    closed = with_body("", before="#if FLT_MANT_DIG != 23\n#error another number type is meant\n#endif")
+    assert "was not looked into" in {finding.what for finding in misra_findings(closed)}
+
+
+def test_every_combination_of_macros_is_checked() -> None:
+    need("MISRA C:2012")
+    body = "#if defined(__AVR__)\n    goto done;\n#elif defined(__GNUC__)\n    pose->p[0] = (arm_real)017;\n#endif\n done: ;"
+    assert {"15.1", "7.1"} <= {finding.rule for finding in misra_findings(with_body(body))}
+
+
 def test_deviations_are_advisory_or_required_and_listed_with_their_places() -> None:
     """MISRA Compliance:2020: a mandatory guideline cannot be deviated from; here those of MISRA C:2012."""
     need("MISRA C:2012")

@@ -49,6 +49,24 @@ def test_nothing_is_found(name: str, real: RealType, check: StaticCheck) -> None
     assert findings(name, real, check) == []
 
 
+PLANTED = [  # at the start of which function, what, which check finds it, and its name for it
+    ("arm_status arm_forward(", "    goto done;\ndone:\n", "MISRA C:2012", "15.1"),
+    ("static bool arm_within(", "    if (x > bound) return false;\n", "clang-tidy", "readability-braces-around-statements"),
+]
+
+
+@each_real
+@pytest.mark.parametrize(("function", "fault", "name", "rule"), PLANTED)
+def test_a_fault_in_a_whole_file_is_found(function: str, fault: str, name: str, rule: str, real: RealType) -> None:
+    """A checker that gives up on the file says nothing as well."""
+    check = next(row for row in CHECKS if row.name == name)
+    need_programs(*check.programs)
+    files = dict(generated("plotter", real))
+    start = files["arm_kin.c"].index("{\n", files["arm_kin.c"].index(function)) + len("{\n")
+    files["arm_kin.c"] = files["arm_kin.c"][:start] + fault + files["arm_kin.c"][start:]
+    assert rule in {finding.rule for finding in check.run(files, "arm")}
+
+
 @pytest.mark.sweep
 @each_check
 @each_real

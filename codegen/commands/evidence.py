@@ -44,10 +44,11 @@ def evidence_files(
 
 
 def _misra(files: Mapping[str, str]) -> tuple[list[DeviationUse], list[str]]:
-    from build_checks.static_misra import deviations_used, misra_findings
+    from build_checks.static_misra import cppcheck_findings, sorted_out
 
-    used = [DeviationUse(row.rule, row.category, places, row.reason) for row, places in deviations_used(files)]
-    return used, [str(finding) for finding in misra_findings(files)]
+    deviations, findings = sorted_out(cppcheck_findings(files))
+    used = [DeviationUse(row.rule, row.category, places, row.reason) for row, places in deviations]
+    return used, [str(finding) for finding in findings]
 
 
 def _agreement(

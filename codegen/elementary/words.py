@@ -17,7 +17,7 @@ class Layout:
     sign, exponent, fraction  masks of the three fields
     implicit        the leading one where it would stand
     exponent_mask   the exponent shifted down
-    everyday, everyday_span   the words of normal numbers whose doubles do not overflow: the first, and how many
+    everyday, everyday_end    the words of normal numbers whose doubles do not overflow: the first, and behind the last
     root_first_bit  the first digit of a root, doubled
     root_bias       what makes twice the exponent of a root from the exponent of its square
     last_word       the word of the largest number, and that number: `most`; `one`: the word of 1
@@ -33,7 +33,7 @@ class Layout:
     implicit: str
     exponent_mask: str
     everyday: str
-    everyday_span: str
+    everyday_end: str
     root_bias: str
     root_first_bit: str
     last_word: str
@@ -52,7 +52,7 @@ _FLOAT = Layout(
     implicit="0x00800000u",
     exponent_mask="0xFFu",
     everyday="0x00800000u",
-    everyday_span="0x7E800000u",
+    everyday_end="0x7F000000u",
     root_bias="125u",
     root_first_bit="0x01000000u",
     last_word="0x7F7FFFFFu",
@@ -70,7 +70,7 @@ _DOUBLE = Layout(
     implicit="0x0010000000000000u",
     exponent_mask="0x7FFu",
     everyday="0x0010000000000000u",
-    everyday_span="0x7FD0000000000000u",
+    everyday_end="0x7FE0000000000000u",
     root_bias="1021u",
     root_first_bit="0x0020000000000000u",
     last_word="0x7FEFFFFFFFFFFFFFu",

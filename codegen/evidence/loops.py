@@ -48,6 +48,7 @@ def _passes(head: str, named: dict[str, int]) -> int | None:
     if found is None:
         return None
     counter, first, condition, step = found.groups()
+    condition = condition.replace("(unsigned)", "")
     # a counter of an outer loop may be as small as its own first value: 0 bounds the passes
     start = _number(first, {name: 0 if name.islower() else value for name, value in named.items()})
     bounds = [_number(bound[3], named) for bound in _BOUND.finditer(condition) if bound[1] == counter]

@@ -41,7 +41,7 @@ function fill(target, source) {
 _NATIVE = {
     "sqrt": "return x > 0 ? Math.sqrt(x) : 0;",
     "abs": "return Math.abs(x);",
-    "is_finite": "return Number.isFinite(x) ? 1 : 0;",
+    "is_finite": "return Number.isFinite(x);",
 }
 _INTERFACE = ("forward", "inverse", "inverse_all", "inverse_nearest", "branch_of", "jacobian", "atan2")
 
