@@ -70,8 +70,9 @@ def test_it_is_also_cplusplus(tmp_path: Path, options: Options, compiler: str) -
 @pytest.mark.parametrize("target", sorted(CROSS))
 @pytest.mark.parametrize("options", OWN, ids=named)
 def test_it_compiles_for_the_target(tmp_path: Path, options: Options, target: str) -> None:
-    """Without a warning, and needing nothing but the compiler's own arithmetic."""
+    """Without a warning, and needing nothing but the compiler's own arithmetic; on AVR its start-up fills constant tables."""
     compiler, *machine = CROSS[target]
+    start_up = {"__do_copy_data"} if target == "avr" else set()
     need_programs(compiler)
     if options.real is RealType.DOUBLE and target == "avr":
         pytest.skip("this compiler's double is a float: the next test")
@@ -80,7 +81,7 @@ def test_it_compiles_for_the_target(tmp_path: Path, options: Options, target: st
         made, said = compile_to(tmp_path, options, [compiler, *machine, *flags])
         assert said == "", level
         strangers = {name for name in undefined(made, compiler.removesuffix("gcc")) if not ARITHMETIC.fullmatch(name)}
-        assert strangers == set(), level
+        assert strangers <= start_up, level
 
 
 def test_a_double_that_is_none_is_refused(tmp_path: Path) -> None:
