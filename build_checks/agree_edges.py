@@ -165,7 +165,8 @@ def check_unstated(bench: Bench, rng: np.random.Generator, size: int) -> None:
 
     bench.tally.judge(Check.EDGE_TRIP, ~(position <= 2 * allowed), describe)
     share = 10.0 ** rng.uniform(*_HARDLY, (size, 1))
-    rotation[:, :, axis] = np.sqrt(1.0 - share**2) * rotation[:, :, axis] + share * chain.tool.rotation[:, :, axis]
+    hardly = np.sqrt(1.0 - share**2) * rotation[:, :, axis] + share * chain.tool.rotation[:, :, axis]
+    rotation[:, :, axis] = hardly / length(hardly)[:, None]  # the tool's axis need not be square to the plane's
     packed = bench.c.pack(Poses(rotation, chain.tool.position))
     inspect(bench, replace(batch, packed=packed, kind="a pose that hardly states its angle"))
 

@@ -105,7 +105,8 @@ def _trips(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
     targets = batch.poses.take(flat.rows)
     position, angle = bench.reading.errors(targets, chain)
     position_budget, angle_budget = bench.budgets(batch, flat.rows, flat.q)
-    angle_budget = angle_budget / np.maximum(bench.reading.sharpness(targets, chain), 1e-9)
+    sharpness = bench.reading.sharpness(targets, chain)
+    angle_budget = angle_budget / np.maximum(sharpness, 1e-9)
     failed = ~((position <= position_budget) & (angle <= angle_budget))  # so that a NaN fails
 
     def describe(index: int) -> Failure:
@@ -124,7 +125,7 @@ def _trips(bench: Bench, batch: Batch, found: Branches, flat: Flat) -> None:
         failed,
         describe,
         position=worst(position[ordinary], origins[ordinary]),
-        angle=worst(angle[ordinary], origins[ordinary]),
+        angle=worst((angle * sharpness)[ordinary], origins[ordinary]),  # told like the budget: where the angle is stated
     )
 
 
