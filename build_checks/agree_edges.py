@@ -10,7 +10,7 @@ import numpy as np
 from build_checks.agree_bench import SINGULAR_STRETCH, SOLVED, Bench, any_in_row, flatten, is_in
 from build_checks.agree_poses import Degenerate, classify, degenerate, response, right_angles
 from build_checks.agree_sets import check_branch_of, check_known
-from build_checks.agree_solutions import inspect, named
+from build_checks.agree_solutions import check_nearest, inspect, named
 from build_checks.compile import Status
 from build_checks.reference import Array, Poses
 from build_checks.reference_task import length
@@ -164,6 +164,7 @@ def check_unstated(bench: Bench, rng: np.random.Generator, size: int) -> None:
         return Failure(what, bench.details(batch, row, statuses=found.status[row], joints_found=flat.q[index]))
 
     bench.tally.judge(Check.EDGE_TRIP, ~(position <= 2 * allowed), describe)
+    check_nearest(bench, batch, found)
     share = 10.0 ** rng.uniform(*_HARDLY, (size, 1))
     hardly = np.sqrt(1.0 - share**2) * rotation[:, :, axis] + share * chain.tool.rotation[:, :, axis]
     rotation[:, :, axis] = hardly / length(hardly)[:, None]  # the tool's axis need not be square to the plane's

@@ -41,7 +41,7 @@ def inspect(bench: Bench, batch: Batch) -> tuple[Branches, Flat]:
     _turns_and_limits(bench, batch, found, flat)
     _singular_claims(bench, batch, found, flat)
     _one_by_one(bench, batch, found)
-    _nearest(bench, batch, found)
+    check_nearest(bench, batch, found)
     return found, flat
 
 
@@ -270,7 +270,8 @@ def efforts(bench: Bench, q: Array, seeds: Array) -> Array:
     return effort
 
 
-def _nearest(bench: Bench, batch: Batch, found: Branches) -> None:
+def check_nearest(bench: Bench, batch: Batch, found: Branches) -> None:
+    """inverse_nearest gives the branch of inverse_all that is soonest reached, within the limits if any is."""
     q, branches, status = bench.c.inverse_nearest(batch.packed, batch.seeds)
     within = is_in(found.status, WITHIN_LIMITS)
     over = found.status == Status.OVER_LIMIT

@@ -78,12 +78,6 @@ KNOWN = (
         "four passes take off all 52 binary digits above 2^16, so that the fifth breaks off",
     ),
     Known(
-        r"_is_better",
-        r"== \w+_SINGULAR\)",
-        "no pose leaves a joint free, so no solution is singular in that way",
-        frozenset({"tray_scara"}),
-    ),
-    Known(
         r"_reached",
         r"return length_good && angle_good;",
         "a root that is clamped there is one of lengths: the wrist then takes up the whole rotation",

@@ -38,6 +38,20 @@ KNOWN: tuple[Known, ...] = (
         "beyond 2^57 rad no digit of an angle is below a turn, so any turn is right; a sanitizer sees the wide shift",
     ),
     Known(
+        (Kind.INTEGER,),
+        r"_far_turn$",
+        r"0x4E44152Au\) >> 32",
+        "",
+        "these digits count from thousands of turns on, where a joint with limits never is; without limits it goes there",
+    ),
+    Known(
+        (Kind.STATEMENT,),
+        r"_take_pose$",
+        r"marks = MARK_OUT_OF_REACH;",
+        "",
+        "a position so far out is out of reach on every branch: the mark saves the work of finding that out",
+    ),
+    Known(
         (Kind.SEED, Kind.INDEX, Kind.SIGN),
         r"_stage_0$",
         r"heading = \w+_turn\(work->seed",
