@@ -59,7 +59,7 @@ FAULTS = [  # what stands in the C, what is put there, what the target says
         "work->found[0][0] = seed[0];\n        *work->status = ARM_BAD_BRANCH;",
         "and the joint values are written",
     ),
-    ("if (work->branch >= ARM_BRANCHES)", "if (work->branch > ARM_BRANCHES)", "branch 4 is accepted"),
+    ("if (work->branch >= (unsigned)ARM_BRANCHES)", "if (work->branch > (unsigned)ARM_BRANCHES)", "branch 4 is accepted"),
     ("        ++count;", "        count += branch & 1u;", "inverse_all counts"),
     ("*branch = work.branch;", "*branch = work.branch ^ 1u;", "inverse_nearest"),
 ]

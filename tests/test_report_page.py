@@ -198,14 +198,15 @@ def test_the_map_holds_the_worst_round_trip_of_each_cell() -> None:
     position, angle = error_maps(arm, files, Options(), samples=600, seed=3)
     with compiled(files, Options()) as library:
         trips = round_trips(Kinematics(library), Reference(arm), 600, np.random.default_rng(3))
-    assert max(value for row in position.values for value in row if value is not None) == 1000 * trips.position.max()
+    millimetres = trips.position / 0.001
+    assert max(value for row in position.values for value in row if value is not None) == millimetres.max()
     assert max(value for row in angle.values for value in row if value is not None) == trips.angle.max()
     for k in range(0, 600, 50):  # the section through axis 1, which is the world's z: distance and height
         right, up = 1000 * np.hypot(*trips.points[k, :2]), 1000 * trips.points[k, 2]
         row, column = np.searchsorted(position.up, up) - 1, np.searchsorted(position.right, right) - 1
         value = position.values[row][column]
         assert value is not None
-        assert value >= 1000 * trips.position[k]
+        assert value >= millimetres[k]
 
 
 def test_errors_in_double_are_as_small_as_double_is() -> None:

@@ -127,7 +127,7 @@ DAMAGE = [  # in the C of the arm: what stands there, what is put there
         "arm_status arm_forward(const arm_real q[ARM_JOINTS], arm_pose *pose)\n{",
         "\\g<0>\n    if (q[0] > 0.0f) { return ARM_BAD_INPUT; }",
     ),
-    ("] = work->q[i];", "] = work->seed[i];"),
+    ("] = work->q[0];", "] = work->seed[0];"),
     ("    unsigned branch = 0u;\n", "    unsigned branch = 1u;\n"),
 ]
 
