@@ -23,7 +23,17 @@ def evaluate(
     return [values[node] for node in roots]
 
 
-def node_value(node: Node, values: Mapping[Node, Any], number: Callable[[Any], Any], root: Callable[[Any], Any]) -> Any:
+def _where(test: Any, positive: Any, other: Any) -> Any:
+    return positive if test > 0 else other
+
+
+def node_value(
+    node: Node,
+    values: Mapping[Node, Any],
+    number: Callable[[Any], Any],
+    root: Callable[[Any], Any],
+    where: Callable[[Any, Any, Any], Any] = _where,
+) -> Any:
     args = [values[arg] for arg in node.args]
     match node.op:
         case Op.CONSTANT:
@@ -42,6 +52,6 @@ def node_value(node: Node, values: Mapping[Node, Any], number: Callable[[Any], A
         case Op.SIZE:
             return abs(args[0])
         case Op.CHOICE:
-            return args[1] if args[0] > 0 else args[2]
+            return where(*args)
         case _:
             raise KeyError(f"no value for the input {node.name}")

@@ -11,10 +11,11 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
+from codegen.evaluate import node_value
 from codegen.geometry import Pair
 from codegen.inverse.plan import BalanceStep, DirectionStep, SlideRootsStep, SlideStep, Step
 from codegen.inverse.sweep import Sweep
-from codegen.program import Node, Op
+from codegen.program import Node
 from codegen.tracking.lanes import Flags, Lane, LanePoses, LaneVector, angle_of, sine_cosine
 
 NOWHERE = -1.0  # of `spare`, where not even the size of what a joint turns is left
@@ -170,23 +171,12 @@ def _value(node: Node, values: Values) -> Lane:
 
 
 def _lane(node: Node, values: Values) -> Lane:
-    args = [values[arg] for arg in node.args]
-    match node.op:
-        case Op.CONSTANT:
-            return np.float64(float(node.value))  # type: ignore[return-value]
-        case Op.SUM:
-            total = args[0] if node.signs[0] > 0 else -args[0]
-            for sign, arg in zip(node.signs[1:], args[1:], strict=True):
-                total = total + arg if sign > 0 else total - arg
-            return total
-        case Op.PRODUCT:
-            return args[0] * args[1]
-        case Op.QUOTIENT:
-            return args[0] / args[1]
-        case Op.ROOT:
-            return np.sqrt(np.maximum(args[0], 0.0))
-        case Op.SIZE:
-            return np.abs(args[0])
-        case Op.CHOICE:
-            return np.where(args[0] > 0.0, args[1], args[2])
-    raise KeyError(f"no value for the input {node.name}")
+    return node_value(node, values, lambda value: np.float64(float(value)), _root, _where)  # type: ignore[no-any-return]
+
+
+def _root(square: Lane) -> Lane:
+    return np.sqrt(np.maximum(square, 0.0))
+
+
+def _where(test: Lane, positive: Lane, other: Lane) -> Lane:
+    return np.where(test > 0.0, positive, other)
